@@ -1,0 +1,1 @@
+"""Linear networks: nothing here knows about boards."""

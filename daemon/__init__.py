@@ -1,0 +1,1 @@
+"""Files, time, threads, the database and the command line."""

@@ -1,0 +1,1 @@
+"""Reads the history and shows it."""
