@@ -84,15 +84,13 @@ class Part:
 
     def pin(self, label: str) -> Pin | None:
         """The pin that answers to `label`: designators first, then port names, then without regard to case."""
-        for key in (lambda p: p.number, lambda p: p.name):
-            for pin in self.pins:
-                if key(pin) == label:
-                    return pin
         folded = label.casefold()
-        for pin in self.pins:
-            if folded in (pin.number.casefold(), pin.name.casefold()):
-                return pin
-        return None
+        answers = (
+            [pin for pin in self.pins if pin.number == label]
+            or [pin for pin in self.pins if pin.name == label]
+            or [pin for pin in self.pins if folded in (pin.number.casefold(), pin.name.casefold())]
+        )
+        return answers[0] if answers else None
 
 
 @dataclass(frozen=True, slots=True)
