@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 import re
 from dataclasses import dataclass
+from decimal import Decimal
 from typing import Literal
 
 Unit = Literal["F", "H", "ohm", "V", "A", "s", "Hz", "degC", "dB", "fraction", "m", "ppm/K", "1"]
@@ -111,7 +112,7 @@ _WORDS: dict[str, dict[str, float]] = {
 }
 
 _NUMBER = re.compile(
-    r"(?P<number>[+-]?(?:\d+(?:[.,]\d*)?|[.,]\d+)(?:[eE][+-]?\d+)?)\s*(?P<suffix>\D*)", re.ASCII
+    r"(?P<number>[+-]?(?:\d+(?:[.,]\d*)?|[.,]\d+)(?:[eE][+-]?\d{1,3})?)\s*(?P<suffix>\D*)", re.ASCII
 )
 _INFIX = re.compile(
     r"(?P<sign>[+-]?)(?P<whole>\d*)(?P<letter>[A-Za-z])(?P<part>\d+)\s*(?P<suffix>[A-Za-z]*)", re.ASCII
@@ -138,7 +139,7 @@ def parse_quantity(text: str | int | float, unit: Unit) -> float:
     if match and unit == "ohm" and re.fullmatch(r"\d+E\d", plain):
         raise _refusal(text, unit, "E could be a power of ten or the decimal point; write R for the point")
     if match:
-        number = float(match["number"].replace(",", "."))
+        number = Decimal(match["number"].replace(",", "."))
         return _finite(_scaled(number, match["suffix"], unit, text), text, unit)
     match = _INFIX.fullmatch(plain)
     if match and _KINDS[unit].prefixed:
@@ -158,7 +159,7 @@ def _refusal(text: object, unit: str, why: str = "") -> QuantityError:
     return QuantityError(f'{text!r} is not a {kind.noun}{reason}; expected something like "{kind.example}"')
 
 
-def _scaled(number: float, suffix: str, unit: str, text: str) -> float:
+def _scaled(number: Decimal, suffix: str, unit: str, text: str) -> float:
     """`number` with the unit and prefix written in `suffix`, in the base unit."""
     special = _special(number, suffix, unit)
     if special is not None:
@@ -171,24 +172,24 @@ def _scaled(number: float, suffix: str, unit: str, text: str) -> float:
         head = suffix[: len(suffix) - len(spelling)].strip()
         if not kind.prefixed:
             if not head:
-                return number
+                return float(number)
             continue
         if head in _PREFIXES and (head or spelling or not suffix):
             return _times(number, _PREFIXES[_checked_prefix(head, spelling, unit, text)])
     raise _refusal(text, unit)
 
 
-def _times(number: float, scale: float) -> float:
-    """`number * scale`, dividing where that is the exact way: 47 n is 47/1e9, the nearest float to 47e-9."""
-    return number / round(1 / scale) if scale < 1 else number * scale
+def _times(number: Decimal, scale: float) -> float:
+    """The float nearest to the product in decimals: `2n2` is exactly what 2.2e-9 is."""
+    return float(number * Decimal(repr(scale)))
 
 
-def _special(number: float, suffix: str, unit: str) -> float | None:
+def _special(number: Decimal, suffix: str, unit: str) -> float | None:
     """Suffixes that are no prefix and unit: long times, percent, kelvin, `100E`, and the old `MFD`."""
     if unit == "degC" and suffix == "K":
-        return number - KELVIN_AT_ZERO_CELSIUS
+        return float(number - Decimal(repr(KELVIN_AT_ZERO_CELSIUS)))
     if unit == "ohm" and suffix == "E":
-        return number
+        return float(number)
     factor = _WORDS.get(unit, {}).get(suffix.casefold())
     if factor is None:
         return None
@@ -209,12 +210,12 @@ def _checked_prefix(head: str, spelling: str, unit: str, text: str) -> str:
 def _infix(match: re.Match[str], unit: str, text: str) -> float:
     """The notation of IEC 60062, in which a letter stands for the decimal point."""
     letter, suffix = match["letter"], match["suffix"]
-    number = float(f"{match['sign']}{match['whole'] or '0'}.{match['part']}")
+    number = Decimal(f"{match['sign']}{match['whole'] or '0'}.{match['part']}")
     kind = _KINDS[unit]
     if letter.casefold() in kind.spellings and unit not in ("m",):
         if suffix:
             raise _refusal(text, unit)
-        return number
+        return float(number)
     if letter not in _PREFIXES or (suffix and suffix.casefold() not in kind.spellings):
         raise _refusal(text, unit)
     return _times(number, _PREFIXES[_checked_prefix(letter, suffix or unit, unit, text)])
