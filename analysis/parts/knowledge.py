@@ -13,19 +13,14 @@ from reactance.analysis.design import Place
 class KnowledgeRow:
     """One `[[part]]` table: which parts it is about, and its attributes as raw TOML values.
 
-    `match` holds glob patterns under `refdes`, `value` and `number`; all that are given must match. `table`
-    is how messages name the table (`[[part]] 2`).
+    `match` holds glob patterns under `refdes`, `value` and `number`; all that are given must match. `source`
+    is how the table is named where a value is shown with its origin (`board.brief.toml [[part]] 2`).
     """
 
     match: Mapping[str, str]
     attributes: Mapping[str, object]
     place: Place
-    table: str = "[[part]]"
-
-    @property
-    def source(self) -> str:
-        """The row's name where a value is shown with its origin."""
-        return f"{self.place.file} {self.table}"
+    source: str = "[[part]]"
 
 
 @dataclass(frozen=True, slots=True)
