@@ -1,0 +1,201 @@
+"""The one table of attribute names: what exports call things, and what they are called here."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass
+
+from reactance.analysis.parts.base import Kind, Stated
+
+# Canonical attribute -> names met in exports, most telling first; compared without case, spaces or marks.
+# Common practice of schematic authors; there is no published list.
+ALIASES: dict[str, tuple[str, ...]] = {
+    "value": ("value", "val", "part value", "nominal value", "nominal", "comment", "rated value"),
+    "tolerance": ("tolerance", "tol", "tolerance %", "accuracy"),
+    "technology": ("technology", "tech", "capacitor type", "cap type", "type", "construction"),
+    "dielectric": (
+        "dielectric",
+        "dielectric material",
+        "dielectric type",
+        "dielectric code",
+        "temperature characteristic",
+        "temp characteristic",
+        "temp char",
+        "characteristic",
+        "tempco",
+        "temp co",
+        "temp coeff",
+        "temperature coefficient",
+        "tc",
+        "material",
+    ),
+    "rated_voltage": (
+        "rated voltage",
+        "voltage rating",
+        "voltage rated",
+        "rated voltage dc",
+        "voltage rating dc",
+        "voltage",
+        "rating",
+        "vrated",
+        "v rating",
+        "volt",
+        "volts",
+        "working voltage",
+        "wvdc",
+        "vdc",
+        "wv",
+        "max voltage",
+        "dc voltage",
+    ),
+    "package": (
+        "package",
+        "case",
+        "case size",
+        "case code",
+        "package / case",
+        "size code",
+        "size",
+        "chip size",
+        "pcb footprint",
+        "footprint",
+        "land pattern",
+        "pattern",
+        "pcb package",
+        "package name",
+    ),
+    "polarised": ("polarised", "polarized", "polarity"),
+    "fitted": (
+        "fitted",
+        "populate",
+        "populated",
+        "mounted",
+        "mount",
+        "assemble",
+        "assembled",
+        "assembly",
+        "stuff",
+        "stuffed",
+        "installed",
+        "install",
+        "placed",
+        "fit",
+        "fitting",
+    ),
+    "esr": ("esr", "equivalent series resistance", "esr max", "max esr"),
+    "esl": ("esl", "equivalent series inductance"),
+    "leakage_resistance": ("leakage resistance", "insulation resistance"),
+    "leakage_current": ("leakage current", "leakage", "dc leakage", "dcl"),
+    "half_voltage": ("half voltage",),
+    "bias_curve": ("bias curve", "dc bias curve"),
+    "ageing": ("ageing", "aging", "ageing per decade", "aging rate", "ageing rate"),
+    "temperature_coefficient": ("temperature coefficient", "tempco", "temp co", "temp coeff", "tcr", "tc", "tcc"),
+    "touchstone": ("touchstone",),
+    "dcr": ("dcr", "dc resistance", "series resistance", "rdc", "dcr max", "max dcr", "resistance dc"),
+    "self_resonance": ("self resonance", "self resonant frequency", "srf", "self resonance frequency"),
+    "saturation_current": ("saturation current", "isat", "i sat", "saturation"),
+    "resistance": ("resistance",),
+    "inductance": ("inductance",),
+    "capacitance": ("capacitance",),
+    "description": ("description", "desc", "part description", "long description", "detailed description", "title"),
+    "number": (
+        "mpn",
+        "manufacturer part number",
+        "manufacturer part",
+        "mfr part number",
+        "mfr pn",
+        "mfg pn",
+        "mfpn",
+        "part number",
+        "part no",
+        "pn",
+        "number",
+        "ordering code",
+        "part",
+    ),
+}
+
+# What the part itself is named by, further names of its value by kind.
+VALUE_BY_KIND: dict[Kind, tuple[str, ...]] = {
+    "capacitor": ("capacitance", "cap", "c"),
+    "resistor": ("resistance", "res", "r", "ohms"),
+    "inductor": ("inductance", "ind", "l"),
+    "bead": ("impedance", "impedance at 100 mhz", "impedance @ 100mhz", "z"),
+    "other": (),
+}
+
+# Attributes whose presence with a true value means that a part is not fitted.
+NOT_FITTED = (
+    "dnp",
+    "dnf",
+    "dni",
+    "dnm",
+    "dns",
+    "do not populate",
+    "do not fit",
+    "do not place",
+    "do not install",
+    "do not mount",
+    "do not stuff",
+    "no fit",
+    "no pop",
+    "no stuff",
+    "not fitted",
+    "not mounted",
+    "not placed",
+    "unfitted",
+    "nf",
+    "nm",
+)
+
+# Words that say so in place of a value or beside it.
+NOT_FITTED_WORDS = frozenset(
+    "".join(ch for ch in name if ch.isalnum()) for name in (*NOT_FITTED, "unpopulated", "not populated", "open")
+)
+
+TRUE_WORDS = frozenset(("true", "yes", "y", "1", "x", "t", "on", "fitted", "populated", "mounted", "pol"))
+FALSE_WORDS = frozenset(("false", "no", "n", "0", "f", "off", "none", "nonpolar", "bipolar", "unpolarised"))
+
+
+def folded(name: str) -> str:
+    """A raw name without case, spaces and marks: `Part Number`, `PART_NUMBER` and `part-number` are one."""
+    return "".join(ch for ch in name.casefold() if ch.isalnum())
+
+
+@dataclass(frozen=True, slots=True)
+class RawAttributes:
+    """A part's attributes as the export has them, found by canonical name."""
+
+    by_name: Mapping[str, tuple[str, str]]
+    extra: Mapping[str, tuple[str, ...]]
+
+    @classmethod
+    def of(cls, attributes: Mapping[str, str], extra: Mapping[str, tuple[str, ...]]) -> RawAttributes:
+        """Of an export's part, with the aliases that the brief adds."""
+        table: dict[str, tuple[str, str]] = {}
+        for name, text in attributes.items():
+            if text.strip():
+                table.setdefault(folded(name), (name, text.strip()))
+        return cls(table, extra)
+
+    def find(self, canonical: str, kind: Kind = "other") -> Iterator[Stated]:
+        """Every text stated under a name of `canonical`, the most telling first."""
+        names = [*self.extra.get(canonical, ()), *ALIASES.get(canonical, (canonical,))]
+        if canonical == "value":
+            names += VALUE_BY_KIND[kind]
+        for name in names:
+            found = self.by_name.get(folded(name))
+            if found:
+                yield Stated(found[1], f"export {found[0]}")
+
+    def not_fitted(self) -> Stated | None:
+        """The attribute that says that the part is not fitted, if there is one."""
+        for name in NOT_FITTED:
+            found = self.by_name.get(folded(name))
+            if found and folded(found[1]) not in FALSE_WORDS:
+                return Stated(found[1], f"export {found[0]}")
+        for stated in self.find("fitted"):
+            word = folded(stated.text)
+            if word in FALSE_WORDS or word in NOT_FITTED_WORDS:
+                return stated
+        return None
