@@ -116,8 +116,10 @@ _CLASS1 = re.compile(rf"([{''.join(CLASS1_FIGURE)}])([0-8])([{''.join(CLASS1_TOL
 _CLASS2 = re.compile(rf"([XYZ])([4-9])([{''.join(CLASS2_CHANGE)}])")
 # Class I codes that are met in descriptions; others would be confused with ordinary words there.
 COMMON_CLASS1 = frozenset(
-    ("C0G", "C0H", "C0J", "C0K", "NP0", "NPO", "COG", "COH", "COJ", "COK", "U2J", "U2K", "T2H")
-    + ("S2H", "R2H", "P2H", "S2L", "P3K", "R3L", "M7G", "S1G", "U1G")
+    (
+        *("C0G", "C0H", "C0J", "C0K", "NP0", "NPO", "COG", "COH", "COJ", "COK", "U2J", "U2K", "T2H"),
+        *("S2H", "R2H", "P2H", "S2L", "P3K", "R3L", "M7G", "S1G", "U1G"),
+    )
 )
 
 

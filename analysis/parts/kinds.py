@@ -21,11 +21,16 @@ CLASS_LETTERS: dict[str, Kind] = {
 }
 
 OTHER_LETTERS = frozenset(
-    ("A", "AR", "AT", "B", "BT", "CB", "CN", "CON", "CONN", "CP", "CR", "D", "DL", "DS", "DZ", "E", "F", "FL")
-    + ("FT", "G", "H", "HY", "IC", "J", "JP", "K", "LD", "LED", "LS", "M", "MG", "MH", "MK", "MOV", "MP", "MT")
-    + ("P", "PS", "Q", "RE", "RLA", "RLY", "RT", "RV", "S", "SP", "SW", "T", "TB", "TC", "TP", "TR", "TVS", "U")
-    + ("UN", "V", "VR", "W", "X", "XA", "XTAL", "Y", "Z", "ZD", "NTC", "PTC", "VAR", "POT", "BAT", "FID", "LOGO")
+    (
+        *("A", "AR", "AT", "B", "BT", "CB", "CN", "CON", "CONN", "CP", "CR", "D", "DL", "DS", "DZ", "E", "F", "FL"),
+        *("FT", "G", "H", "HY", "IC", "J", "JP", "K", "LD", "LED", "LS", "M", "MG", "MH", "MK", "MOV", "MP", "MT"),
+        *("P", "PS", "Q", "RE", "RLA", "RLY", "RT", "RV", "S", "SP", "SW", "T", "TB", "TC", "TP", "TR", "TVS", "U"),
+        *("UN", "V", "VR", "W", "X", "XA", "XTAL", "Y", "Z", "ZD", "NTC", "PTC", "VAR", "POT", "BAT", "FID"),
+    )
 )
+
+# Letters of other classes under which some authors draw capacitors: taken for one only if the value is one.
+PERHAPS_CAPACITOR = frozenset(("CN", "CP", "TC", "FT", "FL", "CT", "CE", "CX", "CY", "EC"))
 
 _LETTERS = re.compile(r"([A-Za-z]+)(?=[\d?*_]|$)")
 
