@@ -23,6 +23,8 @@ from reactance.daemon.rows import BoardRow, HistoryError, RevisionRow, Saved, St
 
 __all__ = ["BoardRow", "History", "HistoryError", "RevisionRow", "Saved", "StripCell"]
 
+MOST_BLOCKS = 100  # deposits of solved blocks kept per board; what falls out is solved again
+
 _REVISION = "SELECT id, board, sha256, saved, read, author, parts, status, worse, error FROM revision"
 _BOARD = "SELECT id, name, file, gone, pinned FROM board"
 
@@ -263,16 +265,21 @@ class History:
             )
             return changed.rowcount > 0
 
-    def blocks(self, board_id: int) -> bytes | None:
-        """The solved blocks kept for the board, for reuse after a restart."""
-        row = self._database.row("SELECT blocks FROM board WHERE id = ?", (board_id,))
-        return contents.unpack(row[0]) if row and row[0] is not None else None
+    def blocks(self, board_id: int) -> tuple[bytes, ...]:
+        """The solved blocks kept for the board, oldest first, for reuse after a restart."""
+        rows = self._database.rows("SELECT data FROM solved WHERE board = ? ORDER BY id", (board_id,))
+        return tuple(contents.unpack(row[0]) for row in rows)
 
-    def keep_blocks(self, board_id: int, blocks: bytes) -> None:
-        """Keeps solved blocks for the board in place of the ones kept before."""
+    def keep_blocks(self, board_id: int, blocks: bytes, most: int = MOST_BLOCKS) -> None:
+        """Keeps solved blocks for the board beside those kept before, of which the oldest make room."""
         packed = contents.pack(blocks)
         with self._database.writing(announce=False) as connection:
-            connection.execute("UPDATE board SET blocks = ? WHERE id = ?", (packed, board_id))
+            connection.execute("INSERT INTO solved (board, data) VALUES (?, ?)", (board_id, packed))
+            connection.execute(
+                "DELETE FROM solved WHERE board = ? AND id <= "
+                "(SELECT id FROM solved WHERE board = ? ORDER BY id DESC LIMIT 1 OFFSET ?)",
+                (board_id, board_id, most),
+            )
 
     # -- noticing changes ----------------------------------------------------------------------------------
 
@@ -290,8 +297,9 @@ def _board(row: tuple[Any, ...]) -> BoardRow:
 
 
 def _revision(row: tuple[Any, ...]) -> RevisionRow:
-    status = msgspec.json.decode(row[7], type=dict[Status, int])
-    return RevisionRow(*row[:7], MappingProxyType(status), row[8], row[9])
+    identity, board, sha256, saved, read, author, parts, status, worse, error = row
+    counts = MappingProxyType(msgspec.json.decode(status, type=dict[Status, int]))
+    return RevisionRow(identity, board, sha256, saved, read, author, parts, counts, worse, error)
 
 
 def _board_row(connection: sqlite3.Connection, file: str, name: str | None) -> int:

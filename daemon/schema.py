@@ -21,16 +21,16 @@ APPLICATION_ID = 0x72656163
 
 def _first(db: Database) -> None:
     """Boards, revisions with all they were read from, figures per check, and what is kept between runs."""
-    db["blob"].create({"id": int, "sha256": str, "data": bytes}, pk="id", not_null=("sha256", "data"))
-    db["blob"].create_index(["sha256"], unique=True)
-    db["board"].create(
-        {"id": int, "name": str, "file": str, "gone": int, "pinned": int, "blocks": bytes},
+    db.table("blob").create({"id": int, "sha256": str, "data": bytes}, pk="id", not_null=("sha256", "data"))
+    db.table("blob").create_index(["sha256"], unique=True)
+    db.table("board").create(
+        {"id": int, "name": str, "file": str, "gone": int, "pinned": int},
         pk="id",
         not_null=("name", "file", "gone"),
         defaults={"gone": 0},
     )
-    db["board"].create_index(["file"], unique=True)
-    db["revision"].create(
+    db.table("board").create_index(["file"], unique=True)
+    db.table("revision").create(
         {
             "id": int,
             "board": int,
@@ -50,22 +50,22 @@ def _first(db: Database) -> None:
         not_null=("board", "sha256", "saved", "read", "parts", "status", "worse"),
         foreign_keys=[("board", "board", "id")],
     )
-    db["revision"].create_index(["board", "id"])
-    db["content"].create(
+    db.table("revision").create_index(["board", "id"])
+    db.table("content").create(
         {"id": int, "revision": int, "role": str, "name": str, "blob": int},
         pk="id",
         not_null=("revision", "role", "name"),
         foreign_keys=[("revision", "revision", "id"), ("blob", "blob", "id")],
     )
-    db["content"].create_index(["revision"])
-    db["measured"].create(
+    db.table("content").create_index(["revision"])
+    db.table("measured").create(
         {"id": int, "board": int, "check_id": str},
         pk="id",
         not_null=("board", "check_id"),
         foreign_keys=[("board", "board", "id")],
     )
-    db["measured"].create_index(["board", "check_id"], unique=True)
-    db["figure"].create(
+    db.table("measured").create_index(["board", "check_id"], unique=True)
+    db.table("figure").create(
         {
             "revision": int,
             "measured": int,
@@ -80,8 +80,15 @@ def _first(db: Database) -> None:
         not_null=("status",),
         foreign_keys=[("revision", "revision", "id"), ("measured", "measured", "id")],
     )
-    db["state"].create({"id": int, "version": int}, pk="id", not_null=("version",))
-    db["state"].insert({"id": 1, "version": 0})
+    db.table("solved").create(
+        {"id": int, "board": int, "data": bytes},
+        pk="id",
+        not_null=("board", "data"),
+        foreign_keys=[("board", "board", "id")],
+    )
+    db.table("solved").create_index(["board"])
+    db.table("state").create({"id": int, "version": int}, pk="id", not_null=("version",))
+    db.table("state").insert({"id": 1, "version": 0})
 
 
 STEPS: tuple[Callable[[Database], None], ...] = (_first,)

@@ -1,0 +1,64 @@
+"""The analysis as the daemon calls it, behind one small surface, so that its import waits until it is needed."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Any, Protocol
+
+from reactance.analysis.design import Design
+from reactance.analysis.files import BoardFiles
+from reactance.analysis.report import Comparison, Report
+
+
+class Results(Protocol):
+    """What an analysis yields: `reactance.analysis.study.Study`."""
+
+    @property
+    def design(self) -> Design:
+        """The export, read."""
+        ...
+
+    @property
+    def report(self) -> Report:
+        """The results."""
+        ...
+
+
+class Keeper(Protocol):
+    """What an analysis keeps in memory from save to save: `reactance.analysis.study.Memory`."""
+
+    def export_blocks(self) -> bytes:
+        """What was solved and not yet exported; empty where that is nothing."""
+        ...
+
+    def import_blocks(self, blocks: bytes) -> None:
+        """Takes in what an earlier run exported."""
+        ...
+
+
+Side = tuple[Design, Report, bytes | None]
+
+
+@dataclass(frozen=True, slots=True)
+class Engine:
+    """The four calls into the analysis."""
+
+    analyse: Callable[[BoardFiles, Any], Results]
+    compare: Callable[[Side, Side], Comparison]
+    design: Callable[[BoardFiles], Design]
+    memory: Callable[[], Keeper]
+
+
+def default_engine() -> Engine:
+    """The real analysis."""
+    from reactance.analysis.difference import compare
+    from reactance.analysis.exports import read_export
+    from reactance.analysis.study import Memory, analyse
+
+    return Engine(
+        analyse=lambda files, memory: analyse(files, memory=memory),
+        compare=compare,
+        design=lambda files: read_export(files.export),
+        memory=Memory,
+    )

@@ -1,0 +1,380 @@
+"""Watches places: turns words of changes into saves, reads each save when it is over, hands it to the analyst.
+
+One thread (the caller of `run`) decides and reads; the analyst's thread analyses and writes. So a save made while
+another is being analysed is read at once and waits its turn, and is not lost when a third one follows.
+"""
+
+from __future__ import annotations
+
+import queue
+import time
+from collections.abc import Callable, Iterable
+from dataclasses import dataclass, field
+from pathlib import Path
+
+from reactance.analysis.files import BoardFiles
+from reactance.daemon.analyst import Analyst, Job
+from reactance.daemon.history import History
+from reactance.daemon.intake import Intake
+from reactance.daemon.outcome import Outcome, Timings
+from reactance.daemon.reading import Signature, is_export, read_board, signature
+from reactance.daemon.registry import Registry
+from reactance.daemon.settle import Hint, Settler
+from reactance.daemon.sources import Source
+from reactance.daemon.walk import Root, roots_of
+
+POLLING_SECONDS = 2.0
+_ASIDE_SECONDS = 1.0  # files outside the watched folders are looked at this often
+_RESCAN_SECONDS = 60.0
+_RESCAN_SHARE = 500.0  # ... or more rarely, so that rescans take no more than this fraction of the time
+_PATIENCE = 5.0
+
+
+@dataclass(frozen=True, slots=True)
+class _Event:
+    path: str
+    hint: Hint
+    folder: bool
+    at: float = field(default_factory=time.time)
+
+
+@dataclass(frozen=True, slots=True)
+class _Done:
+    job: Job
+    outcome: Outcome
+
+
+class _Aside:
+    """Files that boards depend on and of which no watched folder brings word, each with how it last looked."""
+
+    def __init__(self, registry: Registry, roots: tuple[Root, ...]) -> None:
+        self._registry = registry
+        self._roots = roots
+        self._changes = -1
+        self._stamps: dict[str, Signature] = {}
+
+    def stamps(self) -> dict[str, Signature]:
+        """The files as they were when last seen."""
+        if self._registry.changes != self._changes:
+            self._changes = self._registry.changes
+            paths = [path for path in self._registry.paths() if not self._is_heard_of(Path(path))]
+            self._stamps = {path: self._stamps.get(path) or signature((path,)) for path in paths}
+        return dict(self._stamps)
+
+    def seen(self, path: str, stamp: Signature) -> None:
+        """The file looks like this now."""
+        self._stamps[path] = stamp
+
+    def _is_heard_of(self, path: Path) -> bool:
+        return any(root.hears_of(path) for root in self._roots)
+
+
+class _Lost:
+    """Events went missing."""
+
+
+class _Stop:
+    """The end."""
+
+
+class Watcher:
+    """Watches `places` (files and folders that exist) until `stop()`. Every outcome goes to `tell`, sentences for
+    people to `announce`; both are called from the thread in `run`. `first_pass(done, total)` shows how far the
+    catching up at the start has come.
+    """
+
+    def __init__(
+        self,
+        places: Iterable[Path],
+        history: History,
+        intake: Intake,
+        *,
+        tell: Callable[[Outcome], None],
+        announce: Callable[[str], None],
+        polling: float | None = None,
+        first_pass: Callable[[int, int], None] | None = None,
+    ) -> None:
+        self._roots = roots_of(places)
+        self._history = history
+        self._tell = tell
+        self._announce = announce
+        self._polling = polling
+        self._first_pass = first_pass or (lambda done, total: None)
+        self._inbox: queue.SimpleQueue[_Event | _Done | _Lost | _Stop] = queue.SimpleQueue()
+        self._registry = Registry()
+        self._settler = Settler(lambda board: Path(board).exists(), self._registry.signature)
+        self._analyst = Analyst(intake, lambda job, outcome: self._inbox.put(_Done(job, outcome)))
+        self._aside = _Aside(self._registry, self._roots)
+        self._refused: dict[str, tuple[BoardFiles, str]] = {}
+        self._noticed: dict[str, float] = {}
+        self._no_exports: dict[str, Signature] = {}
+        self._polled: tuple[Root, ...] = ()
+        self._next_poll = self._next_aside = self._next_rescan = 0.0
+        self._folders: dict[Root, object] = {}
+        self._catching_up: set[str] = set()
+        self._caught_up = 0
+
+    # -- life ----------------------------------------------------------------------------------------------
+
+    def run(self) -> None:
+        """Watches until `stop()` is called; then finishes what was read."""
+        source = Source(
+            lambda path, hint, folder: self._inbox.put(_Event(path, hint, folder)),
+            lambda: self._inbox.put(_Lost()),
+            self._announce,
+        )
+        self._analyst.start()
+        try:
+            if self._polling is not None:
+                self._polled = self._roots
+            else:
+                deaf = source.start(self._roots)
+                self._polled = tuple(root for root in self._roots if root.folder in deaf)
+            self._catch_up()
+            while self._turn(source):
+                pass
+        finally:
+            source.stop()
+            self._analyst.stop(_PATIENCE)
+            self._drain()
+
+    def stop(self) -> None:
+        """Makes `run` return soon. May be called from any thread and from a signal handler."""
+        self._inbox.put(_Stop())
+
+    def _drain(self) -> None:
+        while not self._inbox.empty():
+            item = self._inbox.get()
+            if isinstance(item, _Done):
+                self._tell(item.outcome)
+
+    def _turn(self, source: Source) -> bool:
+        """Waits for the next thing to do and does it; False at the end."""
+        now = time.monotonic()
+        waits = [self._settler.wait(now), self._next_aside - now, self._next_rescan - now]
+        if self._polled:
+            waits.append(self._next_poll - now)
+        try:
+            item = self._inbox.get(timeout=max(0.0, min(wait for wait in waits if wait is not None)))
+            while True:
+                if isinstance(item, _Stop):
+                    return False
+                self._accept(item)
+                item = self._inbox.get_nowait()
+        except queue.Empty:
+            pass
+        self._look(source)
+        for board, step, message in self._settler.due(time.monotonic()):
+            if step == "read":
+                self._read(board)
+            elif step == "gone":
+                self._lose(board)
+            else:
+                self._refuse(board, message)
+        return True
+
+    # -- noticing ------------------------------------------------------------------------------------------
+
+    def _accept(self, item: _Event | _Done | _Lost | _Stop) -> None:
+        if isinstance(item, _Done):
+            self._finish(item.job, item.outcome)
+        elif isinstance(item, _Lost):
+            self._next_rescan = 0.0
+        elif isinstance(item, _Event):
+            self._hear(item)
+
+    def _hear(self, event: _Event) -> None:
+        if event.folder:
+            for board in self._registry.below(event.path):
+                self._note(board, "removed" if event.hint == "removed" else "found", event.at)
+            if event.hint in ("arrived", "opened"):
+                self._search(self._roots, Path(event.path))
+            return
+        boards = self._registry.dependents(event.path)
+        for board in boards:
+            self._note(board, event.hint, event.at)
+        if event.path not in boards and event.hint != "removed":
+            path = Path(event.path)
+            if any(root.holds(path) for root in self._roots):
+                self._note(event.path, event.hint, event.at)
+
+    def _note(self, board: str, hint: Hint, at: float) -> None:
+        self._noticed.setdefault(board, at)
+        self._settler.note(board, hint, time.monotonic())
+
+    def _look(self, source: Source) -> None:
+        """What is due to be looked at without any word of change."""
+        now = time.monotonic()
+        if now >= self._next_aside:
+            self._next_aside = now + _ASIDE_SECONDS
+            self._look_aside(source)
+        if self._polled and now >= self._next_poll:
+            self._search(self._polled)
+            self._next_poll = time.monotonic() + (self._polling or POLLING_SECONDS)
+        if now >= self._next_rescan:
+            self._search(self._roots)
+            took = time.monotonic() - now
+            self._next_rescan = time.monotonic() + max(_RESCAN_SECONDS, took * _RESCAN_SHARE)
+
+    def _look_aside(self, source: Source) -> None:
+        """Looks at what known boards depend on outside the watched folders, and whether those are the same ones."""
+        for path, old in self._aside.stamps().items():
+            now = signature((path,))
+            if now != old:
+                self._aside.seen(path, now)
+                for board in self._registry.dependents(path):
+                    self._note(board, "removed" if now == (None,) else "found", time.time())
+        for root in self._roots if self._polling is None else ():
+            identity = _identity(root.folder)
+            if identity is not None and identity != self._folders.get(root):
+                if root in self._folders:
+                    source.again(root)
+                    self._search((root,))
+                self._folders[root] = identity
+
+    def _check(self, board: str) -> None:
+        known = self._registry.get(board)
+        if known is None or not known.seen:
+            return
+        now = self._registry.signature(board)
+        if now != known.seen and not (known.gone and not Path(board).exists()):
+            self._note(board, "removed" if self._registry.lost_some(board, now) else "found", time.time())
+            known.seen = now
+
+    def _search(self, roots: Iterable[Root], folder: Path | None = None) -> None:
+        """Looks through roots (or through one folder of theirs) for exports that are new or have changed."""
+        for root in roots:
+            if folder is not None and not (root.deep and folder.is_relative_to(root.folder)):
+                continue
+            for path in root.below(folder or root.folder):
+                board = str(path)
+                if board in self._registry:
+                    self._check(board)
+                elif self._no_exports.get(board) != signature((board,)):
+                    self._note(board, "found", time.time())
+        for board in self._registry.names():
+            self._check(board)
+
+    # -- reading -------------------------------------------------------------------------------------------
+
+    def _read(self, board: str) -> None:
+        noticed = self._noticed.get(board, time.time())
+        if not self._is_board(board):
+            self._no_exports[board] = signature((board,))
+            self._forget(board)
+            return
+        known = self._registry.know(board)
+        started, clock = time.time(), time.perf_counter()
+        before = self._registry.signature(board)
+        reading = read_board(Path(board))
+        if self._registry.signature(board) != before:
+            self._settler.note(board, "written", time.monotonic())
+            return
+        changed = self._settler.changed(board, time.monotonic())
+        self._registry.depend(board, reading.dependencies)
+        known.seen = self._registry.signature(board)
+        took = time.perf_counter() - clock
+        if reading.files is None:
+            self._refused.pop(board, None)
+            known.sha256 = None
+            self._settler.broken(board, known.seen, str(reading.error), changed)
+            return
+        if reading.files.sha256 == known.sha256:
+            self._same_again(board, changed)
+            return
+        self._forget(board)
+        self._refused.pop(board, None)
+        known.sha256, known.gone = reading.files.sha256, False
+        event = max(0.0, noticed - reading.saved) if noticed - reading.saved < _PATIENCE else 0.0
+        timings = Timings(event=event, settle=max(0.0, started - noticed), read=took)
+        self._analyst.submit(
+            Job("take", board, reading.saved, started, reading.files, "", known.seen, changed, timings)
+        )
+
+    def _is_board(self, board: str) -> bool:
+        if board in self._registry or any(board in root.files for root in self._roots):
+            return True
+        return is_export(Path(board))
+
+    def _same_again(self, board: str, changed: float) -> None:
+        known = self._registry.know(board)
+        refused = self._refused.get(board)
+        if refused is not None:  # and still waiting to be called broken
+            self._settler.broken(board, known.seen, refused[1], changed)
+            return
+        self._forget(board)
+        if known.gone:
+            known.gone = False
+            self._analyst.submit(Job("back", board))
+        self._arrived(board)
+
+    def _forget(self, board: str) -> None:
+        self._settler.settled(board)
+        self._noticed.pop(board, None)
+
+    def _lose(self, board: str) -> None:
+        self._noticed.pop(board, None)
+        known = self._registry.get(board)
+        if known is not None and not known.gone:
+            known.gone = True
+            self._analyst.submit(Job("gone", board))
+
+    def _refuse(self, board: str, message: str) -> None:
+        self._noticed.pop(board, None)
+        known = self._registry.know(board)
+        saved = max((_modified(path) for path in known.dependencies), default=0.0)
+        files, _ = self._refused.pop(board, (None, ""))
+        self._analyst.submit(Job("refuse", board, saved, time.time(), files, message))
+
+    # -- outcomes ------------------------------------------------------------------------------------------
+
+    def _finish(self, job: Job, outcome: Outcome) -> None:
+        known = self._registry.get(job.board)
+        if job.kind == "take" and outcome.kind == "broken" and job.files is not None:
+            if known is not None and known.sha256 == job.files.sha256:
+                self._refused[job.board] = (job.files, outcome.message)
+                self._settler.broken(job.board, job.signature, outcome.message, job.changed)
+            return
+        if outcome.kind == "not stored" and known is not None:
+            known.sha256, known.seen = None, ()
+        self._tell(outcome)
+        self._arrived(job.board)
+
+    def _catch_up(self) -> None:
+        """Takes up where the last run ended: boards that are gone, saves that were missed."""
+        for row in self._history.boards():
+            path = Path(row.file)
+            if any(root.holds(path) for root in self._roots):
+                known = self._registry.know(row.file)
+                known.gone = row.gone
+                newest = self._history.latest(row.id, good=False)
+                known.sha256 = newest.sha256 if newest and newest.error is None else None
+                self._note(row.file, "found", time.time())
+        self._search(self._roots)
+        now = time.monotonic()
+        self._next_aside, self._next_poll = now + _ASIDE_SECONDS, now + (self._polling or POLLING_SECONDS)
+        self._next_rescan = now + _RESCAN_SECONDS
+        self._folders = {root: _identity(root.folder) for root in self._roots}
+        self._catching_up = {board for board in self._noticed if self._is_board(board)}
+        self._first_pass(0, len(self._catching_up))
+
+    def _arrived(self, board: str) -> None:
+        if board in self._catching_up:
+            self._catching_up.discard(board)
+            self._caught_up += 1
+            self._first_pass(self._caught_up, self._caught_up + len(self._catching_up))
+
+
+def _modified(path: str) -> float:
+    try:
+        return Path(path).stat().st_mtime
+    except OSError:
+        return 0.0
+
+
+def _identity(folder: Path) -> object:
+    try:
+        found = folder.stat()
+    except OSError:
+        return None
+    return (found.st_dev, found.st_ino)
