@@ -144,7 +144,7 @@ def _digital() -> tuple[Placed, ...]:
         other("U6", FLASH, "GL25F", "CS_FLASH SPI_MISO +3V3 GND SPI_MOSI SPI_SCK +3V3 +3V3", PART_NUMBER="GL25F-64"),
         capacitor("C27", "100nF 16V X7R 0402", "+3V3"),
         other("U7", RADIO, "GL868", "+3V3 +3V3 GND GND SPI_SCK SPI_MOSI SPI_MISO CS_RADIO", PART_NUMBER="GL868-M"),
-        capacitor("C28", "4.7uF 10V X7R 0805", "+3V3"),
+        capacitor("C28", "2.2uF 10V X7R 0603", "+3V3"),
         capacitor("C29", "100nF 16V X7R 0402", "+3V3"),
         other("U9", CLIMATE_SENSOR, "GLRH4", "SDA GND +3V3 SCL", PART_NUMBER="GLRH4"),
         capacitor("C31", "100nF 16V X7R 0402", "+3V3"),

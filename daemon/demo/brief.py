@@ -26,16 +26,16 @@ tolerance = "15 %"
 net = "+5V"
 voltage = "5 V"
 tolerance = "3 %"
-source = { resistance = "30 mohm", inductance = "400 nH" }
+source = { resistance = "35 mohm", inductance = "250 nH" }
 step = { current = "0.9 A", rise = "200 ns" }
-allowed = "4 %"
+allowed = "3 %"
 
 [[rail]]                                  # the radio's burst
 net = "+3V3"
 voltage = "3.3 V"
 tolerance = "2 %"
-source = { resistance = "40 mohm", inductance = "300 nH" }
-step = { current = "0.35 A", rise = "50 ns" }
+source = { resistance = "80 mohm", inductance = "100 nH" }
+step = { current = "0.5 A", rise = "50 ns" }
 allowed = "2.5 %"
 bypass = 0.7
 
@@ -43,9 +43,9 @@ bypass = 0.7
 net = "+1V8"
 voltage = "1.8 V"
 tolerance = "2 %"
-source = { resistance = "50 mohm", inductance = "150 nH" }
-step = { current = "0.15 A", rise = "20 ns" }
-allowed = "3 %"
+source = { resistance = "120 mohm", inductance = "150 nH" }
+step = { current = "0.2 A", rise = "20 ns" }
+allowed = "5 %"
 bypass = 1.0
 
 [[rail]]                                  # analogue half, behind the bead
