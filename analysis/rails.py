@@ -1,0 +1,163 @@
+"""What a rail's load sees: impedance against its target, and how far the rail moves when the load steps."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from reactance.analysis.bias import Bias
+from reactance.analysis.board import Board
+from reactance.analysis.brief_tables import RailTable
+from reactance.analysis.circuit.modal import PoleResidue
+from reactance.analysis.circuit.sweep import Response
+from reactance.analysis.circuit.transient import ramp_peak, worst_rhythm
+from reactance.analysis.elements import node
+from reactance.analysis.measuring import Measuring
+from reactance.analysis.parts.band import Band
+from reactance.analysis.parts.models import CapacitorModel
+from reactance.analysis.quantity import format_quantity
+from reactance.analysis.rail_network import LOAD, RailNetwork
+from reactance.analysis.report import Limit
+from reactance.analysis.reuse import Results
+from reactance.analysis.values import Value, exactly, unknown
+
+LOWEST_FREQUENCY = 1e3  # Hz, of the band where the brief states none
+KNEE = 0.35  # highest frequency of an edge is 0.35 over its rise time (common practice)
+
+
+@dataclass(frozen=True, slots=True)
+class Demand:
+    """What the brief asks of a rail, in SI: the step, the greatest excursions, the band. None: not stated."""
+
+    current: float | None
+    rise: float | None
+    allowed: float | None
+    rhythm: float | None
+    band: tuple[float, float] | None
+
+
+def demand(table: RailTable, volts: float | None) -> Demand:
+    """The demand of a rail's table; `volts` is what a share is taken of."""
+    step, whole = table.step, volts or 0.0
+    band = (float(table.band.low), float(table.band.high)) if table.band else None
+    if band is None and step and step.rise > 0 and KNEE / step.rise > LOWEST_FREQUENCY:
+        band = (LOWEST_FREQUENCY, KNEE / step.rise)
+    return Demand(
+        float(step.current) if step else None,
+        float(step.rise) if step else None,
+        table.allowed.volts(whole) if table.allowed else None,
+        table.allowed_rhythm.volts(whole) if table.allowed_rhythm else None,
+        band,
+    )
+
+
+def limits(asked: Demand) -> dict[str, Limit]:
+    """The limits that a demand sets, by measure."""
+    found = {"impedance": Limit(max=1.0)}
+    if asked.allowed is not None:
+        found["droop"] = Limit(max=asked.allowed)
+    if asked.rhythm is not None:
+        found["resonant_droop"] = Limit(max=asked.rhythm)
+    return found
+
+
+def measured(asked: Demand) -> tuple[str, ...]:
+    """The measures that a demand calls for, whether or not they can be computed."""
+    names = []
+    if asked.current is not None:
+        names += ["droop", "resonant_droop"]
+    if asked.current is not None and asked.allowed is not None:
+        names.append("impedance")
+    if asked.band is not None:
+        names.append("antiresonance")
+    return tuple(names)
+
+
+def solve_rail(board: Board, net: str, network: RailNetwork, asked: Demand) -> Results:
+    """Droop, resonant droop, impedance over target, antiresonance: those that the demand allows."""
+    seen = Measuring(network.block, LOAD, node(board, net), sign=-1.0)
+    found: Results = {}
+    if asked.current is not None and asked.rise is not None:
+        found |= _in_time(seen, net, network.fed, asked, asked.current, asked.rise)
+    if asked.band is not None:
+        found |= _in_frequency(seen, asked, asked.band)
+    elif asked.allowed is not None and asked.current is not None:
+        found["impedance"] = unknown("1", "the band is not stated and does not follow from the step's rise")
+    return {name: value for name, value in found.items() if name in measured(asked)}
+
+
+def _in_time(seen: Measuring, net: str, fed: bool, asked: Demand, current: float, rise: float) -> Results:
+    if not fed:
+        why = f"nothing feeds {net} in the network: state source = {{ resistance, inductance }}"
+        return {"droop": unknown("V", why), "resonant_droop": unknown("V", why)}
+    amps = format_quantity(current, "A")
+    note = f"{amps} in {format_quantity(rise, 's')}"
+
+    def droop(modes: PoleResidue) -> float:
+        return current * ramp_peak(modes, rise)
+
+    found = {"droop": seen.modal(droop, "V", note, "the rail's response does not settle")}
+    if asked.band is None:
+        found["resonant_droop"] = unknown("V", "the band is not stated and does not follow from the step's rise")
+        return found
+    low, high = asked.band
+
+    def rhythm(modes: PoleResidue) -> float:
+        return current * worst_rhythm(modes, rise, low, high)[1]
+
+    worst = worst_rhythm(seen.nominal_modes(), rise, low, high)[0]
+    note = f"0 to {amps} and back, worst at {format_quantity(worst, 'Hz')}"
+    found["resonant_droop"] = seen.modal(rhythm, "V", note, "the rail's response does not settle")
+    return found
+
+
+def _in_frequency(seen: Measuring, asked: Demand, band: tuple[float, float]) -> Results:
+    low, high = band
+    found: Results = {}
+    where = f"{format_quantity(low, 'Hz')} to {format_quantity(high, 'Hz')}"
+    if asked.allowed is not None and asked.current:
+        target = asked.allowed / asked.current
+
+        def impedance(response: Response) -> float:
+            return response.greatest(low, high)[1] / target
+
+        at, _ = seen.nominal_response().greatest(low, high)
+        note = f"greatest at {format_quantity(at, 'Hz')}; target {format_quantity(target, 'ohm')}, {where}"
+        found["impedance"] = seen.swept(impedance, "1", note, "the impedance is not finite in the band")
+
+    def antiresonance(response: Response) -> float:
+        peaks = response.local_maxima(low, high)
+        return max((size for _, size in peaks), default=float("nan"))
+
+    peaks = seen.nominal_response().local_maxima(low, high)
+    if peaks:
+        at = max(peaks, key=lambda peak: peak[1])[0]
+        note = f"at {format_quantity(at, 'Hz')}"
+        found["antiresonance"] = seen.swept(antiresonance, "Ω", note, "no local maximum in the band")
+    return found
+
+
+def rail_capacitance(board: Board, bias: Bias, net: str) -> Value:
+    """Sum of effective capacitance from the rail to ground, in farads; the extremes are sums of extremes."""
+    bands: list[Band] = []
+    for section in board.sections_by_net.get(net, ()):
+        other = section.b if section.a == net else section.a
+        if isinstance(section.model, CapacitorModel) and board.is_ground(other) and section.model.value is not None:
+            bands.append(section.model.effective(bias.across(section) or 0.0))
+    count = len(bands)
+    note = f"{count} capacitor{'' if count == 1 else 's'}"
+    return Value(
+        sum(band.nominal for band in bands), sum(band.low for band in bands), sum(band.high for band in bands), "F", note
+    )
+
+
+def bypass(board: Board, net: str) -> Value | None:
+    """Capacitors from the rail to ground per IC pin on the rail; None where no IC has a pin there."""
+    pins = sum(part.refdes[:1] in "UI" for part, _ in board.terminals_by_net.get(net, ()))
+    if not pins:
+        return None
+    capacitors = sum(
+        isinstance(section.model, CapacitorModel)
+        and board.is_ground(section.b if section.a == net else section.a)
+        for section in board.sections_by_net.get(net, ())
+    )
+    return exactly(capacitors / pins, "1", f"{capacitors} capacitors, {pins} IC pins")
