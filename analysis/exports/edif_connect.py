@@ -1,0 +1,362 @@
+"""The connections inside one view: which pin of which instance is on which local net."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from types import MappingProxyType
+
+from reactance.analysis.design import InputError
+from reactance.analysis.exports import edif_entries as says
+from reactance.analysis.exports.edif_cells import Catalogue, Interface, PortGroup, Scope, View
+from reactance.analysis.exports.edif_names import Name, flattened, member_names
+from reactance.analysis.exports.edif_parts import LocalPart, PartMaker, is_mark
+from reactance.analysis.exports.edif_scan import Entry
+from reactance.analysis.exports.edif_source import Source
+from reactance.analysis.exports.edif_union import Nodes
+
+
+@dataclass(slots=True)
+class Netlist:
+    """One view's connections. Nodes are numbered from 0; `names` lists the names of each, `starts` its place."""
+
+    view: View
+    parts: list[LocalPart] = field(default_factory=list)
+    names: list[list[str]] = field(default_factory=list)
+    starts: list[int] = field(default_factory=list)
+    ports: dict[int, int] = field(default_factory=dict)
+    globals: dict[str, tuple[str, int]] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
+class _End:
+    """One terminal that a net reaches: a pin of a part, or a node (own port, off-page connector, global net)."""
+
+    part: int = -1
+    bit: int = -1
+    node: int = -1
+
+
+class Connector:
+    """Builds the netlist of one view."""
+
+    def __init__(
+        self, view: View, catalogue: Catalogue, source: Source
+    ) -> None:
+        self._view, self._source = view, source
+        self._maker = PartMaker(view, catalogue, source)
+        self._nodes = Nodes()
+        self._names: list[str] = []  # of each node; "" for ports and connectors, which have none of their own
+        self._starts: list[int] = []
+        self._parts: list[LocalPart] = []
+        self._scopes: list[dict[str, tuple[int, int, tuple[int, ...]]]] = []  # key -> first part, count, size
+        self._by_name: dict[str, int] = {}
+        self._by_key: list[set[str]] = []
+        self._ports: dict[int, int] = {}
+        self._connectors: dict[str, int] = {}
+        self._globals: dict[str, tuple[str, int]] = {}
+
+    def netlist(self) -> Netlist:
+        """The connections; entries that could not be understood are among the problems."""
+        scopes = self._view.scopes or []
+        for scope in scopes:
+            self._declare(scope)
+        for position, scope in enumerate(scopes):
+            self._by_key.append(set())
+            for entry in scope.entries:
+                if isinstance(entry.value, says.Net):
+                    self._net(entry.value, position, entry)
+                elif isinstance(entry.value, says.NetBundle):
+                    self._report(entry, entry.value.faults)
+                    for net in entry.value.nets:
+                        self._net(net, position, entry)
+        self._join_rippers()
+        return self._compressed()
+
+    def _declare(self, scope: Scope) -> None:
+        known: dict[str, tuple[int, int, tuple[int, ...]]] = {}
+        self._scopes.append(known)
+        for entry in scope.entries:
+            value = entry.value
+            if isinstance(value, says.Instance):
+                self._instance(value, entry, known)
+            elif isinstance(value, says.Net):
+                for instance in value.instances:
+                    self._instance(instance, entry, known)
+            elif isinstance(value, says.OffPage):
+                node = self._connectors.get(_merge_key(value.name))
+                if node is None:
+                    node = self._connectors[_merge_key(value.name)] = self._new_node("", entry.start)
+                self._connectors[value.name.key] = node
+
+    def _instance(
+        self, value: says.Instance, entry: Entry, known: dict[str, tuple[int, int, tuple[int, ...]]]
+    ) -> None:
+        self._source.check("name", len(value.name.text), entry.start)
+        if value.name.size:
+            self._source.check("array", value.name.width, entry.start)
+        self._report(entry, value.faults)
+        if value.name.key in known:
+            self._source.problem("error", entry.start, f"instance {value.name.text} stands twice; both are kept")
+        first = len(self._parts)
+        self._parts.extend(self._maker.parts(value, entry.start))
+        self._source.check("parts", len(self._parts), entry.start)
+        known.setdefault(value.name.key, (first, len(self._parts) - first, value.name.size))
+
+    def _new_node(self, name: str, start: int) -> int:
+        self._names.append(name)
+        self._starts.append(start)
+        return self._nodes.add()
+
+    def _net(self, net: says.Net, scope: int, entry: Entry) -> list[int]:
+        """Take in a net and those nested in it; its nodes, one for each member."""
+        if net.faults:
+            self._report(entry, net.faults)
+        self._source.check("name", len(net.name.text), entry.start)
+        if net.name.size:
+            self._source.check("array", net.name.width, entry.start)
+        if net.name.key in self._by_key[scope]:
+            self._source.problem("caution", entry.start, f"net {net.name.text} stands twice; taken as one net")
+        self._by_key[scope].add(net.name.key)
+        ends = [self._ends(ref, scope, net.name, entry) for ref in net.refs]
+        width = net.name.width if net.name.size else self._bus_width(net, ends)
+        nodes = self._net_nodes(net.name, width, entry.start)
+        for ref, reached in zip(net.refs, ends, strict=True):
+            self._attach(nodes, reached, net, ref, entry)
+        for inner in net.inner:
+            self._nest(nodes, net, inner, scope, entry)
+        return nodes
+
+    def _bus_width(self, net: says.Net, ends: list[list[_End]]) -> int:
+        """How many conductors a net without stated members has.
+
+        More than one where all that it joins is equally wide, and something says that this is a bus: an array or
+        bundle of ports, or several lists of ports. A single list of ports on a plain net is that net.
+        """
+        widths = {len(reached) for reached in ends if reached}
+        if len(widths) != 1 or widths == {1}:
+            return 1
+        buses = sum(not isinstance(ref, says.PortList) for ref in net.refs)
+        return widths.pop() if buses or len(net.refs) > 1 else 1
+
+    def _net_nodes(self, name: Name, width: int, start: int) -> list[int]:
+        if width == 1 and not name.size:
+            names, keys = [name.text], [_merge_key(name)]
+        else:
+            names = keys = member_names(Name(name.key, name.text, name.size or (width,)))
+        nodes = []
+        for shown, key in zip(names, keys, strict=True):
+            node = self._by_name.get(key)
+            if node is None:
+                node = self._by_name[key] = self._new_node(shown, start)
+            nodes.append(node)
+        return nodes
+
+    def _attach(
+        self, nodes: list[int], reached: list[_End], net: says.Net, ref: says.Ref, entry: Entry
+    ) -> None:
+        if len(nodes) == len(reached):
+            for node, end in zip(nodes, reached, strict=True):
+                self._tie(node, end, net, entry)
+        elif len(nodes) == 1:
+            if not isinstance(ref, says.PortList) and reached:
+                message = f"net {net.name.text} joins a bus of {len(reached)} to single ports; all are taken as one net"
+                self._source.problem("caution", entry.start, message)
+            for end in reached:
+                self._tie(nodes[0], end, net, entry)
+        elif reached:
+            message = f"net {net.name.text} has {len(nodes)} members but joins {len(reached)}; not connected"
+            self._source.problem("error", entry.start, message)
+
+    def _tie(self, node: int, end: _End, net: says.Net, entry: Entry) -> None:
+        if end.node >= 0:
+            self._nodes.join(node, end.node)
+            return
+        part = self._parts[end.part]
+        before = part.nodes.get(end.bit)
+        part.nodes[end.bit] = node
+        if before is not None and self._nodes.root(before) != self._nodes.root(node):
+            pin = part.interface.bits[end.bit].name
+            message = f"pin {part.name}.{pin} stands in net {net.name.text} and in another; they are taken as one net"
+            self._source.problem("caution", entry.start, message)
+            self._nodes.join(before, node)
+
+    def _nest(self, nodes: list[int], net: says.Net, inner: says.Net, scope: int, entry: Entry) -> None:
+        """A net within a net is a stretch of it: of the whole, or of the member that it names."""
+        below = self._net(inner, scope, entry)
+        if len(below) == len(nodes):
+            for one, other in zip(nodes, below, strict=True):
+                self._nodes.join(one, other)
+        elif len(nodes) == 1:
+            for other in below:
+                self._nodes.join(nodes[0], other)
+        elif not set(below) <= set(nodes):
+            message = f"net {inner.name.text} in net {net.name.text} fits none of its members; kept as a net of its own"
+            self._source.problem("caution", entry.start, message)
+
+    def _ends(self, ref: says.Ref, scope: int, net: Name, entry: Entry) -> list[_End]:
+        if isinstance(ref, says.PortRef):
+            if ref.instance:
+                return self._pins(ref, scope, net, entry)
+            return self._own(ref, net, entry)
+        if isinstance(ref, says.PortList):
+            return [end for each in ref.refs for end in self._ends(each, scope, net, entry)]
+        key = ref.name.lower()
+        if key not in self._globals:
+            self._globals[key] = (ref.name.removeprefix("&") or ref.name, self._new_node("", entry.start))
+        return [_End(node=self._globals[key][1])]
+
+    def _pins(self, ref: says.PortRef, scope: int, net: Name, entry: Entry) -> list[_End]:
+        if len(ref.instance) > 1:
+            path = "/".join(ref.instance)
+            self._source.problem("error", entry.start, f"net {net.text}: it reaches into {path}; passed over")
+            return []
+        found = self._find_instance(ref.instance[0].lower(), scope)
+        if found is None:
+            message = f"net {net.text}: there is no instance {ref.instance[0]} in this cell; passed over"
+            self._source.problem("error", entry.start, message)
+            return []
+        first, count, size = found
+        members = range(first, first + count)
+        if ref.instance_index:
+            member = flattened(ref.instance_index, size)
+            if member is None:
+                message = f"net {net.text}: instance {ref.instance[0]} has no member {ref.instance_index}"
+                self._source.problem("error", entry.start, message)
+                return []
+            members = range(first + member, first + member + 1)
+        ends: list[_End] = []
+        for part in members:
+            bits = self._bits(ref, self._parts[part].interface, net, entry, self._parts[part].name)
+            ends.extend(_End(part, bit) for bit in bits)
+        return ends
+
+    def _find_instance(self, key: str, scope: int) -> tuple[int, int, tuple[int, ...]] | None:
+        found = self._scopes[scope].get(key)
+        if found is None:
+            others = [known[key] for known in self._scopes if key in known]
+            found = others[0] if others else None
+        return found
+
+    def _bits(
+        self, ref: says.PortRef, interface: Interface, net: Name, entry: Entry, owner: str
+    ) -> tuple[int, ...]:
+        group = interface.group(ref.port)
+        shown = ".".join(ref.port)
+        if group is None:
+            message = f"net {net.text}: {owner} has no port {shown}; it is given one"
+            self._source.problem("caution", entry.start, message)
+            name = ref.port[-1].removeprefix("&") or ref.port[-1]
+            if ref.member:
+                name += f"[{','.join(map(str, ref.member))}]"
+            group = PortGroup((interface.add("", name),))
+            if len(ref.port) == 1 and not ref.member:
+                interface.groups[ref.port[0].lower()] = group
+            return group.bits
+        bits = interface.bits_of(ref)
+        if not bits and ref.member:
+            message = f"net {net.text}: port {shown} of {owner} has no member {ref.member}; passed over"
+            self._source.problem("error", entry.start, message)
+        return bits
+
+    def _own(self, ref: says.PortRef, net: Name, entry: Entry) -> list[_End]:
+        """A port of the cell itself, or an off-page connector."""
+        interface = self._view.interface
+        connector = self._connectors.get(ref.port[0].lower())
+        if connector is not None and interface.group(ref.port) is None:
+            return [_End(node=connector)]
+        if interface.group(ref.port) is None:
+            message = f"net {net.text}: cell {self._view.cell.name.text} has no port {'.'.join(ref.port)}; passed over"
+            self._source.problem("error", entry.start, message)
+            return []
+        ends = []
+        for bit in self._bits(ref, interface, net, entry, f"cell {self._view.cell.name.text}"):
+            if bit not in self._ports:
+                self._ports[bit] = self._new_node("", entry.start)
+            ends.append(_End(node=self._ports[bit]))
+        return ends
+
+    def _join_rippers(self) -> None:
+        """A ripper or tie joins nets through itself: it is wiring, no part."""
+        for part in self._parts:
+            if part.target.cell is None or part.target.cell.kind not in ("ripper", "tie"):
+                continue
+            for refs in part.interface.joined:
+                groups = [part.interface.group(ref.port) for ref in refs if isinstance(ref, says.PortRef)]
+                widths = {len(group.bits) for group in groups if group}
+                if len(widths) != 1:
+                    continue
+                for bits in zip(*(group.bits for group in groups if group), strict=True):
+                    touched = [part.nodes[bit] for bit in bits if bit in part.nodes]
+                    for node in touched[1:]:
+                        self._nodes.join(touched[0], node)
+
+    def _report(self, entry: Entry, faults: tuple[str, ...]) -> None:
+        for fault in faults:
+            self._source.problem("error", entry.start, fault)
+
+    def _compressed(self) -> Netlist:
+        """Nodes renumbered without gaps."""
+        nodes = self._nodes
+        number: dict[int, int] = {}
+        result = Netlist(self._view, self._parts)
+        renumbered: list[int] = []
+        for node, name in enumerate(self._names):
+            root = nodes.root(node)
+            new = number.get(root)
+            if new is None:
+                new = number[root] = len(result.names)
+                result.names.append([])
+                result.starts.append(self._starts[node])
+            renumbered.append(new)
+            if name:
+                result.names[new].append(name)
+        for part in self._parts:
+            part.nodes = {bit: renumbered[node] for bit, node in part.nodes.items()}
+            part.symbol = part.symbol or is_mark(part, [n for node in part.nodes.values() for n in result.names[node]])
+        result.ports = {bit: renumbered[node] for bit, node in self._ports.items()}
+        result.globals = {key: (name, renumbered[node]) for key, (name, node) in self._globals.items()}
+        return result
+
+
+def _merge_key(name: Name) -> str:
+    """Nets of equal merge key in one cell are one net: visible names exactly, identifiers without regard to case."""
+    return name.text if name.renamed else name.key
+
+
+def netlists(
+    top: View, catalogue: Catalogue, source: Source
+) -> Mapping[int, Netlist]:
+    """The netlist of `top` and of every view below it, by the view's id.
+
+    Raises InputError where a cell contains itself, naming the cells on the way.
+    """
+    done: dict[int, Netlist] = {}
+    path: list[tuple[View, list[View]]] = []
+    entering: View | None = top
+    while entering is not None or path:
+        if entering is not None:
+            netlist = Connector(entering, catalogue, source).netlist()
+            done[id(entering)] = netlist
+            below = {id(part.inside): part.inside for part in netlist.parts if part.inside is not None}
+            path.append((entering, list(below.values())))
+            source.check("levels", len(path), entering.cell.start)
+            entering = None
+            continue
+        below_it = path[-1][1]
+        if not below_it:
+            path.pop()
+            continue
+        following = below_it.pop()
+        chain = [each for each, _ in path]
+        if following in chain:
+            loop = [*chain[chain.index(following) :], following]
+            names = " → ".join(each.cell.name.text for each in loop)
+            raise InputError(
+                f"the hierarchy contains itself: {names}",
+                source.place(following.cell.start),
+                "take one of these instances out of its cell",
+            )
+        if id(following) not in done:
+            entering = following
+    return MappingProxyType(done)

@@ -1,0 +1,449 @@
+"""What single EDIF entries declare: instances, nets, ports, properties, back-annotation.
+
+Each `Declaration` depends on the text of its form alone, so that it can be remembered by it.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from decimal import Decimal
+from types import MappingProxyType
+from typing import NamedTuple, TypeAlias
+
+from reactance.analysis.design import Direction
+from reactance.analysis.exports.edif_forms import Sexp
+from reactance.analysis.exports.edif_names import BadEntryError, Name, found, keyword, name, reference, string
+from reactance.analysis.exports.edif_values import Attribute, attributes, scales
+
+
+class CellRef(NamedTuple):
+    """Where a cell is to be found, as written; "" for what was left out."""
+
+    view: str
+    cell: str
+    library: str
+
+
+class PortRef(NamedTuple):
+    """A port: of the instance at `instance` (innermost last), or the cell's own where that is empty.
+
+    `port` leads from the outermost bundle to the port. Indices are empty where the whole is meant.
+    """
+
+    port: tuple[str, ...]
+    member: tuple[int, ...] = ()
+    instance: tuple[str, ...] = ()
+    instance_index: tuple[int, ...] = ()
+
+
+class PortList(NamedTuple):
+    """Ports in order, as one bus."""
+
+    refs: tuple[Ref, ...]
+
+
+class GlobalRef(NamedTuple):
+    """A net that is one over the whole design."""
+
+    name: str
+
+
+Ref: TypeAlias = "PortRef | PortList | GlobalRef"
+
+
+class PinNumber(NamedTuple):
+    """A designator given to a port."""
+
+    port: PortRef
+    number: str
+
+
+class Instance(NamedTuple):
+    """`(instance …)`; `faults` are parts of it that could not be understood.
+
+    `plain` are its attributes by visible name where none needs the library's units; `longest` is the length of
+    their longest name or text.
+    """
+
+    name: Name
+    cells: tuple[CellRef, ...]
+    designator: str
+    attributes: tuple[Attribute, ...]
+    numbers: tuple[PinNumber, ...]
+    faults: tuple[str, ...]
+    plain: Mapping[str, str] | None
+    longest: int
+
+
+class Port(NamedTuple):
+    """`(port …)` or `(portBundle …)`, the latter with the ports in it."""
+
+    name: Name
+    direction: Direction
+    number: str
+    inner: tuple[Port, ...] = ()
+    bundle: bool = False
+
+
+class Net(NamedTuple):
+    """`(net …)`, with what it joins, the nets in it and instances drawn inside it."""
+
+    name: Name
+    refs: tuple[Ref, ...]
+    inner: tuple[Net, ...] = ()
+    instances: tuple[Instance, ...] = ()
+    faults: tuple[str, ...] = ()
+
+
+class NetBundle(NamedTuple):
+    """`(netBundle …)`: several nets under one name."""
+
+    name: Name
+    nets: tuple[Net, ...]
+    faults: tuple[str, ...]
+
+
+class OffPage(NamedTuple):
+    """`(offPageConnector …)`: where a net goes on on another page."""
+
+    name: Name
+
+
+class Joined(NamedTuple):
+    """`(joined …)` in an interface: ports that the cell itself connects."""
+
+    refs: tuple[Ref, ...]
+
+
+class Annotation(NamedTuple):
+    """What back-annotation says of one instance; `path` is innermost last."""
+
+    path: tuple[str, ...]
+    designator: str
+    attributes: tuple[Attribute, ...]
+    numbers: tuple[PinNumber, ...]
+
+
+class ViewMap(NamedTuple):
+    """`(viewMap …)`."""
+
+    annotations: tuple[Annotation, ...]
+    faults: tuple[str, ...]
+
+
+class Properties(NamedTuple):
+    """The attributes of one `(property …)` or `(parameter …)`."""
+
+    attributes: tuple[Attribute, ...]
+
+
+class Technology(NamedTuple):
+    """What one unit of the library is worth in SI."""
+
+    scales: Mapping[str, Decimal]
+
+
+class Word(NamedTuple):
+    """An entry that says one thing: a name, a designator, a type."""
+
+    name: Name
+
+
+class DesignRef(NamedTuple):
+    """`(design …)`: the name of the whole and its top cell."""
+
+    name: Name
+    cell: CellRef
+
+
+class Version(NamedTuple):
+    """`(edifVersion 2 0 0)`."""
+
+    numbers: tuple[str, ...]
+
+
+class Bad(NamedTuple):
+    """An entry that could not be understood."""
+
+    message: str
+
+
+def declaration(form: list[Sexp]) -> object:
+    """What an entry declares; `Bad` with the reason where it cannot be understood."""
+    try:
+        return _BUILDERS[keyword(form)](form)
+    except BadEntryError as error:
+        shown = form[1][:60] if len(form) > 1 and isinstance(form[1], str) else ""
+        return Bad(f"({form[0]} {shown}{' ' if shown else ''}…): {error}")
+
+
+def _instance(form: list[Sexp]) -> Instance:
+    declared = name(_item(form))
+    cells: tuple[CellRef, ...] = ()
+    designator = ""
+    texts: list[Attribute] = []
+    numbers: list[PinNumber] = []
+    faults: list[str] = []
+    for item in form[2:]:
+        kind = keyword(item)
+        assert isinstance(item, list) or not kind
+        try:
+            if kind in ("property", "parameterassign"):
+                texts.extend(attributes(item))  # type: ignore[arg-type]
+            elif kind == "viewref":
+                cells = (_view_ref(item),)
+            elif kind == "viewlist":
+                cells = tuple(_view_list(item))
+            elif kind == "designator":
+                designator = designator or _designator(item)
+            elif kind == "portinstance":
+                numbers.extend(_port_instance(item))
+        except BadEntryError as error:
+            faults.append(f"instance {declared.text}: {error}")
+    if not cells:
+        raise BadEntryError("an instance without (viewRef … (cellRef …)) has no cell")
+    plain: Mapping[str, str] | None = None
+    if not any(attribute.unit for attribute in texts):
+        plain = MappingProxyType(dict({each.key: (each.name, each.text) for each in texts}.values()))
+    longest = max((max(len(each.name), len(each.text)) for each in texts), default=0)
+    return Instance(declared, cells, designator, tuple(texts), tuple(numbers), tuple(faults), plain, longest)
+
+
+def _item(form: Sexp, position: int = 1) -> Sexp | None:
+    return form[position] if len(form) > position else None
+
+
+def _view_ref(form: Sexp) -> CellRef:
+    view, _ = reference(_item(form))
+    inner = _item(form, 2)
+    return _cell_ref(inner, view) if inner is not None else CellRef(view, "", "")
+
+
+def _cell_ref(form: Sexp | None, view: str = "") -> CellRef:
+    if form is None or keyword(form) != "cellref":
+        raise BadEntryError("expected (cellRef …)")
+    cell, _ = reference(_item(form))
+    inner = _item(form, 2)
+    library = ""
+    if inner is not None and keyword(inner) == "libraryref":
+        library, _ = reference(_item(inner))
+    return CellRef(view, cell, library)
+
+
+def _view_list(form: Sexp) -> list[CellRef]:
+    cells: list[CellRef] = []
+    for item in form[1:]:
+        if keyword(item) == "viewlist":
+            cells.extend(_view_list(item))
+        elif keyword(item) == "viewref":
+            cells.append(_view_ref(item))
+    return cells
+
+
+def _designator(form: Sexp) -> str:
+    inner = _item(form)
+    return string(inner).strip() if inner is not None else ""
+
+
+def _port_instance(form: Sexp) -> list[PinNumber]:
+    port, index = reference(_item(form))
+    numbers = []
+    for item in form[2:]:
+        if keyword(item) == "designator":
+            numbers.append(PinNumber(PortRef((port,), index), _designator(item)))
+        elif keyword(item) == "portinstance":
+            inner = _port_instance(item)
+            numbers.extend(PinNumber(ref._replace(port=(port, *ref.port)), number) for ref, number in inner)
+    return numbers
+
+
+def _port_ref(form: Sexp) -> PortRef:
+    port, index = reference(_item(form))
+    outer = _item(form, 2)
+    if outer is None:
+        return PortRef((port,), index)
+    kind = keyword(outer)
+    if kind == "instanceref":
+        if len(outer) == 2 and isinstance(outer[1], str):
+            return PortRef((port,), index, (outer[1],))
+        path, instance_index = _instance_ref(outer)
+        return PortRef((port,), index, path, instance_index)
+    if kind == "portref":
+        bundle = _port_ref(outer)
+        return bundle._replace(port=(*bundle.port, port), member=bundle.member + index)
+    if kind == "viewref":
+        return PortRef((port,), index)
+    raise BadEntryError(f"expected (instanceRef …) in (portRef {port} …){found(outer)}")
+
+
+def _instance_ref(form: Sexp) -> tuple[tuple[str, ...], tuple[int, ...]]:
+    """Path, innermost last, and the index of the innermost."""
+    instance, index = reference(_item(form))
+    outer = _item(form, 2)
+    if outer is not None and keyword(outer) == "instanceref":
+        path, _ = _instance_ref(outer)
+        return (*path, instance), index
+    return (instance,), index
+
+
+def _refs(form: Sexp, faults: list[str]) -> list[Ref]:
+    refs: list[Ref] = []
+    for item in form[1:]:
+        kind = keyword(item)
+        try:
+            if kind == "portref":
+                refs.append(_port_ref(item))
+            elif kind == "portlist":
+                refs.append(PortList(tuple(_refs(item, faults))))
+            elif kind == "globalportref":
+                refs.append(GlobalRef(reference(_item(item))[0]))
+            elif kind:
+                faults.append(f"({kind} …) has no meaning in ({keyword(form)} …); passed over")
+        except BadEntryError as error:
+            faults.append(str(error))
+    return refs
+
+
+def _net(form: Sexp) -> Net:
+    declared = name(_item(form))
+    refs: list[Ref] = []
+    inner: list[Net] = []
+    instances: list[Instance] = []
+    faults: list[str] = []
+    for item in form[2:]:
+        kind = keyword(item)
+        try:
+            if kind == "joined":
+                refs.extend(_refs(item, faults))
+            elif kind == "net":
+                inner.append(_net(item))
+            elif kind == "instance" and isinstance(item, list):
+                instances.append(_instance(item))
+        except BadEntryError as error:
+            faults.append(str(error))
+    said = tuple(f"net {declared.text}: {fault}" for fault in faults)
+    return Net(declared, tuple(refs), tuple(inner), tuple(instances), said)
+
+
+def _net_bundle(form: list[Sexp]) -> NetBundle:
+    declared = name(_item(form))
+    nets: list[Net] = []
+    faults: list[str] = []
+    for listing in form[2:]:
+        if keyword(listing) != "listofnets":
+            continue
+        for item in listing[1:]:
+            try:
+                if keyword(item) == "net":
+                    nets.append(_net(item))
+            except BadEntryError as error:
+                faults.append(f"net bundle {declared.text}: {error}")
+    return NetBundle(declared, tuple(nets), tuple(faults))
+
+
+_DIRECTIONS: Mapping[str, Direction] = MappingProxyType(
+    {"input": "input", "output": "output", "inout": "inout"}
+)
+
+
+def _port(form: Sexp) -> Port:
+    declared = name(_item(form))
+    direction: Direction = ""
+    number = ""
+    for item in form[2:]:
+        kind = keyword(item)
+        if kind == "direction" and len(item) > 1 and isinstance(item[1], str):
+            direction = _DIRECTIONS.get(item[1].lower(), "")
+        elif kind == "designator":
+            number = _designator(item)
+    return Port(declared, direction, number)
+
+
+def _port_bundle(form: Sexp) -> Port:
+    declared = name(_item(form))
+    inner: list[Port] = []
+    for listing in form[2:]:
+        if keyword(listing) != "listofports":
+            continue
+        for item in listing[1:]:
+            kind = keyword(item)
+            if kind == "port":
+                inner.append(_port(item))
+            elif kind == "portbundle":
+                inner.append(_port_bundle(item))
+    return Port(declared, "", "", tuple(inner), True)
+
+
+def _view_map(form: list[Sexp]) -> ViewMap:
+    annotations: list[Annotation] = []
+    faults: list[str] = []
+    for item in form[1:]:
+        try:
+            if keyword(item) == "instancebackannotate":
+                annotations.append(_instance_annotation(item))
+            elif keyword(item) == "portbackannotate":
+                annotations.append(_port_annotation(item))
+        except BadEntryError as error:
+            faults.append(f"back-annotation: {error}")
+    return ViewMap(tuple(annotations), tuple(faults))
+
+
+def _instance_annotation(form: Sexp) -> Annotation:
+    target = _item(form)
+    if target is None or keyword(target) != "instanceref":
+        raise BadEntryError("expected (instanceRef …)")
+    path, _ = _instance_ref(target)
+    designator = ""
+    texts: list[Attribute] = []
+    for item in form[2:]:
+        if keyword(item) == "designator":
+            designator = _designator(item)
+        elif keyword(item) == "property" and isinstance(item, list):
+            texts.extend(attributes(item))
+    return Annotation(path, designator, tuple(texts), ())
+
+
+def _port_annotation(form: Sexp) -> Annotation:
+    target = _item(form)
+    if target is None or keyword(target) != "portref":
+        raise BadEntryError("expected (portRef …)")
+    ref = _port_ref(target)
+    numbers = [_designator(item) for item in form[2:] if keyword(item) == "designator"]
+    port = ref._replace(instance=(), instance_index=())
+    return Annotation(ref.instance, "", (), tuple(PinNumber(port, number) for number in numbers if number))
+
+
+def _word(form: list[Sexp]) -> Word:
+    return Word(name(_item(form)))
+
+
+def _design(form: list[Sexp]) -> DesignRef:
+    for item in form[2:]:
+        if keyword(item) == "cellref":
+            return DesignRef(name(_item(form)), _cell_ref(item))
+    raise BadEntryError("a design without (cellRef …) names no top cell")
+
+
+_BUILDERS: Mapping[str, Callable[[list[Sexp]], object]] = MappingProxyType(
+    {
+        "instance": _instance,
+        "net": _net,
+        "netbundle": _net_bundle,
+        "offpageconnector": lambda form: OffPage(name(_item(form))),
+        "port": _port,
+        "portbundle": _port_bundle,
+        "joined": lambda form: Joined(tuple(_refs(form, []))),
+        "property": lambda form: Properties(tuple(attributes(form))),
+        "parameter": lambda form: Properties(tuple(attributes(form))),
+        "viewmap": _view_map,
+        "technology": lambda form: Technology(scales(form)),
+        "design": _design,
+        "rename": lambda form: Word(name(form)),
+        "name": lambda form: Word(name(form)),
+        "celltype": _word,
+        "viewtype": _word,
+        "designator": lambda form: Word(Name("", _designator(form))),
+        "edifversion": lambda form: Version(tuple(item for item in form[1:] if isinstance(item, str))),
+        "keywordmap": lambda form: Word(Name("", "")),
+    }
+)
