@@ -57,14 +57,23 @@ _POLARISED = frozenset(("POL", "POLAR", "POLARISED", "POLARIZED"))
 _KEEP = re.IGNORECASE
 _OHMS = r"\d[\d.,]*\s*[munk]?\s*(?:OHMS?|R|Ω)"
 _N = r"\d+(?:[.,]\d+)?"
+_START = r"(?<![A-Za-z0-9.])(?<!\d,)"  # a number begins here: not inside a word, nor behind a decimal mark
 
 # Phrases that span blanks and separators, cut out before the rest is split: attribute ("" to ignore), pattern.
 _PHRASES: tuple[tuple[str, re.Pattern[str]], ...] = (
+    (
+        "fitted",
+        re.compile(
+            r"\b(?:NOT\s+(?:FITTED|POPULATED|MOUNTED|PLACED)|NO[ -]?(?:STUFF|POP|FIT)"
+            r"|DO\s+NOT\s+(?:FIT|POPULATE|PLACE|INSTALL|MOUNT|STUFF))\b",
+            _KEEP,
+        ),
+    ),
     ("", re.compile(r"[-+]?\d+\s*°?C?\s*(?:~|TO|\.\.\.?|/)\s*\+?\d+\s*(?:°\s*C|C|DEGC)\b", _KEEP)),
     ("tolerance", re.compile(rf"\+\s*{_N}\s*%?\s*[/,]?\s*-\s*{_N}\s*%", _KEEP)),
     ("tolerance", re.compile(rf"-\s*{_N}\s*%?\s*[/,]?\s*\+\s*{_N}\s*%", _KEEP)),
     ("tolerance", re.compile(rf"(?:±|\+\s*/?\s*-)\s*{_N}\s*(?:%|pF)", _KEEP)),
-    ("tolerance", re.compile(rf"(?<![\w.,]){_N}\s*(?:%|PCT\b)", _KEEP)),
+    ("tolerance", re.compile(rf"{_START}{_N}\s*(?:%|PCT\b)", _KEEP)),
     ("esr", re.compile(rf"ESR\s*(?:MAX)?\s*[=:<≤]?\s*({_OHMS})", _KEEP)),
     ("dcr", re.compile(rf"(?:DCR|RDC)\s*(?:MAX)?\s*[=:<≤]?\s*({_OHMS})", _KEEP)),
     ("dcr", re.compile(rf"({_OHMS})\s*(?:DCR|RDC)\b", _KEEP)),
@@ -73,17 +82,18 @@ _PHRASES: tuple[tuple[str, re.Pattern[str]], ...] = (
     ("saturation_current", re.compile(rf"({_N}\s*m?A)\s*(?:SAT|ISAT)\b", _KEEP)),
     ("temperature_coefficient", re.compile(rf"(?:±|\+\s*/?\s*-|\+|-)?\s*{_N}\s*PPM(?:\s*/\s*(?:K|°?C))?\b", _KEEP)),
     ("", re.compile(r"\b\d+\s*/\s*\d+\s*W(?:ATTS?)?\b", _KEEP)),
-    ("", re.compile(rf"(?<![\w.,]){_N}\s*m?W(?:ATTS?)?\b", _KEEP)),
-    ("", re.compile(r"(?<![\w.,])\d{2,3}\s*(?:°\s*C|C|DEGC)\b", _KEEP)),
+    ("", re.compile(rf"{_START}{_N}\s*m?W(?:ATTS?)?\b", _KEEP)),
+    ("", re.compile(rf"{_START}\d{{2,3}}\s*(?:°\s*C|C|DEGC)\b", _KEEP)),
 )
+_HYPHENED = re.compile(r"\b(NON|UN|E|AL)[- ](POLAR\w*|CAP|ELEC\w*)\b", _KEEP)
 _BEAD_IMPEDANCE = re.compile(rf"({_N}\s*k?\s*(?:R|OHMS?|Ω)?\s*(?:@|\bAT\b)\s*{_N}\s*[kMG]?HZ)", _KEEP)
 _TEST_FREQUENCY = re.compile(rf"(?:@|\bAT\b)\s*{_N}\s*[kMG]?HZ", _KEEP)
 
 _JOIN = re.compile(
-    rf"(?<![\w.,])({_N})\s+(?=(?:[pnuµμm]?F|[pnuµμ]FD|MFD|[pnuµμm]?H|[mk]?V|VDC|VAC|WV|WVDC|[mkM]?(?:OHMS?|Ω))(?![A-Za-z0-9]))",
+    rf"{_START}({_N})\s+(?=(?:[pnuµμm]?F|[pnuµμ]FD|MFD|[pnuµμm]?H|[mk]?V|VDC|VAC|WV|WVDC|[mkM]?(?:OHMS?|Ω))(?![A-Za-z0-9]))",
     _KEEP,
 )
-_JOIN_RESISTOR = re.compile(r"(?<![\w.,])(\d{1,3}(?:[.,]\d+)?)\s+(?=[kKMR]\b)")
+_JOIN_RESISTOR = re.compile(rf"{_START}(\d{{1,3}}(?:[.,]\d+)?)\s+(?=[kKMR]\b)")
 _DECIMAL_COMMA = re.compile(r"(?<![\d,.])(0|[1-9]\d{0,2}),(\d{1,3}(?=[A-Za-zµμΩ]))")
 _SPLIT = re.compile(r"[\s/;|()\[\]{}_=:,]+|(?<=[A-Za-z%])-(?=[A-Za-z0-9])|(?<=\d)-(?=[\d.]+[A-Za-z])")
 _VOLTAGE = re.compile(r"(\d+(?:\.\d+)?k?)(?:VDC|VAC|WVDC|WV|VW|V)|(\d+V\d+)", _KEEP)
@@ -99,6 +109,7 @@ def parse_description(text: str, kind: Kind) -> Mapping[str, str]:
     """
     found: dict[str, str] = {}
     rest = " " + text.replace("\u2212", "-").replace("\u00a0", " ") + " "
+    rest = _HYPHENED.sub(lambda match: f"{match[1]}{match[2]}", rest)
     if kind == "bead":
         rest = _cut(rest, "value", _BEAD_IMPEDANCE, found)
     rest = _cut(rest, "", _TEST_FREQUENCY, found)
@@ -141,7 +152,7 @@ def _meanings(token: str, kind: Kind) -> list[tuple[str, str]]:
     package = _PACKAGE.fullmatch(token)
     words = _capacitor_words(upper) if kind == "capacitor" else []
     meanings: list[tuple[str, str]] = []
-    if folded(token) in NOT_FITTED_WORDS and upper != "NM":
+    if folded(token) in NOT_FITTED_WORDS and upper not in ("NM", "OPEN"):
         meanings = [("fitted", token)]
     elif voltage:
         meanings = [("rated_voltage", f"{voltage[1]}V" if voltage[1] else voltage[2])]

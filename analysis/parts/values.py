@@ -72,11 +72,14 @@ def _with_letter(plain: str, kind: Kind) -> Value:
     unit = UNIT_OF_KIND[kind]
     try:
         return Value(parse_quantity(plain, unit))
-    except QuantityError:
+    except QuantityError as problem:
         behind = _LETTER_BEHIND.fullmatch(plain)
         if not behind:
             raise
-    return Value(parse_quantity(behind[1], unit), behind[2])
+        try:
+            return Value(parse_quantity(behind[1], unit), behind[2])
+        except QuantityError:
+            raise problem from None  # the message is about the whole text
 
 
 def _impedance(plain: str) -> Value:
