@@ -26,7 +26,7 @@ def write_edif(board: LoggerBoard, saved: datetime) -> bytes:
         '    (comment "Invented board, parts and part numbers, for demonstration")))',
         *_library("SYMBOLS", (line for symbol in SYMBOLS for line in _symbol(symbol))),
         *_library("SHEETS", (*_channel(board), *_top(board))),
-        "  (design greenhouse_logger (cellRef LOGGER (libraryRef SHEETS))))",
+        '  (design (rename greenhouse_logger "greenhouse-logger") (cellRef LOGGER (libraryRef SHEETS))))',
     ]
     return ("\n".join(lines) + "\n").encode("ascii")
 
