@@ -14,7 +14,7 @@ from reactance.analysis.brief_tables import BriefTables, Table
 from reactance.analysis.measures import MEASURES, Measure
 from reactance.analysis.parts.attributes import ALIASES
 from reactance.analysis.report import DutyKind, Status, Verdict
-from reactance.daemon.cli import main
+from reactance.daemon.cli import reactance
 
 ROOT = Path(__file__).resolve().parent.parent
 README = (ROOT / "README.md").read_text(encoding="utf-8")
@@ -66,7 +66,14 @@ def table_types() -> dict[str, type[msgspec.Struct]]:
     return found
 
 
-COMMANDS = main.commands if isinstance(main, click.Group) else {}
+def commands() -> dict[str, click.Command]:
+    """The program's commands by name."""
+    context = click.Context(reactance)
+    found = {name: reactance.get_command(context, name) for name in reactance.list_commands(context)}
+    return {name: command for name, command in found.items() if command is not None}
+
+
+COMMANDS = commands()
 TABLES = table_types()
 
 
