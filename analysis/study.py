@@ -6,7 +6,7 @@ next save costs only what it changed.
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass, field
 
 from reactance.analysis.bias import Bias, solve_bias
@@ -82,12 +82,20 @@ class Study:
         return origin_of(self, check_id)
 
 
-def analyse(files: BoardFiles, *, memory: Memory | None = None) -> Study:
-    """Read, understand and solve one board. Raises `InputError` where the export or the brief cannot be used."""
+def analyse(
+    files: BoardFiles, *, memory: Memory | None = None, understood: Callable[[], None] | None = None
+) -> Study:
+    """Read, understand and solve one board. Raises `InputError` where the export or the brief cannot be used.
+
+    `understood` is called between understanding and solving, for callers that time the two.
+    """
     kept = memory or Memory()
     design = read_export(files.export, memory=kept.forms)
     brief = read_brief(files.brief, files.brief_name)
-    return study(resolve_board(design, brief, files.knowledge), files.export_sha256, kept.solved)
+    board = resolve_board(design, brief, files.knowledge)
+    if understood is not None:
+        understood()
+    return study(board, files.export_sha256, kept.solved)
 
 
 def study(board: Board, export_sha256: str = "", solved: Solved | None = None) -> Study:
