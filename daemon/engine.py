@@ -42,9 +42,9 @@ Side = tuple[Design, Report, bytes | None]
 
 @dataclass(frozen=True, slots=True)
 class Engine:
-    """The four calls into the analysis."""
+    """The calls into the analysis. `analyse` calls its third argument once the board is understood."""
 
-    analyse: Callable[[BoardFiles, Any], Results]
+    analyse: Callable[[BoardFiles, Any, Callable[[], None]], Results]
     compare: Callable[[Side, Side], Comparison]
     design: Callable[[BoardFiles], Design]
     memory: Callable[[], Keeper]
@@ -57,7 +57,7 @@ def default_engine() -> Engine:
     from reactance.analysis.study import Memory, analyse
 
     return Engine(
-        analyse=lambda files, memory: analyse(files, memory=memory),
+        analyse=lambda files, memory, understood: analyse(files, memory=memory, understood=understood),
         compare=compare,
         design=lambda files: read_export(files.export),
         memory=Memory,

@@ -13,34 +13,18 @@ from fnmatch import fnmatchcase
 from functools import lru_cache
 from pathlib import Path, PurePosixPath
 
+from reactance.analysis.exports.sniff import TEMPORARY
+
 IGNORE_FILE = ".reactanceignore"
 _MOST_BYTES = 1_000_000
 
-# How editors, copy programs and version control name files that are on their way somewhere (common practice).
-_TEMPORARY = (
-    ".*",
-    "*~",
-    "#*#",
-    "~$*",
-    "*.tmp",
-    "*.temp",
-    "*.swp",
-    "*.swx",
-    "*.bak",
-    "*.old",
-    "*.orig",
-    "*.lck",
-    "*.lock",
-    "*.part",
-    "*.partial",
-    "*.filepart",
-    "*.crdownload",
-)
+# Beside what editors leave: copies on their way here, and a history that lies among what it is the history of.
+_PASSING = (*TEMPORARY, "*.filepart", "*.sqlite*")
 
 
 def is_temporary(name: str) -> bool:
     """Whether a file or folder of that name is an editor's own affair."""
-    return any(fnmatchcase(name.lower(), pattern) for pattern in _TEMPORARY)
+    return any(fnmatchcase(name.lower(), pattern) for pattern in _PASSING)
 
 
 @dataclass(frozen=True, slots=True)

@@ -38,10 +38,11 @@ class Intake:
         it may be half-written. Raises nothing for what is in the files."""
         timings = timings or Timings()
         name = Path(save.file).name
-        started = time.perf_counter()
+        clock = [time.perf_counter()]
         try:
-            study = self._engine.analyse(files, self._memory(save.file))
-            timings = replace(timings, solve=time.perf_counter() - started)
+            study = self._engine.analyse(files, self._memory(save.file), lambda: clock.append(time.perf_counter()))
+            clock.append(time.perf_counter())
+            timings = replace(timings, understand=clock[1] - clock[0], solve=clock[-1] - clock[1])
             return self._store(save, files, (study.design, study.report, files.brief), timings)
         except InputError as error:
             return Outcome("broken", save.file, name, message=str(error), timings=timings)

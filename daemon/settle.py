@@ -30,6 +30,7 @@ _QUIET: Mapping[Hint, float] = {
 _QUIET_WITHOUT_CLOSE: Mapping[Hint, float] = {**_QUIET, "written": 0.15}
 BROKEN_AFTER = 2.0
 GONE_AFTER = 1.0
+RESTLESS_AFTER = 0.5
 _LOOK_AGAIN = 0.03
 
 
@@ -37,6 +38,7 @@ _LOOK_AGAIN = 0.03
 class _Pending:
     """A board with something going on. `failed` is the message of a reading that found it broken."""
 
+    since: float
     changed: float
     hint: Hint
     signature: Signature | None = None
@@ -59,7 +61,7 @@ class Settler:
         """Something happened to one of the board's files."""
         pending = self._pending.get(board)
         if pending is None:
-            self._pending[board] = _Pending(now, hint, self.signature(board))
+            self._pending[board] = _Pending(now, now, hint, self.signature(board))
             return
         pending.changed, pending.hint, pending.failed = now, hint, None
 
@@ -67,7 +69,7 @@ class Settler:
         """A reading of these very contents failed; they get until two seconds after `changed`, their last change."""
         pending = self._pending.get(board)
         if pending is None:
-            pending = self._pending[board] = _Pending(changed, "found", signature)
+            pending = self._pending[board] = _Pending(changed, changed, "found", signature)
         if self.signature(board) == signature:
             pending.failed, pending.signature = message, signature
         else:
@@ -76,6 +78,10 @@ class Settler:
     def settled(self, board: str) -> None:
         """The board was read whole; whatever happens next is another save."""
         self._pending.pop(board, None)
+
+    def boards(self) -> tuple[str, ...]:
+        """The boards on which something is going on."""
+        return tuple(self._pending)
 
     def changed(self, board: str, now: float) -> float:
         """When the board last changed, as far as is known."""
@@ -121,4 +127,6 @@ class Settler:
         still = now - pending.changed
         if pending.failed is not None:
             return "broken" if still >= BROKEN_AFTER else None
-        return "read" if still >= self.quiet[pending.hint] else None
+        # A file that is saved over and over gets no rest, but each save leaves it whole for a while.
+        restless = pending.hint in ("arrived", "closed") and now - pending.since >= RESTLESS_AFTER
+        return "read" if restless or still >= self.quiet[pending.hint] else None

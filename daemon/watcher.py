@@ -9,7 +9,7 @@ from __future__ import annotations
 import queue
 import time
 from collections.abc import Callable, Iterable
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from pathlib import Path
 
 from reactance.analysis.files import BoardFiles
@@ -35,7 +35,6 @@ class _Event:
     path: str
     hint: Hint
     folder: bool
-    at: float = field(default_factory=time.time)
 
 
 @dataclass(frozen=True, slots=True)
@@ -106,7 +105,6 @@ class Watcher:
         self._analyst = Analyst(intake, lambda job, outcome: self._inbox.put(_Done(job, outcome)))
         self._aside = _Aside(self._registry, self._roots)
         self._refused: dict[str, tuple[BoardFiles, str]] = {}
-        self._noticed: dict[str, float] = {}
         self._no_exports: dict[str, Signature] = {}
         self._polled: tuple[Root, ...] = ()
         self._next_poll = self._next_aside = self._next_rescan = 0.0
@@ -186,20 +184,19 @@ class Watcher:
     def _hear(self, event: _Event) -> None:
         if event.folder:
             for board in self._registry.below(event.path):
-                self._note(board, "removed" if event.hint == "removed" else "found", event.at)
+                self._note(board, "removed" if event.hint == "removed" else "found")
             if event.hint in ("arrived", "opened"):
                 self._search(self._roots, Path(event.path))
             return
         boards = self._registry.dependents(event.path)
         for board in boards:
-            self._note(board, event.hint, event.at)
+            self._note(board, event.hint)
         if event.path not in boards and event.hint != "removed":
             path = Path(event.path)
             if any(root.holds(path) for root in self._roots):
-                self._note(event.path, event.hint, event.at)
+                self._note(event.path, event.hint)
 
-    def _note(self, board: str, hint: Hint, at: float) -> None:
-        self._noticed.setdefault(board, at)
+    def _note(self, board: str, hint: Hint) -> None:
         self._settler.note(board, hint, time.monotonic())
 
     def _look(self, source: Source) -> None:
@@ -223,7 +220,7 @@ class Watcher:
             if now != old:
                 self._aside.seen(path, now)
                 for board in self._registry.dependents(path):
-                    self._note(board, "removed" if now == (None,) else "found", time.time())
+                    self._note(board, "removed" if now == (None,) else "found")
         for root in self._roots if self._polling is None else ():
             identity = _identity(root.folder)
             if identity is not None and identity != self._folders.get(root):
@@ -238,7 +235,7 @@ class Watcher:
             return
         now = self._registry.signature(board)
         if now != known.seen and not (known.gone and not Path(board).exists()):
-            self._note(board, "removed" if self._registry.lost_some(board, now) else "found", time.time())
+            self._note(board, "removed" if self._registry.lost_some(board, now) else "found")
             known.seen = now
 
     def _search(self, roots: Iterable[Root], folder: Path | None = None) -> None:
@@ -251,17 +248,16 @@ class Watcher:
                 if board in self._registry:
                     self._check(board)
                 elif self._no_exports.get(board) != signature((board,)):
-                    self._note(board, "found", time.time())
+                    self._note(board, "found")
         for board in self._registry.names():
             self._check(board)
 
     # -- reading -------------------------------------------------------------------------------------------
 
     def _read(self, board: str) -> None:
-        noticed = self._noticed.get(board, time.time())
         if not self._is_board(board):
             self._no_exports[board] = signature((board,))
-            self._forget(board)
+            self._settler.settled(board)
             return
         known = self._registry.know(board)
         started, clock = time.time(), time.perf_counter()
@@ -282,11 +278,10 @@ class Watcher:
         if reading.files.sha256 == known.sha256:
             self._same_again(board, changed)
             return
-        self._forget(board)
+        self._settler.settled(board)
         self._refused.pop(board, None)
         known.sha256, known.gone = reading.files.sha256, False
-        event = max(0.0, noticed - reading.saved) if noticed - reading.saved < _PATIENCE else 0.0
-        timings = Timings(event=event, settle=max(0.0, started - noticed), read=took)
+        timings = _so_far(reading.saved, started, time.monotonic() - took - changed, took)
         self._analyst.submit(
             Job("take", board, reading.saved, started, reading.files, "", known.seen, changed, timings)
         )
@@ -302,25 +297,19 @@ class Watcher:
         if refused is not None:  # and still waiting to be called broken
             self._settler.broken(board, known.seen, refused[1], changed)
             return
-        self._forget(board)
+        self._settler.settled(board)
         if known.gone:
             known.gone = False
             self._analyst.submit(Job("back", board))
         self._arrived(board)
 
-    def _forget(self, board: str) -> None:
-        self._settler.settled(board)
-        self._noticed.pop(board, None)
-
     def _lose(self, board: str) -> None:
-        self._noticed.pop(board, None)
         known = self._registry.get(board)
         if known is not None and not known.gone:
             known.gone = True
             self._analyst.submit(Job("gone", board))
 
     def _refuse(self, board: str, message: str) -> None:
-        self._noticed.pop(board, None)
         known = self._registry.know(board)
         saved = max((_modified(path) for path in known.dependencies), default=0.0)
         files, _ = self._refused.pop(board, (None, ""))
@@ -349,13 +338,13 @@ class Watcher:
                 known.gone = row.gone
                 newest = self._history.latest(row.id, good=False)
                 known.sha256 = newest.sha256 if newest and newest.error is None else None
-                self._note(row.file, "found", time.time())
+                self._note(row.file, "found")
         self._search(self._roots)
         now = time.monotonic()
         self._next_aside, self._next_poll = now + _ASIDE_SECONDS, now + (self._polling or POLLING_SECONDS)
         self._next_rescan = now + _RESCAN_SECONDS
         self._folders = {root: _identity(root.folder) for root in self._roots}
-        self._catching_up = {board for board in self._noticed if self._is_board(board)}
+        self._catching_up = {board for board in self._settler.boards() if self._is_board(board)}
         self._first_pass(0, len(self._catching_up))
 
     def _arrived(self, board: str) -> None:
@@ -363,6 +352,12 @@ class Watcher:
             self._catching_up.discard(board)
             self._caught_up += 1
             self._first_pass(self._caught_up, self._caught_up + len(self._catching_up))
+
+
+def _so_far(saved: float, started: float, settled: float, read: float) -> Timings:
+    """The first stages: the event's is known where the save was just made, and not found later."""
+    event = started - settled - saved
+    return Timings(event=event if 0.0 <= event < _PATIENCE else 0.0, settle=settled, read=read)
 
 
 def _modified(path: str) -> float:

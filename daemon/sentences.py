@@ -1,0 +1,79 @@
+"""Sentences about what a save did, each with its figures."""
+
+from __future__ import annotations
+
+from collections import Counter
+
+from reactance.analysis.report import Comparison, Edit, Movement, Report, Verdict
+from reactance.daemon.outcome import Outcome
+from reactance.daemon.text import plural
+
+_ORDER: dict[Verdict, int] = {"worse": 0, "better": 1, "moved": 2}
+
+
+def in_order(movements: tuple[Movement, ...]) -> list[Movement]:
+    """What got worse first."""
+    return sorted(movements, key=lambda movement: _ORDER[movement.verdict])
+
+
+def movement_sentences(comparison: Comparison, older: Report, newer: Report) -> list[tuple[Verdict, str]]:
+    """One sentence per movement, with its verdict."""
+    from reactance.analysis.difference import sentence
+
+    return [
+        (movement.verdict, sentence(movement, comparison.edits, older, newer))
+        for movement in in_order(comparison.movements)
+    ]
+
+
+def edit_sentence(edit: Edit) -> str:
+    """An edit in words."""
+    subject = " ".join(word for word in (edit.part, edit.attribute) if word)
+    change = {
+        (True, True): f"{edit.before} → {edit.after}",
+        (True, False): f"{edit.before}",
+        (False, True): f"{edit.after}",
+        (False, False): "",
+    }[edit.before is not None, edit.after is not None]
+    return f"{edit.kind}: {subject} {change}".replace("  ", " ").rstrip(" :")
+
+
+def save_line(outcome: Outcome) -> str:
+    """One line about a save: which revision it made and what moved."""
+    if outcome.kind == "gone":
+        return f"{outcome.name}: gone; its history is kept"
+    if outcome.kind == "back":
+        return f"{outcome.name}: back, unchanged"
+    if outcome.kind == "same":
+        return f"{outcome.name}: unchanged"
+    if outcome.kind == "not stored":
+        return f"{outcome.name}: not stored: {outcome.message}"
+    if outcome.kind == "broken":
+        return f"{outcome.name}: cannot be used: {outcome.message}"
+    number = f" #{outcome.revision.id}" if outcome.revision else ""
+    return f"{outcome.name}{number}: {_effect(outcome)}"
+
+
+def _effect(outcome: Outcome) -> str:
+    if outcome.comparison is None or outcome.older is None or outcome.report is None:
+        return _first(outcome.report)
+    comparison = outcome.comparison
+    edits = plural(len(comparison.edits), "edit")
+    if not comparison.movements:
+        return f"{edits}, nothing moved"
+    counts = Counter(movement.verdict for movement in comparison.movements)
+    verdicts = ", ".join(f"{counts[verdict]} {verdict}" for verdict in _ORDER if counts[verdict])
+    said = [words for _, words in movement_sentences(comparison, outcome.older, outcome.report)]
+    more = f"; and {len(said) - _MOST_SAID} more" if len(said) > _MOST_SAID else ""
+    return f"{edits}, {verdicts}: {'; '.join(said[:_MOST_SAID])}{more}"
+
+
+_MOST_SAID = 3
+
+
+def _first(report: Report | None) -> str:
+    if report is None:
+        return "stored"
+    counts = Counter(check.status for check in report.checks)
+    failing = f", {counts['fail']} failing" if counts["fail"] else ""
+    return f"first revision: {plural(report.design.parts, 'part')}, {plural(len(report.checks), 'check')}{failing}"
