@@ -86,13 +86,8 @@ _STEPS = (
     ),
     _Step("C23 is back", "The connector moved instead; +1V8 holds again.", _core_repaired),
     _Step(
-        "C11 in a smaller case",
-        "The same 10 uF, 10 V and X7R on paper, 0402 in place of 0805: far less of it is left at 3.3 V.",
-        _smaller_case,
-    ),
-    _Step(
         "Probe filters share the 47k reel",
-        "One resistor value fewer on the parts list. R2 stands in the shared channel, so four corners move.",
+        "One reel fewer to load. R2 stands in the shared channel, so four corners move.",
         _slower_probes,
     ),
     _Step(
@@ -109,5 +104,10 @@ _STEPS = (
         "Review findings mended",
         "Every part back to what its duty asks for; the bias divider settles at 82k.",
         _repaired,
+    ),
+    _Step(
+        "C11 in a smaller case",
+        "A late wish for room: 0402 in place of 0805, on paper the same 10 uF, 10 V, X7R. At 3.3 V far less is left.",
+        _smaller_case,
     ),
 )

@@ -24,7 +24,6 @@ RANK = {"pass": 2, "marginal": 1, "fail": 0}
 STORY: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     "C23 makes way for a connector": (("rail:+1V8:droop", "rail:+1V8:impedance"), ()),
     "C23 is back": ((), ("rail:+1V8:droop", "rail:+1V8:impedance")),
-    "C11 in a smaller case": (("rail:+3V3:droop", "rail:+3V3:impedance"), ()),
     "Probe filters share the 47k reel": (
         tuple(f"filter:soil probe {n}:{m}" for n in (1, 2, 3, 4) for m in ("corner_high", "settling")),
         (),
@@ -33,8 +32,9 @@ STORY: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     "A cheaper input capacitor": (("part:C1:stress",), ()),
     "Review findings mended": (
         (),
-        ("rail:+3V3:droop", "coupling:bat microphone:loss", "part:C1:stress", "filter:soil probe 3:corner_high"),
+        ("coupling:bat microphone:loss", "part:C1:stress", "filter:soil probe 3:corner_high"),
     ),
+    "C11 in a smaller case": (("rail:+3V3:droop", "rail:+3V3:impedance"), ()),
 }
 # What the story leaves failing for its reader to see, by save.
 FAILING = {
@@ -122,7 +122,7 @@ def test_each_save_does_what_its_story_tells(before: str, after: str, studies: d
 
 
 def test_the_repair_brings_everything_back(studies: dict[str, Study]) -> None:
-    first, last = checks(studies[TITLES[0]].report), checks(studies[TITLES[-1]].report)
+    first, last = checks(studies[TITLES[0]].report), checks(studies["Review findings mended"].report)
     assert first.keys() == last.keys()
     fallen = [name for name, check in last.items() if RANK.get(check.status, 3) < RANK.get(first[name].status, 3)]
     assert not fallen
