@@ -22,7 +22,7 @@ from reactance.analysis.net_kinds import NetClass, classify_nets
 from reactance.analysis.parts.knowledge import Knowledge, KnowledgeRow, validate_knowledge
 from reactance.analysis.parts.models import CapacitorModel, Conditions, PartModel, ResistorModel
 from reactance.analysis.parts.resolve import resolve_part
-from reactance.analysis.parts.sections import sections
+from reactance.analysis.parts.sections import sections, through
 
 _T = TypeVar("_T")
 CELSIUS_DEFAULT = 25.0
@@ -219,7 +219,7 @@ def _row(row: Any, place: Place, index: int, source: str) -> KnowledgeRow:
 
 
 def _join_nets(design: Design, models: Mapping[str, PartModel]) -> dict[str, str]:
-    """A parent for each net name (union-find, compressed), joined over fitted 0 Ω parts."""
+    """A parent for each net name (union-find, compressed), joined over fitted 0 Ω parts and feed-throughs."""
     parent = {net.name: net.name for net in design.nets}
 
     def root(net: str) -> str:
@@ -230,11 +230,13 @@ def _join_nets(design: Design, models: Mapping[str, PartModel]) -> dict[str, str
 
     for part in design.parts:
         model = models[part.refdes]
-        if isinstance(model, ResistorModel) and model.fitted and model.is_short:
-            for one, other in sections(model, part):
-                a, b = _net_of(part, one), _net_of(part, other)
-                if a is not None and b is not None:
-                    parent[root(a)] = root(b)
+        if not model.fitted:
+            continue
+        short = isinstance(model, ResistorModel) and model.is_short
+        for one, other in sections(model, part) if short else through(model, part):
+            a, b = _net_of(part, one), _net_of(part, other)
+            if a is not None and b is not None:
+                parent[root(a)] = root(b)
     return {net: root(net) for net in parent}
 
 

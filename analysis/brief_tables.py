@@ -99,14 +99,14 @@ class Table(msgspec.Struct, frozen=True, forbid_unknown_fields=True):
     """One table of the brief; a key that it does not list is an error."""
 
 
-class TemperatureRange(Table):
+class TemperatureRange(Table, frozen=True):
     """Lowest and highest ambient temperature of the board."""
 
     low: Celsius
     high: Celsius
 
 
-class BoardTable(Table):
+class BoardTable(Table, frozen=True):
     """What holds for the whole board."""
 
     title: str = ""
@@ -119,28 +119,28 @@ class BoardTable(Table):
     parts: tuple[str, ...] = ()
 
 
-class SourceImpedance(Table):
+class SourceImpedance(Table, frozen=True):
     """Output impedance of what feeds a rail."""
 
     resistance: Ohm = Ohm(0.0)
     inductance: Henry = Henry(0.0)
 
 
-class LoadStep(Table):
+class LoadStep(Table, frozen=True):
     """The load's current step: a linear ramp of `rise`, then steady."""
 
     current: Ampere
     rise: Second
 
 
-class Span(Table):
+class Span(Table, frozen=True):
     """A band of frequencies."""
 
     low: Hertz
     high: Hertz
 
 
-class RailTable(Table):
+class RailTable(Table, frozen=True):
     """A supply rail and what it has to keep."""
 
     net: str
@@ -154,7 +154,7 @@ class RailTable(Table):
     bypass: float | None = None
 
 
-class PinTable(Table):
+class PinTable(Table, frozen=True):
     """What one pin, or each of several, does to its net."""
 
     at: str | tuple[str, ...]
@@ -172,21 +172,21 @@ class PinTable(Table):
         return (self.at,) if isinstance(self.at, str) else self.at
 
 
-class SettleTable(Table):
+class SettleTable(Table, frozen=True):
     """How near, and within which time, an output has to settle."""
 
     within: VoltOrShare
     time: Second | None = None
 
 
-class TiltTable(Table):
+class TiltTable(Table, frozen=True):
     """A rectangular pulse and the greatest sag allowed at its end."""
 
     pulse: Second
     most: Fraction | None = None
 
 
-class CouplingTable(Table, rename={"from_": "from"}):
+class CouplingTable(Table, frozen=True, rename={"from_": "from"}):
     """A signal that passes between two bias points."""
 
     from_: str
@@ -199,21 +199,21 @@ class CouplingTable(Table, rename={"from_": "from"}):
     rejection: Decibel | None = None
 
 
-class Bounds(Table):
+class Bounds(Table, frozen=True):
     """Least and most of a frequency."""
 
     least: Hertz | None = None
     most: Hertz | None = None
 
 
-class AttenuationTable(Table):
+class AttenuationTable(Table, frozen=True):
     """The least attenuation at one frequency."""
 
     at: Hertz
     least: Decibel | None = None
 
 
-class PassbandTable(Table):
+class PassbandTable(Table, frozen=True):
     """Where a filter must pass, and how evenly."""
 
     to: Hertz
@@ -221,14 +221,14 @@ class PassbandTable(Table):
     ripple: Decibel | None = None
 
 
-class FilterStep(Table):
+class FilterStep(Table, frozen=True):
     """What a filter's step response has to keep."""
 
     overshoot: Fraction | None = None
     settle: Second | None = None
 
 
-class FilterTable(Table, rename={"from_": "from"}):
+class FilterTable(Table, frozen=True, rename={"from_": "from"}):
     """A frequency response between two nets."""
 
     from_: str
@@ -244,7 +244,7 @@ class FilterTable(Table, rename={"from_": "from"}):
     rejection: Decibel | None = None
 
 
-class AmplifierTable(Table):
+class AmplifierTable(Table, frozen=True):
     """An amplifier with one pole, between three pins."""
 
     plus: str
@@ -255,14 +255,14 @@ class AmplifierTable(Table):
     output_resistance: Ohm = Ohm(0.0)
 
 
-class DutyTable(Table, rename={"is_": "is"}):
+class DutyTable(Table, frozen=True, rename={"is_": "is"}):
     """Overrules the duty that was worked out for a capacitor."""
 
     capacitor: str
     is_: DutyKind
 
 
-class BriefTables(Table):
+class BriefTables(Table, frozen=True):
     """The whole brief as written. `part` rows are read by the part models."""
 
     board: BoardTable = BoardTable()

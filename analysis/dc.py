@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -11,7 +12,7 @@ from numpy.typing import NDArray
 from reactance.analysis.bias import Bias
 from reactance.analysis.blocks import Block, make_block
 from reactance.analysis.board import Board, Section
-from reactance.analysis.circuit.network import Capacitor, CurrentSource, Network, VoltageSource
+from reactance.analysis.circuit.network import Capacitor, CurrentSource, Network, Parameter, VoltageSource
 from reactance.analysis.circuit.spread import spread
 from reactance.analysis.circuit.sweep import frequency_response
 from reactance.analysis.elements import node, rail_source
@@ -75,7 +76,7 @@ def _solve(block: Block, probe: tuple[str, str]) -> Value:
 
 
 def dc_volts(
-    network: Network, probe: tuple[str, str], parameters: tuple[object, ...], values: NDArray[np.float64]
+    network: Network, probe: tuple[str, str], parameters: Sequence[Parameter], values: NDArray[np.float64]
 ) -> NDArray[np.float64]:
     """The DC voltage between two nodes for each row of `values` (V, P): shape (V,), in volts.
 

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import Literal
 
@@ -11,6 +12,7 @@ from reactance.analysis.blocks import Block, make_block
 from reactance.analysis.board import Board, DescribedPin
 from reactance.analysis.brief_tables import CouplingTable, FilterTable
 from reactance.analysis.circuit.network import VoltageSource
+from reactance.analysis.circuit.operating_point import operating_point
 from reactance.analysis.elements import GROUND, node, rail_source_name, source_name
 from reactance.analysis.region import Region, grow, is_stiff
 
@@ -122,10 +124,28 @@ class SignalNetworks:
     @cached_property
     def start(self) -> Block:
         """The network with every source at its DC level."""
-        extra: tuple[VoltageSource, ...] = ()
-        if self.needs_level:
-            extra = (VoltageSource(EMF, node(self.board, self.path.from_net), GROUND, 0.0),)
-        return make_block(self.board, self.bias, self.start_region, extra=extra)
+        return make_block(self.board, replace(self.bias, volts=self.local_volts), self.start_region, extra=self._level)
+
+    @property
+    def _level(self) -> tuple[VoltageSource, ...]:
+        if not self.needs_level:
+            return ()
+        return (VoltageSource(EMF, node(self.board, self.path.from_net), GROUND, 0.0),)
+
+    @cached_property
+    def local_volts(self) -> Mapping[str, float | None]:
+        """DC potentials in volts: the board's, and those that a stand-in at the `from` net defines."""
+        if not self.needs_level:
+            return self.bias.volts
+        block = make_block(self.board, self.bias, self.start_region, extra=self._level)
+        point = operating_point(block.network)
+        floating = set(point.floating)
+        solved = {net: point.voltages.get(net) for net in block.nets if net not in floating}
+        return {**solved, **{net: volts for net, volts in self.bias.volts.items() if volts is not None}}
+
+    def start_key(self) -> str:
+        """The content of the start's network, for couplings; a filter's step needs none."""
+        return self.start.key("start") if self.path.kind == "coupling" else ""
 
     def rails(self) -> tuple[tuple[str, str], ...]:
         """Rails that the path hangs on, each with the name of its source in `ac`."""

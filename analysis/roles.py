@@ -6,9 +6,11 @@ from collections.abc import Iterable
 from dataclasses import dataclass
 
 from reactance.analysis.board import Board, end_net
-from reactance.analysis.duties import Assigned, BriefedPath, assign_duties, shown_paths
+from reactance.analysis.duties import Assigned, BriefedPath
+from reactance.analysis.duties import duties as assign_duties
+from reactance.analysis.signal_paths import shown_paths
 from reactance.analysis.paths import SignalPath
-from reactance.analysis.topology import Branch, Terminal, Topology, nets_between, prefix_of
+from reactance.analysis.topology import Branch, Terminal, Topology, prefix_of
 
 
 @dataclass(frozen=True)
@@ -61,9 +63,7 @@ def assign_roles(board: Board) -> Roles:
     """Work out duties and paths; what the brief says comes before what the design shows."""
     topology = topology_of(board)
     paths = list(briefed_paths(board))
-    briefed = [
-        BriefedPath(p.anchor, p.kind, p.from_net, p.to_net, nets_between(topology, p.from_net, p.to_net)) for p in paths
-    ]
+    briefed = [BriefedPath(path.anchor, path.kind, path.from_net, path.to_net) for path in paths]
     overrules = {duty.capacitor: duty.is_ for duty in board.brief.tables.duty}
     duties = assign_duties(topology, briefed, overrules)
     known = {frozenset((path.from_net, path.to_net)) for path in paths}
