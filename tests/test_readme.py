@@ -13,7 +13,23 @@ import pytest
 from reactance.analysis.brief_tables import BriefTables, Table
 from reactance.analysis.measures import MEASURES, Measure
 from reactance.analysis.parts.attributes import ALIASES
-from reactance.analysis.report import DutyKind, Status, Verdict
+from reactance.analysis.report import (
+    AssumptionEntry,
+    CapacitorEntry,
+    Check,
+    Curve,
+    DesignSummary,
+    Duty,
+    DutyKind,
+    Edit,
+    Movement,
+    NetEntry,
+    PartEntry,
+    ProblemEntry,
+    Report,
+    Status,
+    Verdict,
+)
 from reactance.daemon.cli import reactance
 
 ROOT = Path(__file__).resolve().parent.parent
@@ -143,6 +159,29 @@ def test_statuses_verdicts_and_duties_are_all_explained() -> None:
     assert sorted(words) == sorted((*typing.get_args(Status), *typing.get_args(Verdict)))
     duty = section("### `[[duty]]`")
     assert all(f"`{kind}`" in duty for kind in typing.get_args(DutyKind))
+
+
+STRUCTS = {
+    "`reactance.check/1`": (Report, DesignSummary),
+    "a net": (NetEntry,),
+    "a part": (PartEntry,),
+    "a capacitor": (CapacitorEntry,),
+    "a duty": (Duty,),
+    "a check": (Check,),
+    "an assumption": (AssumptionEntry,),
+    "a problem": (ProblemEntry,),
+    "a curve": (Curve,),
+    "an edit": (Edit,),
+    "a movement": (Movement,),
+}
+
+
+@pytest.mark.parametrize("name", sorted(STRUCTS))
+def test_every_member_of_the_json_is_listed(name: str) -> None:
+    row = next(line for line in section("### Output as JSON").splitlines() if line.startswith(f"| {name} |"))
+    words = set(re.findall(r"`([^`]+)`", row))
+    members = {entry.encode_name for struct in STRUCTS[name] for entry in msgspec.structs.fields(struct)}
+    assert members <= words
 
 
 def test_pictures_and_links_lead_somewhere() -> None:
