@@ -15,6 +15,7 @@ from reactance.daemon.rows import HistoryError
 from reactance.daemon.schema import migrate
 
 _BUSY_SECONDS = 20.0  # a writer waits this long for another process's write, which takes milliseconds
+_MAGIC = b"SQLite format 3\0"  # https://www.sqlite.org/fileformat.html, 1.3.1
 _POLL_SECONDS = 0.25  # how often a waiter looks for writes of other processes
 
 
@@ -45,6 +46,7 @@ class Database:
                 "lock it there (name a file on a local disk with --history or REACTANCE_HISTORY)"
             )
         try:
+            self._refuse_other_files()
             if create:
                 self.path.parent.mkdir(parents=True, exist_ok=True)
             connection = self.connection()
@@ -62,6 +64,17 @@ class Database:
                 f"{self.path}: this file system does not allow SQLite's write-ahead log "
                 "(name a file on a local disk with --history or REACTANCE_HISTORY)"
             )
+
+    def _refuse_other_files(self) -> None:
+        """SQLite takes a file of a few bytes for an empty database, and would write over it."""
+        half_made = self.path.with_name(f"{self.path.name}-journal").exists()  # killed while it was being made
+        if self.path.is_file() and not half_made:
+            with self.path.open("rb") as file:
+                head = file.read(len(_MAGIC))
+            if head and head != _MAGIC:
+                raise HistoryError(
+                    f"{self.path}: this is no database (name another file with --history or REACTANCE_HISTORY)"
+                )
 
     def _refusal(self, error: BaseException) -> HistoryError:
         return HistoryError(
