@@ -13,7 +13,8 @@ class Limits:
 
     `depth` counts open brackets (or XML elements); the EDIF reader holds it exactly from 32 upward. `forms` counts
     the entries of a file that are kept, `levels` the hierarchy's depth, `blocks` the places where a hierarchical
-    cell stands in the flattened design, `array` the members of one array.
+    cell stands in the flattened design, `array` the members of one array, `columns` the
+    cells in a row of a table.
     """
 
     bytes: int = 100_000_000
@@ -26,6 +27,7 @@ class Limits:
     array: int = 65_536
     name: int = 1_000
     text: int = 100_000
+    columns: int = 1_000
     problems: int = 200
 
     def check(self, what: str, count: int, place: Place) -> None:
@@ -52,4 +54,5 @@ _WORDS = {
     "array": "members of one array",
     "name": "characters in one name",
     "text": "characters in one text",
+    "columns": "cells in one row",
 }
