@@ -1,91 +1,124 @@
-"""Makes the README's pictures: plays the demonstration into a fresh history and photographs the dashboard.
+"""Pictures of every page, light and dark, wide and narrow, for looking at: `python screenshots.py URL FOLDER`.
 
-    python tests/dashboard/screenshots.py [FOLDER]
-
-FOLDER is where the pictures go, `.pictures` of the repository where none is named. Needs Debian's chromium and
-chromium-driver.
+`URL` is a running dashboard, as `reactance demo` serves it. Pages are found from its first board.
 """
 
 from __future__ import annotations
 
-import shutil
+import base64
+import json
+import re
 import sys
 import tempfile
-from collections.abc import Iterator
+import urllib.request
+from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
+from html import unescape
 from pathlib import Path
-from urllib.parse import quote
+from urllib.parse import urljoin
 
-from reactance.analysis.exports import ExportFiles
-from reactance.analysis.files import BoardFiles
-from reactance.daemon.demo import FILE, STEM, saves
-from reactance.daemon.engine import default_engine
-from reactance.daemon.history import History, Saved
-from reactance.daemon.intake import Intake
-from reactance.dashboard.serve import serve
 from selenium import webdriver
 from selenium.webdriver.chrome.service import Service
-from selenium.webdriver.common.by import By
-from selenium.webdriver.support.wait import WebDriverWait
+from selenium.webdriver.support.ui import WebDriverWait
 
-ROOT = Path(__file__).resolve().parents[2]
-EPOCH, PAUSE = 1_930_468_360.0, 17 * 60.0  # when the story begins, and how long it goes on between two saves, s
-WIDE, NARROW = (1280, 1000), (390, 1000)
-CHECK = "rail:+3V3:impedance"
-
-
-def play(history: History, folder: Path) -> int:
-    """Stores every save of the demonstration; returns the board's id in the history."""
-    intake = Intake(history, default_engine())
-    for number, save in enumerate(saves()):
-        at = EPOCH + PAUSE * number
-        files = BoardFiles(ExportFiles(save.export, FILE, {}), save.brief, f"{STEM}.brief.toml", {})
-        outcome = intake.take(Saved(str(folder / FILE), at, at, None), files)
-        if outcome.revision is None:
-            raise SystemExit(f"{save.title}: {outcome.message}")
-    return history.boards()[0].id
+FLAGS = (
+    "--headless=new",
+    "--no-sandbox",
+    "--disable-gpu",
+    "--disable-quic",
+    "--no-first-run",
+    "--disable-background-networking",
+    "--disable-component-update",
+    "--disable-sync",
+    "--hide-scrollbars",
+)
+WIDTHS = {"wide": (1280, 800), "narrow": (390, 844)}
 
 
 @contextmanager
-def browser(size: tuple[int, int], *, dark: bool) -> Iterator[webdriver.Chrome]:
-    """A headless Chromium of that size, in the light or in the dark."""
-    options = webdriver.ChromeOptions()
-    for flag in ("--headless=new", "--no-sandbox", "--disable-dev-shm-usage", "--hide-scrollbars"):
-        options.add_argument(flag)
-    driver = webdriver.Chrome(options=options, service=Service(shutil.which("chromedriver")))
-    try:
-        scheme = [{"name": "prefers-color-scheme", "value": "dark" if dark else "light"}]
-        driver.execute_cdp_cmd("Emulation.setEmulatedMedia", {"features": scheme})
-        metrics = {"width": size[0], "height": size[1], "deviceScaleFactor": 1, "mobile": False}
-        driver.execute_cdp_cmd("Emulation.setDeviceMetricsOverride", metrics)
-        yield driver
-    finally:
-        driver.quit()
+def browser() -> Iterator[webdriver.Chrome]:
+    """Debian's Chromium without a window, with a profile of its own."""
+    with tempfile.TemporaryDirectory(prefix="chromium-", ignore_cleanup_errors=True) as profile:
+        options = webdriver.ChromeOptions()
+        options.binary_location = "/usr/bin/chromium"
+        for flag in (*FLAGS, f"--user-data-dir={profile}"):
+            options.add_argument(flag)
+        options.set_capability("goog:loggingPrefs", {"browser": "ALL"})
+        driver = webdriver.Chrome(options=options, service=Service("/usr/bin/chromedriver"))
+        try:
+            yield driver
+        finally:
+            driver.quit()
 
 
-def photograph(url: str, to: Path, size: tuple[int, int] = WIDE, *, dark: bool = False, wait_for: str = "main") -> None:
-    """One page, once the element `wait_for` (a CSS selector) is there."""
-    with browser(size, dark=dark) as driver:
-        driver.get(url)
-        WebDriverWait(driver, 20).until(lambda page: page.find_elements(By.CSS_SELECTOR, wait_for))
-        driver.save_screenshot(str(to))
+def look(driver: webdriver.Chrome, width: str, dark: bool) -> None:
+    """Sets the window's size and the colour scheme that the page sees."""
+    wide, high = WIDTHS[width]
+    driver.execute_cdp_cmd(
+        "Emulation.setDeviceMetricsOverride",
+        {"width": wide, "height": high, "deviceScaleFactor": 1, "mobile": width == "narrow"},
+    )
+    scheme = {"name": "prefers-color-scheme", "value": "dark" if dark else "light"}
+    driver.execute_cdp_cmd("Emulation.setEmulatedMedia", {"features": [scheme]})
 
 
-def main() -> None:
-    """Plays and photographs."""
-    to = Path(sys.argv[1]) if len(sys.argv) > 1 else ROOT / ".pictures"
-    to.mkdir(parents=True, exist_ok=True)
-    with tempfile.TemporaryDirectory() as scratch, History.open(Path(scratch) / "history.sqlite") as history:
-        board = play(history, Path(scratch))
-        with serve(history, port=0) as server:
-            page = f"{server.url}board/{board}"
-            check = f"{page}/check?id={quote(CHECK)}"
-            photograph(page, to / "board.png")
-            photograph(page, to / "board-dark.png", dark=True)
-            photograph(page, to / "board-narrow.png", NARROW)
-            photograph(check, to / "check.png", wait_for=".main-svg")
-            photograph(check, to / "check-dark.png", dark=True, wait_for=".main-svg")
+def picture(driver: webdriver.Chrome, path: Path) -> None:
+    """The whole page as a PNG."""
+    shot = driver.execute_cdp_cmd("Page.captureScreenshot", {"captureBeyondViewport": True, "format": "png"})
+    path.write_bytes(base64.b64decode(shot["data"]))
+
+
+def settled(driver: webdriver.Chrome) -> None:
+    """Waits until curves are drawn, where the page has any."""
+    WebDriverWait(driver, 60).until(
+        lambda page: page.execute_script(
+            "const p = document.getElementById('plot');"
+            "return document.readyState === 'complete' && (!p || p.dataset.curves"
+            " || document.getElementById('plot-note').textContent !== '')"
+        )
+    )
+
+
+def found_pages(url: str) -> Mapping[str, str]:
+    """Addresses worth a picture, by name."""
+    start = urllib.request.urlopen(url).read().decode()
+    board = re.search(r'href="(/board/\d+)"', start)
+    pages = {"boards": url}
+    if board is None:
+        return pages
+    pages["board"] = urljoin(url, board[1])
+    text = urllib.request.urlopen(pages["board"]).read().decode()
+    links = [unescape(link) for link in re.findall(r'href="(/board/\d+/[^"]+)"', text)]
+    for name, wanted in (
+        ("droop", "%3Adroop"),
+        ("coupling", "coupling%3A"),
+        ("filter", "filter%3A"),
+        ("stress", "%3Astress"),
+        ("revision", "/revision/"),
+    ):
+        link = next((one for one in links if wanted in one), None)
+        if link:
+            pages[name] = urljoin(url, link)
+    pages["capacitors"] = pages["board"] + "/capacitors"
+    pages["saves"] = pages["board"] + "/saves"
+    pages["missing"] = urljoin(url, "/board/999999")
+    return pages
+
+
+def main(url: str, folder: Path) -> None:
+    """Takes all pictures and prints what the browser complained about."""
+    folder.mkdir(parents=True, exist_ok=True)
+    with browser() as driver:
+        for name, address in found_pages(url).items():
+            for width in WIDTHS:
+                for dark in (False, True):
+                    look(driver, width, dark)
+                    driver.get(address)
+                    settled(driver)
+                    picture(driver, folder / f"{name}-{width}-{'dark' if dark else 'light'}.png")
+        for line in driver.get_log("browser"):
+            print(json.dumps(line))
 
 
 if __name__ == "__main__":
-    main()
+    main(sys.argv[1], Path(sys.argv[2]))

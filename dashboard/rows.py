@@ -1,0 +1,217 @@
+"""Rows of a page: a check with its sentence and its strip, and the columns that all strips share."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
+from datetime import datetime
+from typing import Literal
+from urllib.parse import urlencode
+
+from reactance.analysis.report import Check, Comparison, Edit, Movement, Report, Status, Verdict
+from reactance.daemon.history import RevisionRow, StripCell
+from reactance.dashboard import words
+from reactance.dashboard.archive import Archive
+from reactance.dashboard.strip import Column, Strip, draw, scale_of
+
+MOST_COLUMNS = 60
+_EDITS_NAMED = 3
+
+Tone = Literal["good", "bad", "near", "watched"]
+TONES: Mapping[str, Tone] = {
+    "pass": "good",
+    "marginal": "near",
+    "fail": "bad",
+    "worse": "bad",
+    "better": "good",
+    "moved": "watched",
+}
+
+
+@dataclass(frozen=True, slots=True)
+class Row:
+    """One line of a page: `word` says how it stands, `text` what it is, `note` why; `strip` how it came about."""
+
+    key: str
+    word: str
+    tone: Tone
+    text: str
+    figure: str
+    note: str
+    href: str
+    strip: Strip | None
+
+
+@dataclass(frozen=True, slots=True)
+class Save:
+    """One save in a list: what it changed and what came of it."""
+
+    number: int
+    revision: int
+    when: str
+    machine: str
+    author: str
+    edits: str
+    outcome: str
+    tone: Tone
+    error: str
+    href: str
+
+
+def check_href(board: int, check: str, at: int | None = None) -> str:
+    """Where a check is shown. Its id goes into the query, because it holds colons, slashes and more."""
+    query = {"id": check} | ({"at": str(at)} if at is not None else {})
+    return f"/board/{board}/check?{urlencode(query)}"
+
+
+def revision_href(board: int, revision: int) -> str:
+    """Where is shown what a revision changed."""
+    return f"/board/{board}/revision/{revision}"
+
+
+def numbered(revisions: Sequence[RevisionRow]) -> Mapping[int, int]:
+    """Saves are counted from 1 for people, whatever their ids are in a history of many boards."""
+    return {revision.id: place for place, revision in enumerate(revisions, start=1)}
+
+
+def columns(archive: Archive, revisions: Sequence[RevisionRow], shown: int | None) -> tuple[Column, ...]:
+    """The columns of the strips: the last saves, oldest first, unjudged ones among them."""
+    numbers = numbered(revisions)
+    found: list[Column] = []
+    day = ""
+    for revision in revisions[-MOST_COLUMNS:]:
+        today = f"{datetime.fromtimestamp(revision.saved):%Y-%m-%d}"
+        comparison = archive.stored_comparison(revision.id) if revision.error is None else None
+        found.append(
+            Column(
+                revision=revision.id,
+                number=numbers[revision.id],
+                when=words.short_moment(revision.saved),
+                edits=edits_words(comparison.edits if comparison else ()),
+                new_day=bool(found) and today != day,
+                unjudged=revision.error is not None,
+                shown=revision.id == shown,
+            )
+        )
+        day = today
+    return tuple(found)
+
+
+def edits_words(edits: Sequence[Edit]) -> str:
+    """Edits in one line."""
+    return words.listed((words.edit_words(edit) for edit in edits), _EDITS_NAMED)
+
+
+class Strips:
+    """Draws the strips of one page, all over the same columns."""
+
+    def __init__(
+        self,
+        board: int,
+        cells: Mapping[str, tuple[StripCell, ...]],
+        columns: Sequence[Column],
+        newest: Report,
+        baseline: int | None,
+    ) -> None:
+        self._board = board
+        self._cells = cells
+        self._columns = columns
+        self._baseline = baseline
+        self._checks = {check.id: check for check in newest.checks}
+
+    def strip(self, check_id: str) -> Strip:
+        """The strip of one check."""
+        cells = self._cells.get(check_id, ())
+        check = self._checks.get(check_id)
+        unit, measure = (check.unit, check.measure) if check else ("", "")
+        before = next((cell.nominal for cell in cells if cell.revision == self._baseline), None)
+        if before is None:
+            before = next((cell.nominal for cell in cells if cell.nominal is not None), None)
+        scale = scale_of(cells, check.limit if check else None, unit, before)
+        name = str(words.name_of(check_id, measure))
+        edits = {column.revision: column.edits for column in self._columns}
+        labels = {cell.revision: _cell_words(cell, check, edits.get(cell.revision, "")) for cell in cells}
+        hrefs = {
+            column.revision: revision_href(self._board, column.revision)
+            if column.unjudged
+            else check_href(self._board, check_id, column.revision)
+            for column in self._columns
+        }
+        return draw(check_id, name, cells, self._columns, scale, labels, hrefs)
+
+
+def _cell_words(cell: StripCell, check: Check | None, edits: str) -> str:
+    if cell.nominal is None and check is None:
+        figure = "gone from the board"
+    else:
+        unit, measure = (check.unit, check.measure) if check else ("", "")
+        figure = words.value_words(cell.nominal, unit, measure)
+        limit = words.limit_words(check.limit, unit, measure) if check and cell.margin is not None else ""
+        figure = f"{figure} {limit}".strip()
+    verdict = f", {words.VERDICT[cell.verdict]}" if cell.verdict else ""
+    why = f" after {edits}" if cell.verdict and edits else ""
+    return f"{figure}, {words.STATUS[cell.status]}{verdict}{why}"
+
+
+def check_row(board: int, check: Check, strips: Strips, note: str = "") -> Row:
+    """A check as it stands."""
+    return Row(
+        key=check.id,
+        word=words.STATUS[check.status],
+        tone=TONES.get(check.status, "watched"),
+        text=str(words.name_of(check.id, check.measure)),
+        figure=words.check_words(check),
+        note=note,
+        href=check_href(board, check.id),
+        strip=strips.strip(check.id),
+    )
+
+
+def movement_row(board: int, move: Movement, text: str, strips: Strips | None, at: int | None = None) -> Row:
+    """What a save did to one check."""
+    return Row(
+        key=move.check,
+        word=words.VERDICT[move.verdict],
+        tone=TONES.get(move.verdict, "watched"),
+        text=text,
+        figure="",
+        note=_status_change(move),
+        href=check_href(board, move.check, at),
+        strip=strips.strip(move.check) if strips else None,
+    )
+
+
+def _status_change(move: Movement) -> str:
+    before, after = move.before.status, move.after.status
+    if after is None:
+        return "no longer on the board"
+    if before is None or before == after:
+        return {"fail": "fails", "marginal": "marginal"}.get(after, "")
+    return f"{words.STATUS[before]} → {words.STATUS[after]}"
+
+
+_WEIGHT: Mapping[Status, int] = {"fail": 0, "marginal": 1, "unknown": 2, "pass": 3, "watched": 4}
+_VERDICTS: Mapping[Verdict, int] = {"worse": 0, "better": 1, "moved": 2}
+
+
+def by_weight(checks: Iterable[Check], comparison: Comparison | None) -> list[Check]:
+    """What needs attention first: failing, then moved, then by margin; otherwise in the report's order."""
+    moved = {move.check for move in comparison.movements} if comparison else set()
+    found = list(checks)
+
+    def weight(check: Check) -> tuple[int, int, float]:
+        margin = check.margin if check.margin is not None else float("inf")
+        return (_WEIGHT[check.status], check.id not in moved, margin)
+
+    return sorted(found, key=weight)
+
+
+def by_verdict(movements: Iterable[Movement]) -> list[Movement]:
+    """Worse before better before moved; in each, what fails first."""
+
+    def weight(move: Movement) -> tuple[int, int, float]:
+        status = move.after.status or "fail"
+        margin = move.after.margin if move.after.margin is not None else float("inf")
+        return (_VERDICTS[move.verdict], _WEIGHT[status], margin)
+
+    return sorted(movements, key=weight)
