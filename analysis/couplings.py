@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-import math
-
+import numpy as np
 from reactance.analysis.board import Board
 from reactance.analysis.brief_tables import CouplingTable
+from reactance.analysis.circuit.modal import PoleResidue
+from reactance.analysis.circuit.network import FloatArray
 from reactance.analysis.circuit.sweep import Response
-from reactance.analysis.circuit.transient import TimeResponse, step_response
+from reactance.analysis.circuit.transient import step
 from reactance.analysis.gains import corner_low, decibels, greatest_gain, top_of_band
 from reactance.analysis.measuring import Measuring
 from reactance.analysis.paths import SignalNetworks
@@ -57,7 +58,7 @@ def solve_coupling(networks: SignalNetworks) -> Results:
     table = networks.path.table if isinstance(networks.path.table, CouplingTable) else None
     seen = Measuring(networks.ac, networks.emf, networks.probe)
     lowest = float(table.lowest_frequency) if table and table.lowest_frequency is not None else None
-    top = top_of_band(seen.nominal_response(), lowest)
+    top = top_of_band(seen.response(seen.nominal), lowest)
     found = _in_frequency(seen, top, lowest)
     if table is not None and table.tilt is not None:
         found["tilt"] = _tilt(seen, float(table.tilt.pulse))
@@ -65,42 +66,52 @@ def solve_coupling(networks: SignalNetworks) -> Results:
 
 
 def _in_frequency(seen: Measuring, top: float, lowest: float | None) -> Results:
-    def gain(response: Response) -> float:
+    def gain(response: Response) -> FloatArray:
         return decibels(greatest_gain(response, top).gain)
 
-    def corner(response: Response) -> float:
+    def corner(response: Response) -> FloatArray:
         return corner_low(response, greatest_gain(response, top))
 
-    reference = greatest_gain(seen.nominal_response(), top)
-    if not reference.gain > 0:
+    reference = greatest_gain(seen.response(seen.nominal), top)
+    if not reference.gain[0] > 0:
         why = "nothing passes: |H| is 0 in the whole band"
         return {name: unknown(unit, why) for name, unit in (("gain", "dB"), ("corner", "Hz"), ("loss", "dB"))}
+    at = format_quantity(float(reference.frequency[0]), "Hz")
     found: Results = {
-        "gain": seen.swept(gain, "dB", f"at {format_quantity(reference.frequency, 'Hz')}", "nothing passes"),
+        "gain": seen.swept(gain, "dB", f"at {at}", "nothing passes"),
         "corner": seen.swept(corner, "Hz", "", "it passes DC: there is no lower corner"),
     }
     if lowest is not None:
 
-        def loss(response: Response) -> float:
-            return decibels(greatest_gain(response, top).gain / abs(response.at(lowest)))
+        def loss(response: Response) -> FloatArray:
+            return decibels(greatest_gain(response, top).gain / response.size_at(lowest))
 
         found["loss"] = seen.swept(loss, "dB", f"at {format_quantity(lowest, 'Hz')}", "nothing passes there")
     return found
 
 
-def _tilt(seen: Measuring, pulse: float) -> Value:
-    def tilt(modes: TimeResponse) -> float:
-        return sag(modes, pulse)
+def _tilt(seen: Measuring, pulse_width: float) -> Value:
+    def tilt(modes: PoleResidue) -> FloatArray:
+        return sag(modes, pulse_width)
 
-    note = f"pulse of {format_quantity(pulse, 's')}"
-    return seen.stepped(tilt, "1", note, "the output does not jump")
-
-
-def sag(step: TimeResponse, pulse: float) -> float:
-    """How far a step response has sagged at `pulse` (s) from its greatest value before, over that value."""
-    _, jump = step.greatest(0.0, pulse)
-    end = float(step.value([pulse])[0])
-    return (abs(jump) - math.copysign(end, end * jump)) / abs(jump) if jump else math.nan
+    note = f"pulse of {format_quantity(pulse_width, 's')}"
+    return seen.modal(tilt, "1", note, "the output does not jump")
 
 
-__all__ = ["coupling_limits", "coupling_names", "sag", "solve_coupling", "step_response"]
+def sag(modes: PoleResidue, pulse_width: float) -> FloatArray:
+    """How far the output (V,) has sagged from its jump at the end of a rectangular pulse, over the jump.
+
+    The jump is the greatest excursion during the pulse: with an ideal source, that just after the edge.
+    """
+    response = step(modes)
+    jump = during(modes, pulse_width)
+    end = np.atleast_2d(response.value([pulse_width]))[:, 0]
+    with np.errstate(divide="ignore", invalid="ignore"):
+        return np.asarray(1.0 - end / jump)
+
+
+def during(modes: PoleResidue, width: float) -> FloatArray:
+    """The value of the step response farthest from 0 for 0 ≤ t ≤ `width`, with its sign: (V,)."""
+    t = np.unique(np.concatenate([[0.0], np.geomspace(width * 1e-9, width, 400), np.linspace(0.0, width, 200)]))
+    values = np.atleast_2d(step(modes).value(t))
+    return values[np.arange(len(values)), np.abs(values).argmax(axis=1)]

@@ -9,8 +9,10 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
-
 from reactance.analysis.brief_tables import CouplingTable
+from reactance.analysis.circuit.modal import first
+from reactance.analysis.circuit.transient import ramp, sine
+from reactance.analysis.elements import node, rail_source_name
 from reactance.analysis.filters import SETTLED, asked_frequency
 from reactance.analysis.gains import top_of_band
 from reactance.analysis.measuring import Measuring
@@ -18,7 +20,6 @@ from reactance.analysis.parts.models import CapacitorModel
 from reactance.analysis.path_checks import PathStudy
 from reactance.analysis.rail_checks import RailStudy
 from reactance.analysis.rail_network import LOAD
-from reactance.analysis.elements import node, rail_source_name
 from reactance.analysis.report import Check, Curve, LimitLine
 from reactance.analysis.starting import start_curve
 
@@ -103,7 +104,7 @@ def _rail(study: Study, rail: RailStudy, check: Check) -> Curve | None:
         t = seen.time_grid(POINTS, rise)
 
         def moved(values: FloatArray) -> FloatArray:
-            return np.array([-current * seen.ramp(row, rise, t) for row in values])
+            return -ramp(seen.modes(values), current, rise).value(t)
 
         lines = _both_sides("allowed", t, asked.allowed)
         labels = (f"{rail.net} after a load step of {current:g} A", "time", "s", "change of the rail", "V")
@@ -150,7 +151,7 @@ def _step(path: PathStudy, seen: Measuring, check: Check) -> Curve:
         t = np.linspace(0.0, float(table.tilt.pulse), POINTS)
     else:
         t = seen.time_grid(POINTS, 0.0)
-    final = seen.nominal_step().final
+    final = float(np.asarray(seen.step(seen.nominal).final)[0])
     lines: tuple[LimitLine, ...] = ()
     if check.measure == "settling" and math.isfinite(final):
         lines = _both_sides("within 1 %", t, SETTLED * abs(final), final)
@@ -159,7 +160,7 @@ def _step(path: PathStudy, seen: Measuring, check: Check) -> Curve:
         lines = (LimitLine("overshoot", (0.0, float(t[-1])), (bound, bound), "above" if final > 0 else "below"),)
 
     def stepped(values: FloatArray) -> FloatArray:
-        return np.array([seen.step(row).value(t) for row in values])
+        return seen.step(values).value(t)
 
     labels = (f"{path.path.from_net} to {path.path.to_net}: step response", "time", "s", "output per volt", "V")
     return _banded(check, seen, t, stepped, labels, lines, log_x=False)
@@ -177,7 +178,7 @@ def _gain(path: PathStudy, seen: Measuring, check: Check) -> Curve:
     corner = next((c.nominal for c in path.checks if c.measure.startswith("corner") and c.nominal), None)
     about = corner or asked or 1e3
     far = max((float(e.at) for e in getattr(table, "attenuation", ())), default=about)
-    top = min(top_of_band(seen.nominal_response(), asked), max(about, far) * 100)
+    top = min(top_of_band(seen.response(seen.nominal), asked), max(about, far) * 100)
     f = seen.frequency_grid(about / 100, top, POINTS)
     f = f[f <= top]
 
@@ -250,10 +251,11 @@ def sine_of(study: Study, check_id: str, frequency: float) -> Curve | None:
             seen = Measuring(networks.ac, networks.emf, networks.probe)
             t = np.linspace(0.0, 5.0 / frequency, 1000)
             into = np.sin(2 * np.pi * frequency * t)
-            gain = seen.at(seen.nominal[None, :], np.array([frequency]))[0, 0]
-            lag = -math.degrees(float(np.angle(gain)))
-            title = f"{path.path.from_net} to {path.path.to_net} at {frequency:g} Hz: ratio {abs(gain):.4g}, lag {lag:.1f}°"
-            out = seen.sine(seen.nominal, frequency, t)
+            found = sine(first(seen.modes(seen.nominal)), frequency)
+            lag = math.degrees(found.lag)
+            ends = f"{path.path.from_net} to {path.path.to_net}"
+            title = f"{ends} at {frequency:g} Hz: amplitude ratio {found.ratio:.4g}, phase lag {lag:.1f}°"
+            out = found.value(t)
             return Curve(
                 check_id, title, "time", "s", "voltage", "V", tuple(t.tolist()), tuple(out.tolist()),
                 low=tuple(into.tolist()), log_x=False,

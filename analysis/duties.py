@@ -34,7 +34,11 @@ class BriefedPath:
 
 @dataclass(frozen=True, slots=True)
 class Assigned:
-    """One capacitor's duty and the reason in words."""
+    """One capacitor's duty and the reason in words.
+
+    Capacitors that do one job share its `id`: `rail:NET` on one rail, `coupling:NAME` or `filter:NAME` in one path of
+    the brief; else it is `duty:REFDES`.
+    """
 
     refdes: str
     kind: DutyKind
@@ -44,10 +48,11 @@ class Assigned:
 
 @dataclass(frozen=True, slots=True)
 class Found:
-    """What a rule says about a capacitor."""
+    """What a rule says about a capacitor; `id` where it shares its duty with others."""
 
     kind: DutyKind
     because: str
+    id: str = ""
 
 
 @dataclass(frozen=True)
@@ -112,7 +117,7 @@ def duties(
 
 def _assign(capacitor: Branch, view: _View) -> Assigned:
     found = next(found for rule in RULES if (found := rule(capacitor, view)) is not None)
-    return Assigned(capacitor.refdes, found.kind, found.because, f"duty:{capacitor.refdes}")
+    return Assigned(capacitor.refdes, found.kind, found.because, found.id or f"duty:{capacitor.refdes}")
 
 
 def _overruled(capacitor: Branch, view: _View) -> Found | None:
@@ -135,7 +140,7 @@ def _supply(capacitor: Branch, view: _View) -> Found | None:
         return Found("unassigned", f"it bridges two grounds, {a} and {b}")
     if topology.is_ground(a) or topology.is_ground(b):
         rail, ground = (b, a) if topology.is_ground(a) else (a, b)
-        return Found("decoupling", f"from rail {rail} to ground {ground}")
+        return Found("decoupling", f"from rail {rail} to ground {ground}", f"rail:{rail}")
     return Found("decoupling", f"between the rails {a} and {b}")
 
 
@@ -144,10 +149,17 @@ def _in_briefed_path(capacitor: Branch, view: _View) -> Found | None:
         for path in table.get(capacitor.a, ()) + table.get(capacitor.b, ()):
             where = f"{path.kind} {path.name!r} of the brief, from {path.from_net} to {path.to_net}"
             if path.kind == "coupling" and _passes(capacitor, path, view):
-                return Found("coupling", f"in series in the {where}")
+                return Found("coupling", f"in series in the {where}", f"coupling:{path.name}")
             if path.kind == "filter" and _shapes(capacitor, path, view):
-                return Found("filter", f"in the {where}")
+                return Found("filter", f"in the {where}{_with(capacitor, view)}", f"filter:{path.name}")
     return None
+
+
+def _with(capacitor: Branch, view: _View) -> str:
+    """The resistors and inductors next to the capacitor, in words."""
+    ends = [net for net in (capacitor.a, capacitor.b) if not view.topology.is_fixed(net)]
+    beside = [branch.refdes for net in ends for branch in view.topology.on(net) if branch.kind != "capacitor"]
+    return f", with {listing(beside)}" if beside else ""
 
 
 def _passes(capacitor: Branch, path: BriefedPath, view: _View) -> bool:

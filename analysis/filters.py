@@ -4,12 +4,23 @@ from __future__ import annotations
 
 import math
 
+import numpy as np
 from reactance.analysis.brief_tables import FilterTable
+from reactance.analysis.circuit.network import FloatArray
 from reactance.analysis.circuit.noise import integrated_noise
 from reactance.analysis.circuit.sweep import Response
 from reactance.analysis.circuit.transient import TimeResponse
-from reactance.analysis.gains import Reference, corner_high, corner_low, decibels, filter_reference, top_of_band
-from reactance.analysis.measuring import Measuring
+from reactance.analysis.gains import (
+    Reference,
+    corner_high,
+    corner_low,
+    dc_reference,
+    decibels,
+    filter_reference,
+    greatest_gain,
+    top_of_band,
+)
+from reactance.analysis.measuring import Measuring, band
 from reactance.analysis.paths import SignalNetworks
 from reactance.analysis.quantity import format_quantity
 from reactance.analysis.report import Limit
@@ -80,49 +91,53 @@ def solve_filter(networks: SignalNetworks) -> Results:
     """All measures of a filter but `rejection`."""
     table = networks.path.table if isinstance(networks.path.table, FilterTable) else None
     seen = Measuring(networks.ac, networks.emf, networks.probe)
-    top = top_of_band(seen.nominal_response(), asked_frequency(table))
-    reference = filter_reference(seen.nominal_response(), top)
-    if not reference.gain > 0:
+    nominal = seen.response(seen.nominal)
+    top = top_of_band(nominal, asked_frequency(table))
+    reference = filter_reference(nominal, top)
+    if not reference.gain[0] > 0:
         return {"gain": unknown("dB", "nothing passes: |H| is 0 in the whole band")}
     found = _in_frequency(seen, top, reference, table)
-    if reference.frequency == 0.0:
+    if reference.at_dc:
         found |= _in_time(seen)
-    kelvin = networks.board.conditions.temperature_high + ZERO_CELSIUS
-    found["noise"] = seen.over_networks(
-        lambda network: integrated_noise(network, networks.probe, kelvin),
-        "V rms",
-        f"at {networks.board.conditions.temperature_high:g} °C",
-        "the noise has no upper frequency limit: no capacitance bounds it",
-    )
+    celsius = networks.board.conditions.temperature_high
+    found["noise"] = _noise(seen, celsius)
     return found
 
 
+def _noise(seen: Measuring, celsius: float) -> Value:
+    def noise(values: FloatArray) -> FloatArray:
+        found = integrated_noise(
+            seen.block.network, seen.probe, celsius + ZERO_CELSIUS, parameters=seen.parameters, values=values
+        )
+        return np.asarray(found)
+
+    missing = "the noise has no upper frequency limit: no capacitance bounds it"
+    return band(noise, seen.parameters, "V rms", f"at {celsius:g} °C", missing)
+
+
 def _in_frequency(seen: Measuring, top: float, nominal: Reference, table: FilterTable | None) -> Results:
-    low_pass = nominal.frequency == 0.0
-
     def reference(response: Response) -> Reference:
-        return Reference(abs(response.at_dc()), 0.0) if low_pass else filter_reference(response, top)
+        return dc_reference(response) if nominal.at_dc else greatest_gain(response, top)
 
-    def gain(response: Response) -> float:
+    def gain(response: Response) -> FloatArray:
         return decibels(reference(response).gain)
 
-    def upper(response: Response) -> float:
+    def upper(response: Response) -> FloatArray:
         return corner_high(response, reference(response), top)
 
-    def lower(response: Response) -> float:
+    def lower(response: Response) -> FloatArray:
         return corner_low(response, reference(response))
 
-    where = "at DC" if low_pass else f"at {format_quantity(nominal.frequency, 'Hz')}"
+    where = "at DC" if nominal.at_dc else f"at {format_quantity(float(nominal.frequency[0]), 'Hz')}"
     found: Results = {"gain": seen.swept(gain, "dB", where, "nothing passes")}
     for name, corner in (("corner_low", lower), ("corner_high", upper)):
-        value = seen.swept(corner, "Hz", "", "there is none")
-        if value.known:
-            found[name] = value
+        if math.isfinite(float(corner(seen.response(seen.nominal))[0])):
+            found[name] = seen.swept(corner, "Hz", "", "there is none")
     for entry in table.attenuation if table else ():
         at = float(entry.at)
 
-        def attenuation(response: Response, at: float = at) -> float:
-            return decibels(reference(response).gain / abs(response.at(at)))
+        def attenuation(response: Response, at: float = at) -> FloatArray:
+            return decibels(reference(response).gain / response.size_at(at))
 
         found[f"attenuation@{frequency_label(at)}"] = seen.swept(attenuation, "dB", "", "nothing passes there")
     if table and table.passband:
@@ -134,51 +149,41 @@ def passband(table: FilterTable | None, reference: Reference) -> tuple[float, fl
     """The passband in Hz that the brief states; from DC for a low-pass, else from the reference's frequency."""
     if table is None or table.passband is None:
         return None
-    start = table.passband.from_ if table.passband.from_ is not None else reference.frequency
-    return float(start), float(table.passband.to)
+    start = float(reference.frequency[0]) if table.passband.from_ is None else float(table.passband.from_)
+    return start, float(table.passband.to)
 
 
 def _ripple(seen: Measuring, table: FilterTable, reference: Reference) -> Value:
-    band = passband(table, reference)
-    if band is None or not band[0] < band[1]:
+    edges = passband(table, reference)
+    if edges is None or not edges[0] < edges[1]:
         return unknown("dB", "the passband is empty: state its `from`")
-    low, high = band
+    low, high = edges
 
-    def ripple(response: Response) -> float:
-        greatest, least = response.greatest(low, high)[1], response.least(low, high)[1]
-        return decibels(greatest / least) if least > 0 else math.inf
+    def ripple(response: Response) -> FloatArray:
+        return decibels(response.greatest(low, high)[1] / response.least(low, high)[1])
 
     note = f"{format_quantity(low, 'Hz')} to {format_quantity(high, 'Hz')}"
     return seen.swept(ripple, "dB", note, "nothing passes in a part of the passband")
 
 
 def _in_time(seen: Measuring) -> Results:
-    def overshoot(step: TimeResponse) -> float:
-        return step_overshoot(step)
+    def rise(response: TimeResponse) -> FloatArray:
+        return np.asarray(response.rise_time())
 
-    def rise(step: TimeResponse) -> float:
-        return rise_time(step)
-
-    def settling(step: TimeResponse) -> float:
-        return step.settling_time(SETTLED * abs(step.final))
+    def settling(response: TimeResponse) -> FloatArray:
+        return np.asarray(response.settling_time(SETTLED * np.abs(response.final)))
 
     why = "the step response does not settle"
     return {
-        "overshoot": seen.stepped(overshoot, "1", "", why),
+        "overshoot": seen.stepped(step_overshoot, "1", "", why),
         "rise_time": seen.stepped(rise, "s", "10 % to 90 %", why),
         "settling": seen.stepped(settling, "s", "within 1 %", why),
     }
 
 
-def step_overshoot(step: TimeResponse) -> float:
-    """How far a step response goes beyond its final value, over that value; 0 where it does not."""
-    if not step.final or not math.isfinite(step.final):
-        return math.nan
-    _, greatest = step.greatest_toward(step.final)
-    return max(0.0, greatest / step.final - 1.0)
-
-
-def rise_time(step: TimeResponse) -> float:
-    """Time from the first crossing of 10 % to that of 90 % of the final value, in seconds."""
-    low, high = step.first_crossing(0.1 * step.final), step.first_crossing(0.9 * step.final)
-    return math.nan if low is None or high is None else high - low
+def step_overshoot(response: TimeResponse) -> FloatArray:
+    """How far step responses go beyond their final value, over that value (V,); 0 where they do not."""
+    final = np.asarray(response.final)
+    beyond = np.where(final > 0, np.asarray(response.highest().size), np.asarray(response.lowest().size))
+    with np.errstate(divide="ignore", invalid="ignore"):
+        return np.where(np.isfinite(final) & (final != 0), np.maximum(beyond / final - 1.0, 0.0), np.nan)

@@ -1,6 +1,7 @@
-"""Reference gain and corners of a frequency response, as couplings and filters both need them.
+"""Reference gain and corners of frequency responses, as couplings and filters both need them.
 
-A corner is where |H| first falls through reference/√2, going up or down from the reference.
+A corner is where |H| first falls through reference/√2, going up or down from the reference. Everything works on V
+sets of values at once: gains and frequencies are arrays (V,).
 """
 
 from __future__ import annotations
@@ -8,6 +9,8 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 
+import numpy as np
+from reactance.analysis.circuit.network import FloatArray
 from reactance.analysis.circuit.sweep import Response
 
 LOWEST = 1e-4  # Hz: below this nothing on a board is asked about
@@ -19,22 +22,27 @@ PASSES_DC = 0.05  # a filter whose DC gain is above this share of its greatest g
 
 @dataclass(frozen=True, slots=True)
 class Reference:
-    """The gain that everything is compared with, and the frequency where it is taken."""
+    """The gains (V,) that everything is compared with, and the frequencies (V,) in Hz where they are taken."""
 
-    gain: float
-    frequency: float
+    gain: FloatArray
+    frequency: FloatArray
+
+    @property
+    def at_dc(self) -> bool:
+        """Whether the first set of values has its reference at DC."""
+        return bool(self.frequency[0] == 0.0)
 
 
-def top_of_band(response: Response, asked: float | None) -> float:
+def top_of_band(nominal: Response, asked: float | None) -> float:
     """The upper end in Hz of the band in which the greatest gain is sought.
 
     Far above what is asked about, but not so far that parasitic resonances of parts count as the passband.
     """
     top = max(LEAST_TOP, BEYOND * (asked or 0.0))
     if asked is None:
-        at, gain = response.greatest(LOWEST, top)
-        corner = response.falls_through(gain * HALF_POWER, at, "down", LOWEST)
-        top = max(top, BEYOND * (corner or 0.0))
+        at, gain = nominal.greatest(LOWEST, top)
+        corner = float(nominal.falls_through(gain * HALF_POWER, at, "down", LOWEST)[0])
+        top = max(top, BEYOND * corner) if math.isfinite(corner) else top
     return top
 
 
@@ -44,28 +52,34 @@ def greatest_gain(response: Response, top: float) -> Reference:
     return Reference(gain, at)
 
 
-def filter_reference(response: Response, top: float) -> Reference:
+def dc_reference(response: Response) -> Reference:
+    """The gain at DC."""
+    gain = response.size_at(0.0)
+    return Reference(gain, np.zeros_like(gain))
+
+
+def filter_reference(nominal: Response, top: float) -> Reference:
     """For a low-pass the gain at DC, for everything else the greatest |H| up to `top` (Hz)."""
-    at_dc = abs(response.at_dc())
-    greatest = greatest_gain(response, top)
-    falls = at_dc > PASSES_DC * greatest.gain and response.falls_through(at_dc * HALF_POWER, 0.0, "up", top)
-    return Reference(at_dc, 0.0) if falls else greatest
+    at_dc = dc_reference(nominal)
+    greatest = greatest_gain(nominal, top)
+    if at_dc.gain[0] > PASSES_DC * greatest.gain[0] and math.isfinite(corner_high(nominal, at_dc, top)[0]):
+        return at_dc
+    return greatest
 
 
-def corner_high(response: Response, reference: Reference, top: float) -> float:
-    """Upper corner in Hz, not a number where there is none below `top`."""
-    found = response.falls_through(reference.gain * HALF_POWER, reference.frequency, "up", top)
-    return math.nan if found is None else found
+def corner_high(response: Response, reference: Reference, top: float) -> FloatArray:
+    """Upper corners in Hz (V,), NaN where there is none below `top`."""
+    return response.falls_through(reference.gain * HALF_POWER, reference.frequency, "up", top)
 
 
-def corner_low(response: Response, reference: Reference) -> float:
-    """Lower corner in Hz, not a number where there is none."""
-    if reference.frequency == 0.0:
-        return math.nan
-    found = response.falls_through(reference.gain * HALF_POWER, reference.frequency, "down", LOWEST)
-    return math.nan if found is None else found
+def corner_low(response: Response, reference: Reference) -> FloatArray:
+    """Lower corners in Hz (V,), NaN where there is none."""
+    if reference.at_dc:
+        return np.full_like(reference.gain, math.nan)
+    return response.falls_through(reference.gain * HALF_POWER, reference.frequency, "down", LOWEST)
 
 
-def decibels(ratio: float) -> float:
-    """20·log10 of a ratio; −inf for 0."""
-    return 20 * math.log10(ratio) if ratio > 0 else -math.inf
+def decibels(ratio: FloatArray) -> FloatArray:
+    """20·log10 of ratios; −inf for 0."""
+    with np.errstate(divide="ignore", invalid="ignore"):
+        return np.asarray(20 * np.log10(ratio))

@@ -2,14 +2,17 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
+import numpy as np
 from reactance.analysis.bias import Bias
 from reactance.analysis.board import Board
 from reactance.analysis.brief_tables import RailTable
 from reactance.analysis.circuit.modal import PoleResidue
+from reactance.analysis.circuit.network import FloatArray
 from reactance.analysis.circuit.sweep import Response
-from reactance.analysis.circuit.transient import ramp_peak, worst_rhythm
+from reactance.analysis.circuit.transient import ramp, resonant
 from reactance.analysis.elements import node
 from reactance.analysis.measuring import Measuring
 from reactance.analysis.parts.band import Band
@@ -89,49 +92,47 @@ def _in_time(seen: Measuring, net: str, fed: bool, asked: Demand, current: float
     if not fed:
         why = f"nothing feeds {net} in the network: state source = {{ resistance, inductance }}"
         return {"droop": unknown("V", why), "resonant_droop": unknown("V", why)}
-    amps = format_quantity(current, "A")
-    note = f"{amps} in {format_quantity(rise, 's')}"
+    amps, missing = format_quantity(current, "A"), "the rail's response does not settle"
 
-    def droop(modes: PoleResidue) -> float:
-        return current * ramp_peak(modes, rise)
+    def droop(modes: PoleResidue) -> FloatArray:
+        return np.asarray(ramp(modes, current, rise).peak().size)
 
-    found = {"droop": seen.modal(droop, "V", note, "the rail's response does not settle")}
+    found = {"droop": seen.modal(droop, "V", f"{amps} in {format_quantity(rise, 's')}", missing)}
     if asked.band is None:
         found["resonant_droop"] = unknown("V", "the band is not stated and does not follow from the step's rise")
         return found
     low, high = asked.band
 
-    def rhythm(modes: PoleResidue) -> float:
-        return current * worst_rhythm(modes, rise, low, high)[1]
+    def rhythm(modes: PoleResidue) -> FloatArray:
+        return np.asarray(resonant(modes, current, rise, low, high)[1])
 
-    worst = worst_rhythm(seen.nominal_modes(), rise, low, high)[0]
-    note = f"0 to {amps} and back, worst at {format_quantity(worst, 'Hz')}"
-    found["resonant_droop"] = seen.modal(rhythm, "V", note, "the rail's response does not settle")
+    worst = np.asarray(resonant(seen.modes(seen.nominal), current, rise, low, high)[0])[0]
+    note = f"0 to {amps} and back, worst at {format_quantity(float(worst), 'Hz')}"
+    found["resonant_droop"] = seen.modal(rhythm, "V", note, missing)
     return found
 
 
 def _in_frequency(seen: Measuring, asked: Demand, band: tuple[float, float]) -> Results:
     low, high = band
     found: Results = {}
-    where = f"{format_quantity(low, 'Hz')} to {format_quantity(high, 'Hz')}"
+    nominal = seen.response(seen.nominal)
     if asked.allowed is not None and asked.current:
         target = asked.allowed / asked.current
 
-        def impedance(response: Response) -> float:
+        def impedance(response: Response) -> FloatArray:
             return response.greatest(low, high)[1] / target
 
-        at, _ = seen.nominal_response().greatest(low, high)
-        note = f"greatest at {format_quantity(at, 'Hz')}; target {format_quantity(target, 'ohm')}, {where}"
+        at = format_quantity(float(nominal.greatest(low, high)[0][0]), "Hz")
+        where = f"{format_quantity(low, 'Hz')} to {format_quantity(high, 'Hz')}"
+        note = f"greatest at {at}; target {format_quantity(target, 'ohm')}, {where}"
         found["impedance"] = seen.swept(impedance, "1", note, "the impedance is not finite in the band")
 
-    def antiresonance(response: Response) -> float:
-        peaks = response.local_maxima(low, high)
-        return max((size for _, size in peaks), default=float("nan"))
+    def antiresonance(response: Response) -> FloatArray:
+        return response.greatest_local_maximum(low, high)[1]
 
-    peaks = seen.nominal_response().local_maxima(low, high)
-    if peaks:
-        at = max(peaks, key=lambda peak: peak[1])[0]
-        note = f"at {format_quantity(at, 'Hz')}"
+    at, size = nominal.greatest_local_maximum(low, high)
+    if math.isfinite(float(size[0])):
+        note = f"at {format_quantity(float(at[0]), 'Hz')}"
         found["antiresonance"] = seen.swept(antiresonance, "Ω", note, "no local maximum in the band")
     return found
 

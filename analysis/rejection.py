@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
+import math
+
 from reactance.analysis.brief_tables import CouplingTable, FilterTable
+from reactance.analysis.circuit.network import FloatArray
 from reactance.analysis.circuit.sweep import Response
 from reactance.analysis.filters import HIGHEST_AUDIBLE, LOWEST_AUDIBLE, asked_frequency
 from reactance.analysis.gains import corner_high, decibels, filter_reference, top_of_band
@@ -22,10 +25,10 @@ def rejection_band(networks: SignalNetworks, seen: Measuring) -> tuple[float, fl
         asked = float(table.lowest_frequency) if table.lowest_frequency is not None else None
     else:
         asked = asked_frequency(table)
-    response = seen.nominal_response()
+    response = seen.response(seen.nominal)
     top = top_of_band(response, asked)
-    corner = corner_high(response, filter_reference(response, top), top)
-    high = corner if corner == corner and corner > LOWEST_AUDIBLE else HIGHEST_AUDIBLE
+    corner = float(corner_high(response, filter_reference(response, top), top)[0])
+    high = corner if math.isfinite(corner) and corner > LOWEST_AUDIBLE else HIGHEST_AUDIBLE
     return LOWEST_AUDIBLE, high
 
 
@@ -39,8 +42,8 @@ def solve_rejections(networks: SignalNetworks) -> Results:
     found: Results = {}
     for net, source in rails:
 
-        def rejection(response: Response) -> float:
-            greatest = response.greatest(low, high)[1] if low < high else abs(response.at(low))
+        def rejection(response: Response) -> FloatArray:
+            greatest = response.greatest(low, high)[1] if low < high else response.size_at(low)
             return -decibels(greatest)
 
         seen = Measuring(networks.ac, source, networks.probe)

@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 
 import msgspec
-
 from reactance.analysis.values import Value
 
 Results = dict[str, Value]

@@ -8,8 +8,8 @@ from dataclasses import dataclass
 from reactance.analysis.board import Board, end_net
 from reactance.analysis.duties import Assigned, BriefedPath
 from reactance.analysis.duties import duties as assign_duties
-from reactance.analysis.signal_paths import shown_paths
 from reactance.analysis.paths import SignalPath
+from reactance.analysis.signal_paths import shown_paths
 from reactance.analysis.topology import Branch, Terminal, Topology, prefix_of
 
 

@@ -1,0 +1,130 @@
+"""A block under one question, for many sets of values at once: its responses, and the band of a measure over them.
+
+A measure takes responses for V sets of values and returns V figures; the band is the extremes that
+`circuit.spread` finds over the ranges of the uncertain attributes.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from functools import cached_property
+
+import numpy as np
+from reactance.analysis.blocks import Block
+from reactance.analysis.circuit.modal import PoleResidue, pole_residue
+from reactance.analysis.circuit.network import ComplexArray, FloatArray, Parameter
+from reactance.analysis.circuit.spread import sensitivities, spread
+from reactance.analysis.circuit.sweep import Response, frequency_response
+from reactance.analysis.circuit.transient import TimeResponse, step
+from reactance.analysis.values import Value, banded
+
+MOST_NAMED = 3
+LEAST_SHARE = 0.05
+
+
+def band(
+    measure: Callable[[FloatArray], FloatArray],
+    parameters: Sequence[Parameter],
+    unit: str,
+    note: str,
+    missing: str,
+) -> Value:
+    """Nominal and extremes of `measure` ((V, P) to (V,)) over `parameters`; NaN or infinity means `missing`."""
+    if not parameters:
+        nominal = float(measure(np.empty((1, 0)))[0])
+        return banded(nominal, nominal, nominal, unit, note, missing)
+    found = spread(measure, parameters)
+    value = banded(found.nominal, found.low, found.high, unit, note, missing)
+    return value if not value.known else _with_shares(value, sensitivities(measure, parameters), parameters)
+
+
+def _with_shares(value: Value, shares: FloatArray, parameters: Sequence[Parameter]) -> Value:
+    """Name the parts that move the figure most."""
+    by_part: dict[str, float] = {}
+    for parameter, share in zip(parameters, np.abs(shares), strict=True):
+        if np.isfinite(share):
+            by_part[parameter.name] = by_part.get(parameter.name, 0.0) + float(share)
+    total = sum(by_part.values())
+    if total <= 0:
+        return value
+    ranked = sorted(by_part.items(), key=lambda item: -item[1])[:MOST_NAMED]
+    named = tuple((name, share / total) for name, share in ranked if share / total >= LEAST_SHARE)
+    return Value(value.nominal, value.low, value.high, value.unit, value.note, value.missing, named)
+
+
+class Measuring:
+    """One block excited by `source` and observed at `probe`. `sign` −1 turns a load's response into impedance."""
+
+    def __init__(self, block: Block, source: str, probe: str, sign: float = 1.0) -> None:
+        self.block, self.source, self.probe, self.sign = block, source, probe, sign
+        self.parameters = block.parameters
+        self._modes: dict[bytes, PoleResidue] = {}
+        self._responses: dict[bytes, Response] = {}
+
+    @cached_property
+    def nominal(self) -> FloatArray:
+        """The nominal values as one row (1, P)."""
+        return np.array([[parameter.nominal for parameter in self.parameters]])
+
+    def at(self, values: FloatArray, frequencies: FloatArray) -> ComplexArray:
+        """The response (V, F) for each row of `values` (V, P) at `frequencies` (F,) in Hz."""
+        found = frequency_response(
+            self.block.network, self.source, self.probe, frequencies, parameters=self.parameters, values=values
+        )
+        return np.asarray(self.sign * found)
+
+    def response(self, values: FloatArray) -> Response:
+        """The frequency response for each row of `values`, ready to be searched."""
+        key = values.tobytes()
+        if key not in self._responses:
+            self._responses[key] = Response(
+                self.block.network, self.source, self.probe, parameters=self.parameters, values=values
+            )
+        return self._responses[key]
+
+    def modes(self, values: FloatArray) -> PoleResidue:
+        """Poles and residues for each row of `values`."""
+        key = values.tobytes()
+        if key not in self._modes:
+            found = pole_residue(
+                self.block.network, self.source, self.probe, parameters=self.parameters, values=values
+            )
+            self._modes[key] = found.scaled(self.sign) if self.sign != 1.0 else found
+        return self._modes[key]
+
+    def step(self, values: FloatArray) -> TimeResponse:
+        """The step response for each row of `values`."""
+        return step(self.modes(values))
+
+    def swept(self, measure: Callable[[Response], FloatArray], unit: str, note: str, missing: str) -> Value:
+        """The band of a measure of frequency responses."""
+        return band(lambda values: measure(self.response(values)), self.parameters, unit, note, missing)
+
+    def modal(self, measure: Callable[[PoleResidue], FloatArray], unit: str, note: str, missing: str) -> Value:
+        """The band of a measure of poles and residues."""
+        return band(lambda values: measure(self.modes(values)), self.parameters, unit, note, missing)
+
+    def stepped(self, measure: Callable[[TimeResponse], FloatArray], unit: str, note: str, missing: str) -> Value:
+        """The band of a measure of step responses."""
+        return band(lambda values: measure(self.step(values)), self.parameters, unit, note, missing)
+
+    def frequency_grid(self, low: float, high: float, points: int) -> FloatArray:
+        """Frequencies in Hz for drawing: even on a logarithmic axis, and closer about every resonance between."""
+        grid = [np.geomspace(low, high, points)]
+        poles = self.modes(self.nominal).poles[0]
+        for pole in poles[(poles.imag > 0) & (np.abs(poles.real) < np.abs(poles.imag))]:
+            centre, width = abs(pole) / (2 * np.pi), abs(pole.real) / (2 * np.pi)
+            around = centre + width * np.linspace(-6.0, 6.0, 41)
+            grid.append(around[(around > low) & (around < high)])
+        return np.unique(np.concatenate(grid))
+
+    def time_grid(self, points: int, at_least: float) -> FloatArray:
+        """Times in s for drawing a response that settles: to five times its slowest mode that shows."""
+        modes = self.modes(self.nominal)
+        poles, residues = modes.poles[0], modes.residues[0]
+        size = np.abs(residues / np.where(poles == 0, 1.0, poles))
+        shows = (poles.real < 0) & (size > 1e-3 * size.max(initial=0.0))
+        slowest = 1.0 / np.abs(poles.real[shows]).min() if shows.any() else 0.0
+        end = max(5.0 * slowest, 3.0 * at_least, 1e-12)
+        early = np.geomspace(end * 1e-5, end, points // 2)
+        return np.unique(np.concatenate([[0.0], np.linspace(0.0, end, points // 2), early]))
