@@ -26,6 +26,7 @@ class Netlist:
     starts: list[int] = field(default_factory=list)
     ports: dict[int, int] = field(default_factory=dict)
     globals: dict[str, tuple[str, int]] = field(default_factory=dict)
+    pins: int = 0
 
 
 @dataclass(frozen=True, slots=True)
@@ -92,16 +93,18 @@ class Connector:
     def _instance(
         self, value: says.Instance, entry: Entry, known: dict[str, tuple[int, int, tuple[int, ...]]]
     ) -> None:
-        self._source.check("name", len(value.name.text), entry.start)
-        if value.name.size:
-            self._source.check("array", value.name.width, entry.start)
-        self._report(entry, value.faults)
-        if value.name.key in known:
-            self._source.problem("error", entry.start, f"instance {value.name.text} stands twice; both are kept")
+        name = value.name
+        self._source.check("name", len(name.text), entry.start)
+        if name.size:
+            self._source.check("array", name.width, entry.start)
+        if value.faults:
+            self._report(entry, value.faults)
+        if name.key in known:
+            self._source.problem("error", entry.start, f"instance {name.text} stands twice; both are kept")
         first = len(self._parts)
         self._parts.extend(self._maker.parts(value, entry.start))
         self._source.check("parts", len(self._parts), entry.start)
-        known.setdefault(value.name.key, (first, len(self._parts) - first, value.name.size))
+        known.setdefault(name.key, (first, len(self._parts) - first, name.size))
 
     def _new_node(self, name: str, start: int) -> int:
         self._names.append(name)
@@ -118,6 +121,12 @@ class Connector:
         if net.name.key in self._by_key[scope]:
             self._source.problem("caution", entry.start, f"net {net.name.text} stands twice; taken as one net")
         self._by_key[scope].add(net.name.key)
+        pins = self._plain_pins(net, scope)
+        if pins is not None:
+            (node,) = self._net_nodes(net.name, 1, entry.start)
+            for on, bit in pins:
+                on[bit] = node
+            return [node]
         ends = [self._ends(ref, scope, net.name, entry) for ref in net.refs]
         width = net.name.width if net.name.size else self._bus_width(net, ends)
         nodes = self._net_nodes(net.name, width, entry.start)
@@ -126,6 +135,24 @@ class Connector:
         for inner in net.inner:
             self._nest(nodes, net, inner, scope, entry)
         return nodes
+
+    def _plain_pins(self, net: says.Net, scope: int) -> list[tuple[dict[int, int], int]] | None:
+        """Where to note the net's node, if it joins nothing but single free pins of single instances: the short way,
+        which nearly every net goes."""
+        if net.plain is None:
+            return None
+        known, parts = self._scopes[scope], self._parts
+        pins: list[tuple[dict[int, int], int]] = []
+        for port, instance in net.plain:
+            found = known.get(instance)
+            if found is None or found[1] != 1:
+                return None
+            part = parts[found[0]]
+            group = part.interface.groups.get(port)
+            if group is None or len(group.bits) != 1 or group.bits[0] in part.nodes:
+                return None
+            pins.append((part.nodes, group.bits[0]))
+        return pins
 
     def _bus_width(self, net: says.Net, ends: list[list[_End]]) -> int:
         """How many conductors a net without stated members has.
@@ -279,7 +306,7 @@ class Connector:
     def _join_rippers(self) -> None:
         """A ripper or tie joins nets through itself: it is wiring, no part."""
         for part in self._parts:
-            if part.target.cell is None or part.target.cell.kind not in ("ripper", "tie"):
+            if not part.target.wiring:
                 continue
             for refs in part.interface.joined:
                 groups = [part.interface.group(ref.port) for ref in refs if isinstance(ref, says.PortRef)]
@@ -313,7 +340,9 @@ class Connector:
                 result.names[new].append(name)
         for part in self._parts:
             part.nodes = {bit: renumbered[node] for bit, node in part.nodes.items()}
-            part.symbol = part.symbol or is_mark(part, [n for node in part.nodes.values() for n in result.names[node]])
+            if len(part.nodes) == 1 and not part.refdes:
+                part.symbol = part.symbol or is_mark(part, result.names[next(iter(part.nodes.values()))])
+        result.pins = sum([len(part.interface.bits) for part in self._parts])
         result.ports = {bit: renumbered[node] for bit, node in self._ports.items()}
         result.globals = {key: (name, renumbered[node]) for key, (name, node) in self._globals.items()}
         return result

@@ -86,13 +86,17 @@ class Port(NamedTuple):
 
 
 class Net(NamedTuple):
-    """`(net …)`, with what it joins, the nets in it and instances drawn inside it."""
+    """`(net …)`, with what it joins, the nets in it and instances drawn inside it.
+
+    `plain` is what it joins as (port, instance), both as keys, where that is all there is to it: the usual case.
+    """
 
     name: Name
     refs: tuple[Ref, ...]
     inner: tuple[Net, ...] = ()
     instances: tuple[Instance, ...] = ()
     faults: tuple[str, ...] = ()
+    plain: tuple[tuple[str, str], ...] | None = None
 
 
 class NetBundle(NamedTuple):
@@ -322,7 +326,19 @@ def _net(form: Sexp) -> Net:
         except BadEntryError as error:
             faults.append(str(error))
     said = tuple(f"net {declared.text}: {fault}" for fault in faults)
-    return Net(declared, tuple(refs), tuple(inner), tuple(instances), said)
+    plain = None if inner or declared.size else _plain(refs)
+    return Net(declared, tuple(refs), tuple(inner), tuple(instances), said, plain)
+
+
+def _plain(refs: list[Ref]) -> tuple[tuple[str, str], ...] | None:
+    pairs: list[tuple[str, str]] = []
+    for ref in refs:
+        if not isinstance(ref, PortRef) or ref.member or ref.instance_index:
+            return None
+        if len(ref.port) != 1 or len(ref.instance) > 1:
+            return None
+        pairs.append((ref.port[0].lower(), ref.instance[0].lower() if ref.instance else ""))
+    return tuple(pairs)
 
 
 def _net_bundle(form: list[Sexp]) -> NetBundle:

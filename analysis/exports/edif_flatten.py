@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections import Counter, deque
+from collections import Counter, defaultdict, deque
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from types import MappingProxyType
@@ -11,7 +11,8 @@ from reactance.analysis.design import Net, Part
 from reactance.analysis.exports import edif_entries as says
 from reactance.analysis.exports.edif_cells import Interface, View
 from reactance.analysis.exports.edif_connect import Netlist
-from reactance.analysis.exports.edif_packages import FlatPart, flat_part, packages
+from reactance.analysis.exports.edif_packages import flat_part, packages
+from reactance.analysis.exports.edif_parts import LocalPart
 from reactance.analysis.exports.edif_source import Source
 from reactance.analysis.exports.edif_union import Nodes
 
@@ -48,19 +49,19 @@ def flatten(
     blocks, shared = _blocks(top, netlists, nodes, source)
     nets = _nets(blocks, shared, nodes)
     _name_nets(nets, source)
-    flat: list[FlatPart] = []
-    pins = 0
+    flat: list[Part] = []
+    locals_: list[LocalPart] = []
     for block in blocks:
+        count = len(block.netlist.names)
+        called = [nets[nodes.root(node)].called for node in range(block.base, block.base + count)]
         for part in block.netlist.parts:
             if part.symbol or part.inside is not None:
                 continue
-            reached = {bit: nets[nodes.root(block.base + node)].called for bit, node in part.nodes.items()}
-            notes = [note for note in block.notes if len(note.path) == 1 and note.path[0].lower() == part.key]
-            flat.append(flat_part(part, block.path, reached, notes))
-            pins += len(part.interface.bits)
-            source.check("pins", pins, part.start)
-            source.check("parts", len(flat), part.start)
-    parts = packages(flat, source)
+            notes = block.notes and [note for note in block.notes if _is_about(note, part)]
+            flat.append(flat_part(part, block.path, called, notes, source))
+            locals_.append(part)
+        source.check("parts", len(flat), block.netlist.view.cell.start)
+    parts = packages(flat, locals_, source)
     return parts, _connected(nets, parts, source)
 
 
@@ -69,6 +70,7 @@ def _blocks(
 ) -> tuple[list[_Block], Mapping[str, tuple[str, int]]]:
     """Every block, those higher up first, with their nodes joined through ports and global nets."""
     first = netlists[id(top)]
+    pins = 0
     waiting = deque([_Block(first, nodes.add(len(first.names)), (), _deep_notes(top))])
     blocks: list[_Block] = []
     shared: dict[str, tuple[str, int]] = {}
@@ -80,6 +82,8 @@ def _blocks(
         for key, (name, node) in block.netlist.globals.items():
             _, known = shared.setdefault(key, (name, block.base + node))
             nodes.join(known, block.base + node)
+        pins += block.netlist.pins
+        source.check("pins", pins, block.netlist.view.cell.start)
         for part in block.netlist.parts:
             if part.inside is None:
                 continue
@@ -100,6 +104,10 @@ def _blocks(
             ]
             waiting.append(_Block(inside, base, (*block.path, part.name), notes + _deep_notes(part.inside)))
     return blocks, MappingProxyType(shared)
+
+
+def _is_about(note: says.Annotation, part: LocalPart) -> bool:
+    return len(note.path) == 1 and note.path[0].lower() == part.key
 
 
 def _deep_notes(view: View) -> list[says.Annotation]:
@@ -161,17 +169,19 @@ def _name_nets(nets: Mapping[int, _FlatNet], source: Source) -> None:
 
 
 def _connected(nets: Mapping[int, _FlatNet], parts: tuple[Part, ...], source: Source) -> tuple[Net, ...]:
-    pins: dict[str, list[tuple[str, str]]] = {}
+    pins: defaultdict[str | None, list[tuple[str, str]]] = defaultdict(list)
     for part in parts:
+        refdes = part.refdes
         for pin in part.pins:
-            if pin.net is not None:
-                pins.setdefault(pin.net, []).append((part.refdes, pin.number))
+            pins[pin.net].append((refdes, pin.number))
     taken = {net.called for net in nets.values()}
     result = []
     for net in nets.values():
         if not net.called:
             continue
-        others = dict.fromkeys("/".join((*path, name)) for path, name in net.names)
-        aliases = tuple(other for other in others if other not in taken)
+        aliases: tuple[str, ...] = ()
+        if len(net.names) > 1 or net.names[0][0]:
+            others = dict.fromkeys("/".join((*path, name)) for path, name in net.names)
+            aliases = tuple(other for other in others if other not in taken)
         result.append(Net(net.called, tuple(pins.get(net.called, ())), aliases, source.place(net.start)))
     return tuple(result)

@@ -120,7 +120,7 @@ def reference(form: Sexp | None) -> tuple[str, tuple[int, ...]]:
     if isinstance(form, str) and form:
         return form, ()
     if form is not None and keyword(form) == "member" and len(form) > 2 and isinstance(form[1], str):
-        return form[1], indices(form[2:])
+        return form[1], indices(list(form[2:]))
     if form is not None and keyword(form) == "name" and len(form) > 1 and isinstance(form[1], str):
         return form[1], ()
     raise BadEntryError("expected the name of something declared")

@@ -13,113 +13,119 @@ from reactance.analysis.exports.edif_parts import LocalPart
 from reactance.analysis.exports.edif_source import Source
 
 
-@dataclass(slots=True)
-class FlatPart:
-    """An instance of a leaf cell in one place of the design, before its refdes is settled."""
-
-    local: LocalPart
-    path: tuple[str, ...]
-    called: str
-    named: bool
-    pins: tuple[Pin, ...]
-    attributes: Mapping[str, str]
-
-
 def flat_part(
-    local: LocalPart, path: tuple[str, ...], reached: Mapping[int, str], notes: list[says.Annotation]
-) -> FlatPart:
-    """The instance `local` under `path`, its pins on the nets `reached`; `notes` is what is said of this place only."""
-    called = local.refdes
-    attributes = local.attributes
-    numbers = local.numbers
+    local: LocalPart, path: tuple[str, ...], called: list[str], notes: list[says.Annotation], source: Source
+) -> Part:
+    """The instance `local` under `path`, by its refdes or name alone.
+
+    `called` names the net of each of the view's nodes; `notes` is what is said of this place only.
+    """
+    refdes = local.refdes or local.name
+    attributes, numbers = local.attributes, local.numbers
     for note in notes:
         if note.designator and not note.designator.endswith("?"):
-            called = note.designator
-        if note.attributes:
-            attributes = MappingProxyType({**attributes, **{each.name: each.text for each in note.attributes}})
-        for ref, number in note.numbers:
-            group = local.interface.group(ref.port)
-            if group and len(group.bits) == 1:
-                numbers = {**numbers, group.bits[0]: number}
+            refdes = note.designator
+        attributes = MappingProxyType({**attributes, **{each.name: each.text for each in note.attributes}})
+        given = [(local.interface.bits_of(ref), number) for ref, number in note.numbers]
+        numbers = {**numbers, **{bits[0]: number for bits, number in given if len(bits) == 1}}
+    on = local.nodes
     pins = tuple(
-        Pin(numbers.get(bit, port.number), port.name, reached.get(bit), port.direction)
-        for bit, port in enumerate(local.interface.bits)
+        [
+            Pin(
+                numbers.get(bit, port.number) if numbers else port.number,
+                port.name,
+                called[on[bit]] if bit in on else None,
+                port.direction,
+            )
+            for bit, port in enumerate(local.interface.bits)
+        ]
     )
-    if len({pin.number for pin in pins}) < len(pins):
-        pins = tuple(dict.fromkeys(pins))
-    return FlatPart(local, path, called or local.name, bool(called), pins, attributes)
+    return Part(refdes, pins, attributes, local.target.name, path, source.place(local.start))
 
 
-def packages(flat: list[FlatPart], source: Source) -> tuple[Part, ...]:
+@dataclass(slots=True)
+class _Candidate:
+    """A part whose refdes is also another's; `named` where it is more than the name of an instance."""
+
+    part: Part
+    local: LocalPart
+    named: bool
+
+
+def packages(parts: list[Part], locals_: list[LocalPart], source: Source) -> tuple[Part, ...]:
     """One Part for each component, each under a refdes of its own, in the order of their first sections.
 
-    Sections of one package (the same designator, other pins) are one part. Without a designator the plain name of the
-    instance counts where it is unique in the design, else `PATH/NAME`; so also for designators in a cell that is
-    used several times.
+    Sections of one package (the same designator, other pins) are one part. Without a designator the plain name
+    of the instance counts where it is unique in the design, else `PATH/NAME`; so also for designators in a cell
+    that is used several times.
     """
-    kept = _sections(flat)
-    counts = Counter(each.called for each in kept)
+    counts = Counter([part.refdes for part in parts])
+    if len(counts) == len(parts):
+        return tuple(parts)
+    candidates = [
+        _Candidate(part, local, bool(local.refdes) or part.refdes != local.name)
+        for part, local in zip(parts, locals_, strict=True)
+    ]
+    return _own_names(_sections(candidates, counts), source)
+
+
+def _own_names(candidates: list[_Candidate], source: Source) -> tuple[Part, ...]:
+    """The parts with a refdes for each, no two alike."""
+    counts = Counter([each.part.refdes for each in candidates])
+    top = {each.part.refdes for each in candidates if not each.part.path}
     used: set[str] = set()
-    result: dict[int, Part] = {}
-    # Those that may keep their plain name come first, so that no other can take it from them.
-    for each in sorted(kept, key=lambda part: counts[part.called] > 1 and bool(part.path)):
-        refdes = each.called
-        if counts[refdes] > 1 and each.path:
-            refdes = "/".join((*each.path, refdes))
+    parts: list[Part] = []
+    for each in candidates:
+        part = each.part
+        name = part.refdes
+        if counts[name] > 1 and part.path:
+            name = "/".join((*part.path, name))
             if each.named:
-                message = f"{counts[each.called]} parts have the designator {each.called}; this one is read as {refdes}"
+                message = f"{counts[part.refdes]} parts have the designator {part.refdes}; this one is read as {name}"
                 source.problem("caution", each.local.start, message)
-        if refdes in used:
-            first, count = refdes, 2
-            while f"{first}#{count}" in used:
+        if name in used or (part.path and name in top):
+            wanted, count = name, 2
+            while f"{wanted}#{count}" in used or f"{wanted}#{count}" in top:
                 count += 1
-            refdes = f"{first}#{count}"
-            message = f"two parts are called {first}; the second is read as {refdes}"
+            name = f"{wanted}#{count}"
+            message = f"two parts are called {wanted}; this one is read as {name}"
             source.problem("error", each.local.start, message)
-        used.add(refdes)
-        result[id(each)] = Part(
-            refdes,
-            each.pins,
-            each.attributes,
-            each.local.target.name,
-            each.path,
-            source.place(each.local.start),
-        )
-    return tuple(result[id(each)] for each in kept)
+        used.add(name)
+        parts.append(part if name == part.refdes else replace(part, refdes=name))
+    return tuple(parts)
 
 
-def _sections(flat: list[FlatPart]) -> list[FlatPart]:
+def _sections(candidates: list[_Candidate], counts: Mapping[str, int]) -> list[_Candidate]:
     """The parts with the sections of each package put together."""
-    by_refdes: dict[str, list[FlatPart]] = {}
-    kept: list[FlatPart] = []
-    for each in flat:
-        if each.named:
-            same = by_refdes.setdefault(each.called, [])
+    by_refdes: dict[str, list[_Candidate]] = {}
+    kept: list[_Candidate] = []
+    for each in candidates:
+        if each.named and counts[each.part.refdes] > 1:
+            same = by_refdes.setdefault(each.part.refdes, [])
             whole = next((other for other in same if _one_package(other, each)), None)
             if whole is not None:
-                _merge(whole, each)
+                whole.part = _merged(whole.part, each.part)
                 continue
             same.append(each)
         kept.append(each)
     return kept
 
 
-def _one_package(one: FlatPart, other: FlatPart) -> bool:
+def _one_package(one: _Candidate, other: _Candidate) -> bool:
     """Whether two instances of equal designator are sections: they share no pin, or only some, each on one net."""
-    if one.local is other.local or not one.pins or not other.pins:
+    if one.local is other.local or not one.part.pins or not other.part.pins:
         return False
-    pins = {pin.number: pin.net for pin in one.pins}
-    common = [(pins[pin.number], pin.net) for pin in other.pins if pin.number in pins]
-    if len(common) == len(other.pins) == len(one.pins):
+    pins = {pin.number: pin.net for pin in one.part.pins}
+    common = [(pins[pin.number], pin.net) for pin in other.part.pins if pin.number in pins]
+    if len(common) == len(other.part.pins) == len(one.part.pins):
         return False
     return all(before == after or before is None or after is None for before, after in common)
 
 
-def _merge(whole: FlatPart, section: FlatPart) -> None:
+def _merged(whole: Part, section: Part) -> Part:
     nets = {pin.number: pin.net for pin in section.pins}
     known = {pin.number for pin in whole.pins}
-    filled = tuple(
-        pin if pin.net is not None else replace(pin, net=nets.get(pin.number)) for pin in whole.pins
-    )
-    whole.pins = filled + tuple(pin for pin in section.pins if pin.number not in known)
-    whole.attributes = MappingProxyType({**section.attributes, **whole.attributes})
+    filled = [pin if pin.net is not None else replace(pin, net=nets.get(pin.number)) for pin in whole.pins]
+    more = [pin for pin in section.pins if pin.number not in known]
+    attributes = MappingProxyType({**section.attributes, **whole.attributes})
+    return replace(whole, pins=(*filled, *more), attributes=attributes)

@@ -32,6 +32,7 @@ class Target:
     prefix: str
     defaults: tuple[Attribute, ...]
     graphic: bool
+    wiring: bool = False
 
 
 @dataclass(slots=True)
@@ -98,18 +99,9 @@ class PartMaker:
         if instance.numbers or notes:
             given = [*instance.numbers, *(number for note in notes for number in note.numbers)]
             numbers = self._numbers(given, target.interface, shown, start)
-        return LocalPart(
-            key=instance.name.key,
-            name=shown,
-            start=start,
-            target=target,
-            inside=inside,
-            interface=target.interface,
-            refdes=refdes,
-            attributes=attributes,
-            numbers=numbers,
-            symbol=_is_wiring(target.cell) or (target.graphic and not refdes),
-        )
+        symbol = target.wiring or (target.graphic and not refdes)
+        key, interface = instance.name.key, target.interface
+        return LocalPart(key, shown, start, target, inside, interface, refdes, attributes, numbers, symbol)
 
     def _target(self, ref: says.CellRef) -> Target:
         target = self._targets.get(ref)
@@ -123,6 +115,7 @@ class PartMaker:
                 target.prefix = (view.prefix if view else "") or cell.prefix
                 target.defaults = (*cell.attributes, *(view.attributes if view else ()))
                 target.interface = view.interface if view else target.interface
+                target.wiring = cell.kind in ("tie", "ripper")
                 target.graphic = view is not None and view.kind == "graphic"
         return target
 
@@ -201,11 +194,6 @@ def like_refdes(name: str, prefix: str) -> bool:
     letters = match[1].lower()
     wanted = prefix.rstrip("?").lower()
     return letters == wanted if wanted else letters not in _AUTOMATIC
-
-
-def _is_wiring(cell: Cell | None) -> bool:
-    """Whether the cell's declared type makes it wiring: a tie or a ripper."""
-    return cell is not None and cell.kind in ("tie", "ripper")
 
 
 def is_mark(part: LocalPart, net_names: list[str]) -> bool:

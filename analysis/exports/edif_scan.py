@@ -14,7 +14,7 @@ from types import MappingProxyType
 from reactance.analysis.design import InputError
 from reactance.analysis.exports.edif_forms import parsed, pruned
 from reactance.analysis.exports.edif_source import Source
-from reactance.analysis.exports.edif_words import BALANCED, BALANCED_DEPTH
+from reactance.analysis.exports.edif_words import BALANCED, BALANCED_CONTENTS, BALANCED_DEPTH
 
 
 @dataclass(slots=True)
@@ -83,6 +83,7 @@ _HEAD = re.compile(r"\(\s*+([^\s()\"]*+)")
 _GAP = re.compile(r"[^()\"]*+")
 _STRING = re.compile(r"\"[^\"]*+\"")
 _FORM = re.compile(BALANCED)
+_USUAL = re.compile(rf"\s*+(\(\s*+((?i:instance|net|port|property))(?=[\s()\"]){BALANCED_CONTENTS}\))")
 _TOKEN = re.compile(r"[()]|\"[^\"]*+\"?")
 
 
@@ -109,6 +110,7 @@ class _Scan:
         top, position = self._opening()
         stack.append(top)
         while stack:
+            position = self._usual(position)
             gap = _GAP.match(text, position)
             assert gap is not None
             start = gap.end()
@@ -129,6 +131,21 @@ class _Scan:
             where = position + text[position:].index(rest[0])
             raise self._broken("text after the end of (edif …); expected the end of the file", where)
         return top, self.aliases
+
+    def _usual(self, position: int) -> int:
+        """Take the instances, nets and ports that follow one another from here: the short way for most of a file."""
+        within = self.stack[-1]
+        wanted = _RULES[within.keyword].entries
+        if self.aliases or ("instance" not in wanted and "port" not in wanted):
+            return position
+        match, text, entries = _USUAL.match, self.text, within.entries
+        before = len(entries)
+        while (form := match(text, position)) and (keyword := form.group(2).lower()) in wanted:
+            position = form.end()
+            entries.append(Entry(keyword, form.start(1), position))
+        self.forms += len(entries) - before
+        self.source.check("forms", self.forms, position)
+        return position
 
     def _opening(self) -> tuple[Container, int]:
         start = len(self.text) - len(self.text.lstrip())

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from bisect import bisect_right
 from functools import cached_property
+from itertools import accumulate
 
 from reactance.analysis.design import InputError, Place, Problem, Severity
 from reactance.analysis.exports.limits import Limits
@@ -27,12 +28,7 @@ class Source:
     def _line_starts(self) -> list[int]:
         text = self.text
         mark = "\n" if "\n" in text or "\r" not in text else "\r"
-        starts = [0]
-        position = text.find(mark)
-        while position >= 0:
-            starts.append(position + 1)
-            position = text.find(mark, position + 1)
-        return starts
+        return [0, *accumulate(len(line) + 1 for line in text.split(mark))]
 
     def place(self, offset: int) -> Place:
         """Line and column, both from 1, of the character at `offset`."""

@@ -124,13 +124,15 @@ def written(number: Decimal) -> str:
     """A decimal number without needless digits, `1e-7` where that is shorter than zeros."""
     if not number.is_finite():
         raise InvalidOperation
-    sign, digits, exponent = number.normalize().as_tuple()
-    assert isinstance(exponent, int)
+    exponent = number.adjusted()
     if not number:
         return "0"
+    if abs(exponent) > 300:
+        raise InvalidOperation
+    plain = number.normalize()
     if -5 <= exponent <= 6:
-        return format(number.normalize(), "f")
-    return f"{'-' if sign else ''}{''.join(map(str, digits))}e{exponent}"
+        return format(plain, "f")
+    return f"{format(plain.scaleb(-exponent), 'f')}e{exponent}"
 
 
 def scales(form: list[Sexp]) -> Mapping[str, Decimal]:
