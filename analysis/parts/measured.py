@@ -4,15 +4,21 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import cached_property
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from reactance.analysis.parts.base import Stated
 from reactance.analysis.parts.claims import Claims
-from reactance.analysis.quantity import QuantityError
+from reactance.analysis.quantity import QuantityError, format_quantity
+
+if TYPE_CHECKING:
+    from reactance.analysis.parts.passive_fit import PassiveFit
+    from scipy.interpolate import PchipInterpolator
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class MeasuredPart:
     """The impedance of a two-terminal part as measured: `frequencies` in Hz (rising), `ohms` complex.
 
@@ -34,16 +40,54 @@ class MeasuredPart:
         return self.frequencies[-1]
 
     def covers(self, frequencies: ArrayLike) -> NDArray[np.bool_]:
-        """Which of `frequencies` (Hz) lie inside the data's range."""
+        """Which of `frequencies` (Hz) lie inside the data's range, in their shape."""
         f = np.asarray(frequencies, dtype=float)
-        return np.asarray((f >= self.low) & (f <= self.high))
+        slack = 1e-9
+        return np.asarray((f >= self.low * (1 - slack)) & (f <= self.high * (1 + slack)))
+
+    def beyond(self, frequencies: ArrayLike) -> str:
+        """What to say where some of `frequencies` (Hz) lie outside the data, else an empty text."""
+        if bool(np.all(self.covers(frequencies))):
+            return ""
+        low, high = format_quantity(self.low, "Hz"), format_quantity(self.high, "Hz")
+        return f"{self.file} reaches from {low} to {high}; beyond, its ends are continued"
 
     def impedance(self, frequencies: ArrayLike) -> NDArray[np.complex128]:
-        """The impedance in ohm at `frequencies` (Hz), interpolated; outside the data its end values."""
+        """The impedance in ohm at `frequencies` (Hz), in their shape.
+
+        Between the points by monotone cubics of the real and imaginary part over log f (exact at the points).
+        Beyond them the resistance is kept and the reactance continued as that of one C or one L, whichever
+        its sign tells; `beyond` says so.
+        """
         f = np.asarray(frequencies, dtype=float)
-        x = np.log(self.frequencies)
-        z = np.asarray(self.ohms)
-        return np.asarray(np.interp(np.log(f), x, z.real) + 1j * np.interp(np.log(f), x, z.imag))
+        inside = np.clip(f, self.low, self.high)
+        x = np.log(inside)
+        real, imaginary = self._real(x), self._imaginary(x)
+        stretch = np.where(imaginary < 0, inside / f, f / inside)
+        return np.asarray(real + 1j * imaginary * stretch, dtype=complex)
+
+    def fit(self) -> PassiveFit:
+        """A passive network with the measured impedance, for time work; raises QuantityError if none is close."""
+        return self._fit
+
+    @cached_property
+    def _fit(self) -> PassiveFit:
+        from reactance.analysis.parts.passive_fit import fit_passive  # not on the path of a cold start
+
+        return fit_passive(self.file, np.asarray(self.frequencies), np.asarray(self.ohms))
+
+    @cached_property
+    def _real(self) -> PchipInterpolator:
+        return self._interpolator(np.asarray(self.ohms).real)
+
+    @cached_property
+    def _imaginary(self) -> PchipInterpolator:
+        return self._interpolator(np.asarray(self.ohms).imag)
+
+    def _interpolator(self, y: NDArray[np.float64]) -> PchipInterpolator:
+        from scipy.interpolate import PchipInterpolator  # not on the path of a cold start
+
+        return PchipInterpolator(np.log(self.frequencies), y)
 
 
 def read_measured(claims: Claims, files: Mapping[str, bytes]) -> MeasuredPart | None:
@@ -51,11 +95,10 @@ def read_measured(claims: Claims, files: Mapping[str, bytes]) -> MeasuredPart | 
 
     A file that cannot be used becomes a problem, never a silent substitute.
     """
-    from reactance.analysis.parts.knowledge import touchstone
-
     claim = next((claim for claim in claims.of("touchstone") if claim.is_knowledge), None)
     if claim is None:
         return None
+    from reactance.analysis.parts.knowledge import touchstone
     from reactance.analysis.parts.touchstone import read_touchstone  # not on the path of a cold start
 
     try:
@@ -69,7 +112,7 @@ def read_measured(claims: Claims, files: Mapping[str, bytes]) -> MeasuredPart | 
 
 
 def _content(name: str, files: Mapping[str, bytes]) -> bytes:
-    """The content of the file written as `name`: under that very name, or the one path that ends in it."""
+    """The content of the file written as `name`: under that very name, or the first path that ends in it."""
     if name in files:
         return files[name]
     plain = name.replace("\\", "/").removeprefix("./")
