@@ -8,8 +8,6 @@ from reactance.analysis.duty_view import BriefedPath, Found, View
 from reactance.analysis.duty_words import listing, series_words, what_holds
 from reactance.analysis.topology import Branch, Topology
 
-_MANY = 200  # a net with more pins is a supply; which parts bridge it and a signal is found from the signal
-
 
 def overruled(capacitor: Branch, view: View) -> Found | None:
     refdes = capacitor.refdes
@@ -102,7 +100,7 @@ def _damped(start: str, end: str, topology: Topology) -> str:
     for branch in topology.on(signal):
         if branch.kind == "inductor" and branch.other(signal) == far:
             return branch.refdes
-    for one, other in topology.shared_parts(signal, far) if len(topology.pins(far)) < _MANY else ():
+    for one, other in topology.shared_parts(signal, far):
         if one.prefix in pin_roles.SWITCHED_LOADS and one.number != other.number:
             return one.refdes
     return _switch_node(start, topology) or _switch_node(end, topology)

@@ -132,13 +132,16 @@ class Topology:
         return one == other or self.islands.get(one, one) == self.islands.get(other, other)
 
     def shared_parts(self, one: str, other: str) -> Iterator[tuple[Terminal, Terminal]]:
-        """Pairs of terminals of one part, the first on net `one`, the second on net `other`."""
-        there: dict[str, list[Terminal]] = {}
-        for terminal in self.pins(other):
-            there.setdefault(terminal.refdes, []).append(terminal)
-        for terminal in self.pins(one):
-            for partner in there.get(terminal.refdes, ()):
-                yield terminal, partner
+        """Pairs of terminals of one part, the first on net `one`, the second on net `other`.
+
+        Begins at the net with fewer pins: the other may be a ground with thousands.
+        """
+        swapped = len(self.pins(one)) > len(self.pins(other))
+        near, far = (other, one) if swapped else (one, other)
+        for terminal in self.pins(near):
+            for partner in self.terminals_by_part[terminal.refdes]:
+                if partner.net == far:
+                    yield (partner, terminal) if swapped else (terminal, partner)
 
     def neighbours(self, net: str) -> Iterator[str]:
         """Nets that a signal reaches from `net` over one branch, or through an amplifier in either direction."""
