@@ -232,6 +232,9 @@ def _leakage(claims: Claims, common: Common, nature: _Nature, rated: float | Non
 
 def _temperature(claims: Claims, nature: _Nature, conditions: Conditions) -> Band:
     coefficient = claims.take("temperature_coefficient", reading.coefficient)
+    if coefficient is None and "dielectric" not in claims.stated:
+        for claim in claims.of("temperature_coefficient")[:1]:
+            claims.tell("caution", f"{claim.text!r} in {claim.source} is neither a dielectric code nor a coefficient")
     if not conditions.beyond_reference:
         return UNITY
     if coefficient is not None:

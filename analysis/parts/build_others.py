@@ -20,6 +20,9 @@ def build_resistor(part: Part, claims: Claims, conditions: Conditions) -> Resist
     link = common.value is not None and common.value < SHORT_BELOW
     tolerance = (0.0, 0.0) if link else _tolerance(claims, common, defaults.TOLERANCE_RESISTOR)
     coefficient = claims.take("temperature_coefficient", reading.coefficient)
+    if coefficient is None:
+        for claim in claims.of("temperature_coefficient")[:1]:
+            claims.tell("caution", f"{claim.text!r} in {claim.source} is no temperature coefficient")
     if coefficient is None and conditions.beyond_reference and not link:
         claims.assume("temperature_coefficient", "0 ppm/K", "none is stated")
     drift = linear_drift(*coefficient, conditions) if coefficient else UNITY

@@ -21,7 +21,22 @@ if TYPE_CHECKING:
 T = TypeVar("T")
 
 # Names under which a text may stand for something else, so that not understanding it is no fault of the export.
-_LOOSE = frozenset(("type", "rating", "material", "characteristic", "tc", "tempco", "size", "comment", "part"))
+# A temperature coefficient's names also stand over dielectric codes.
+_LOOSE = frozenset(
+    (
+        "temperaturecoefficient",
+        "tempcoeff",
+        "type",
+        "rating",
+        "material",
+        "characteristic",
+        "tc",
+        "tempco",
+        "size",
+        "comment",
+        "part",
+    )
+)
 
 
 @dataclass(frozen=True, slots=True)
