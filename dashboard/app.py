@@ -22,7 +22,6 @@ from reactance.dashboard.check_page import check_page
 from reactance.dashboard.events import RETRY_MS, Streams, state
 from reactance.dashboard.guard import protect
 from reactance.dashboard.rows import numbered
-from reactance.dashboard.words import SCOPES
 
 if TYPE_CHECKING:
     from reactance.analysis.study import Study
@@ -45,6 +44,7 @@ def create_app(
     app.jinja_env.trim_blocks = app.jinja_env.lstrip_blocks = True
     app.extensions["reactance.archive"] = Archive(history, analyse)
     app.extensions["reactance.streams"] = Streams(history)
+    app.extensions["reactance.script"] = plots.PlotScript()
     app.register_blueprint(views)
     app.register_error_handler(HistoryError, _unreadable)
     app.register_error_handler(HTTPException, _refused)
@@ -55,6 +55,12 @@ def create_app(
 def _archive() -> Archive:
     found = current_app.extensions["reactance.archive"]
     assert isinstance(found, Archive)
+    return found
+
+
+def _script() -> plots.PlotScript:
+    found = current_app.extensions["reactance.script"]
+    assert isinstance(found, plots.PlotScript)
     return found
 
 
@@ -89,12 +95,10 @@ def checks(board: int, scope: str) -> Response:
     found = pages.shown(_archive(), board)
     if not isinstance(found, pages.Shown):
         return _nothing(found, seen)
-    key = "" if scope == "other" else scope
     start = max(0, request.args.get("from", 0, type=int))
-    wanted = [check for check in found.report.checks if _scope(check.id) == key]
-    if not wanted:
+    group = pages.page_of_group(found, "" if scope == "other" else scope, start, _IN_GROUP)
+    if group is None:
         return _missing("This board has no such checks.")
-    group = pages.group(found, found.strips, key, SCOPES[key], wanted, _IN_GROUP, start)
     return _page(
         "checks.html", _events(board), seen, head=pages.head(found), group=group, start=start, size=_IN_GROUP
     )
@@ -147,7 +151,7 @@ def check(board: int) -> Response:
     page = check_page(found, request.args.get("id", ""))
     if page is None:
         return _missing("This board has no such check.")
-    return _page("check.html", _events(board), seen, page=page, script="curve.js")
+    return _page("check.html", _events(board), seen, page=page, script="curve.js", style_ids=_script().style_ids)
 
 
 @views.get("/board/<int:board>/curve")
@@ -220,17 +224,9 @@ def events() -> Response:
 @views.get("/plotly.js")
 def plotly_script() -> Response:
     """The plotting script that comes inside the plotly package."""
-    import plotly
-
-    script = Path(plotly.__file__).parent / "package_data" / "plotly.min.js"
-    answer = send_file(script, mimetype="text/javascript", max_age=86400, conditional=True)
+    answer = send_file(_script().path, mimetype="text/javascript", max_age=86400, conditional=True)
     answer.headers["Cache-Control"] = "private, max-age=86400"
     return answer
-
-
-def _scope(check_id: str) -> str:
-    scope = check_id.partition(":")[0]
-    return scope if scope in SCOPES else ""
 
 
 def _state(board: int) -> str:

@@ -8,6 +8,8 @@ from dataclasses import dataclass
 from urllib.parse import urlencode
 
 from reactance.analysis.measures import find_measure
+from reactance.analysis.movement_words import name_words
+from reactance.analysis.movements import split_id
 from reactance.analysis.quantity import format_quantity
 from reactance.analysis.report import Check, Movement, ProblemEntry
 from reactance.dashboard import words
@@ -73,7 +75,6 @@ class CheckPage:
     moments: tuple[Moment, ...]
     older_href: str
     newer_href: str
-    edits: tuple[str, ...]
 
 
 def check_page(found: Shown, check_id: str) -> CheckPage | None:
@@ -84,19 +85,20 @@ def check_page(found: Shown, check_id: str) -> CheckPage | None:
     if check is None and not cells:
         return None
     before = _earlier(found, check_id)
-    name = words.name_of(check_id, (check or before).measure if check or before else "")
+    known = check or before
+    name = name_words(known) if known else words.id_words(check_id)
     move = _movement(found, check_id)
     origin = Provenance(missing="The check is not on the board in this save.")
     if check is not None:
         origin = provenance(found.archive, check_id, found.revision, found.baseline)
-    about = _asked_frequency(found, name) if name.scope in ("coupling", "filter") else None
+    about = _asked_frequency(found, check) if check else None
     older, newer = _neighbours(found, check_id)
     return CheckPage(
         head=head(found),
         check_id=check_id,
-        name=str(name),
-        meaning=_meaning(name),
-        lead=_lead(found, check, move, str(name)),
+        name=name,
+        meaning=_meaning(known) if known else "",
+        lead=_lead(found, check, move, name),
         word=words.VERDICT[move.verdict] if move else (words.STATUS[check.status] if check else "gone"),
         tone=TONES.get(move.verdict if move else (check.status if check else "fail"), "watched"),
         explain=check.explain if check else "",
@@ -108,10 +110,9 @@ def check_page(found: Shown, check_id: str) -> CheckPage | None:
         sine_choices=tuple((text, format_quantity(about * factor, "Hz")) for text, factor in SINES) if about else (),
         origin=origin,
         cautions=_cautions(report.problems, origin),
-        moments=_moments(found, check or before, check_id),
+        moments=_moments(found, known, check_id),
         older_href=older,
         newer_href=newer,
-        edits=tuple(words.edit_words(edit) for edit in found.comparison.edits) if found.comparison else (),
     )
 
 
@@ -121,8 +122,8 @@ def data_href(kind: str, found: Shown, check_id: str) -> str:
 
 
 def _earlier(found: Shown, check_id: str) -> Check | None:
-    report = found.archive.report(found.baseline.id) if found.baseline else None
-    return next((check for check in report.checks if check.id == check_id), None) if report else None
+    checks = found.older.checks if found.older else ()
+    return next((check for check in checks if check.id == check_id), None)
 
 
 def _movement(found: Shown, check_id: str) -> Movement | None:
@@ -130,9 +131,9 @@ def _movement(found: Shown, check_id: str) -> Movement | None:
     return next((move for move in moves if move.check == check_id), None)
 
 
-def _meaning(name: words.Name) -> str:
+def _meaning(check: Check) -> str:
     try:
-        measure = find_measure(name.scope, name.measure)
+        measure = find_measure(split_id(check)[0], check.measure)
     except KeyError:
         return ""
     return measure.words[:1].upper() + measure.words[1:]
@@ -173,13 +174,15 @@ def _side(name: str, check: Check) -> Side:
     )
 
 
-def _asked_frequency(found: Shown, name: words.Name) -> float | None:
+def _asked_frequency(found: Shown, check: Check) -> float | None:
     """The frequency that a sine is most telling at: a corner of the same coupling or filter."""
-    for check in found.report.checks:
-        other = words.name_of(check.id, check.measure)
-        same = (other.scope, other.anchor) == (name.scope, name.anchor)
-        if same and check.unit == "Hz" and check.nominal and math.isfinite(check.nominal):
-            return check.nominal
+    anchor = split_id(check)[:2]
+    if anchor[0] not in ("coupling", "filter"):
+        return None
+    for other in found.report.checks:
+        corner = other.unit == "Hz" and split_id(other)[:2] == anchor
+        if corner and other.nominal and math.isfinite(other.nominal):
+            return other.nominal
     return None
 
 
@@ -203,12 +206,12 @@ def _moments(found: Shown, known: Check | None, check_id: str) -> tuple[Moment, 
                 number=drawn.column.number,
                 when=words.moment(row.saved),
                 machine=words.machine_moment(row.saved),
-                figure=words.value_words(cell.nominal, unit, measure) if cell else row.error or "",
+                figure=words.value_words(cell.nominal, unit, measure) if cell else "–",
                 band=words.band_words(cell.low, cell.high, unit, measure) if cell else "",
                 status=words.STATUS[cell.status] if cell else "not judged",
                 tone=TONES.get(cell.status, "watched") if cell else "bad",
                 verdict=words.VERDICT[cell.verdict] if cell and cell.verdict else "",
-                edits=drawn.column.edits if cell and cell.verdict else "",
+                edits=(drawn.column.edits if cell.verdict else "") if cell else row.error or "",
                 href=check_href(found.board.id, check_id, row.id) if cell else "",
                 revision_href=revision_href(found.board.id, row.id),
                 shown=drawn.column.shown,

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from reactance.analysis.difference import sentence
-from reactance.analysis.report import Check, Comparison, Movement, ProblemEntry, Report, Status
+from reactance.analysis.movement_words import edit_words
+from reactance.analysis.report import Check, Comparison, Movement, ProblemEntry, Report
 from reactance.daemon.history import BoardRow, History, RevisionRow
 from reactance.dashboard import words
 from reactance.dashboard.archive import Archive
@@ -34,6 +35,8 @@ SMALL_BOARD = 90  # up to so many checks are all shown at once
 MOST_CAPACITORS = 60
 MOST_SAVES = 12
 MOST_EDITS = 12
+_PRESSING = frozenset({"fail", "marginal", "unknown"})
+_QUIET_KINDS = frozenset({"part", "net"})  # many, and rarely news
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,18 +55,19 @@ class BoardLine:
 
 @dataclass(frozen=True, slots=True)
 class Group:
-    """Checks of one kind: those shown, and how many more there are."""
+    """Checks of one kind: those shown, those behind a disclosure, and how many more there are."""
 
     key: str
     title: str
     standing: str
     rows: tuple[Row, ...]
+    quiet: tuple[Row, ...]
     total: int
 
     @property
     def rest(self) -> int:
-        """How many are not shown."""
-        return self.total - len(self.rows)
+        """How many are not on the page."""
+        return self.total - len(self.rows) - len(self.quiet)
 
 
 @dataclass(frozen=True, slots=True)
@@ -126,13 +130,19 @@ class Shown:
     comparison: Comparison | None
 
     @property
+    def older(self) -> Report | None:
+        """The results of the baseline."""
+        return self.archive.report(self.baseline.id) if self.baseline else None
+
+    @property
     def strips(self) -> Strips:
         """Draws strips over this board's last saves, the shown one marked."""
+        older = self.older
         return Strips(
             self.board.id,
             self.archive.history.strip(self.board.id),
             columns(self.archive, self.revisions, self.revision.id),
-            self.report,
+            (older, self.report) if older else (self.report,),
             self.baseline.id if self.baseline else None,
         )
 
@@ -245,7 +255,7 @@ def head(found: Shown) -> Head:
 def change(found: Shown, strips: Strips | None, most: int = MOST_MOVEMENTS) -> Change:
     """The edits of the shown revision and a sentence for each check that they moved."""
     comparison = found.comparison or Comparison((), ())
-    edits = tuple(words.edit_words(edit) for edit in comparison.edits)
+    edits = tuple(edit_words(edit, found.older, found.report) for edit in comparison.edits)
     moves = by_verdict(comparison.movements)
     pinned = found.baseline is not None and found.baseline.id == found.board.pinned
     return Change(
@@ -263,39 +273,56 @@ def change(found: Shown, strips: Strips | None, most: int = MOST_MOVEMENTS) -> C
 
 def movement_text(found: Shown, move: Movement) -> str:
     """The sentence of a movement: the check, its figures, the limit, and the edits behind it."""
-    older = found.archive.report(found.baseline.id) if found.baseline else None
-    if older is None or found.comparison is None:
-        return move.check
-    return sentence(move, found.comparison.edits, older, found.report)
+    edits = found.comparison.edits if found.comparison else ()
+    return sentence(move, edits, found.older, found.report)
 
 
 def groups(found: Shown, strips: Strips) -> tuple[Group, ...]:
     """All checks by what they are about; on a large board the most pressing of each kind."""
     kinds: dict[str, list[Check]] = {}
     for check in found.report.checks:
-        scope = words.name_of(check.id, check.measure).scope
-        kinds.setdefault(scope if scope in words.SCOPES else "", []).append(check)
-    small = len(found.report.checks) <= SMALL_BOARD
-    made = []
-    for scope, title in words.SCOPES.items():
-        checks = kinds.get(scope, [])
-        if checks:
-            most = len(checks) if small else MOST_IN_GROUP
-            made.append(group(found, strips, scope, title, checks, most))
-    return tuple(made)
+        kinds.setdefault(kind_of(check), []).append(check)
+    return tuple(_summary(found, strips, scope, kinds[scope]) for scope in words.SCOPES if scope in kinds)
 
 
-def group(
-    found: Shown, strips: Strips, scope: str, title: str, checks: Sequence[Check], most: int, start: int = 0
+def kind_of(check: Check) -> str:
+    """The kind of a check, a key of `words.SCOPES`."""
+    scope = check.id.partition(":")[0]
+    return scope if scope in words.SCOPES else ""
+
+
+def _summary(found: Shown, strips: Strips, scope: str, checks: Sequence[Check]) -> Group:
+    """A kind on the page of its board: what is pressing in the open, the rest behind a disclosure or a link."""
+    moved = {move.check for move in found.comparison.movements} if found.comparison else set()
+    pressing = [check for check in checks if check.status in _PRESSING or check.id in moved]
+    if len(checks) <= MOST_IN_GROUP and scope not in _QUIET_KINDS:
+        return _group(found, strips, checks, checks)
+    if len(found.report.checks) > SMALL_BOARD:
+        return _group(found, strips, checks, by_weight(checks, found.comparison)[:MOST_IN_GROUP])
+    chosen = {check.id for check in pressing}
+    quiet = [check for check in checks if check.id not in chosen]
+    return _group(found, strips, checks, by_weight(pressing, found.comparison), quiet)
+
+
+def page_of_group(found: Shown, scope: str, start: int, most: int) -> Group | None:
+    """One kind's checks from `start`, at most `most`, the most pressing first; None where there are none."""
+    checks = [check for check in found.report.checks if kind_of(check) == scope]
+    ordered = by_weight(checks, found.comparison)[start : start + most]
+    return _group(found, found.strips, checks, ordered) if ordered else None
+
+
+def _group(
+    found: Shown, strips: Strips, checks: Sequence[Check], shown: Sequence[Check], quiet: Sequence[Check] = ()
 ) -> Group:
-    """One kind's checks from `start`, at most `most`."""
-    ordered = checks if len(checks) <= most else by_weight(checks, found.comparison)
-    rows = tuple(check_row(found.board.id, check, strips) for check in ordered[start : start + most])
-    return Group(scope or "other", title, words.tally(_statuses(checks)), rows, len(checks))
-
-
-def _statuses(checks: Sequence[Check]) -> Mapping[Status, int]:
-    return Counter(check.status for check in checks)
+    board, scope = found.board.id, kind_of(checks[0])
+    return Group(
+        key=scope or "other",
+        title=words.SCOPES[scope],
+        standing=words.tally(Counter(check.status for check in checks)),
+        rows=tuple(check_row(board, check, strips) for check in shown),
+        quiet=tuple(check_row(board, check, strips) for check in quiet),
+        total=len(checks),
+    )
 
 
 def save_list(archive: Archive, revisions: Sequence[RevisionRow]) -> tuple[Save, ...]:

@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import re
+from functools import cached_property
+from pathlib import Path
 from typing import Literal
 
 import msgspec
@@ -80,3 +83,24 @@ def sine_plot(before: tuple[str, Curve] | None, after: tuple[str, Curve]) -> Plo
         (),
         curve.title,
     )
+
+
+class PlotScript:
+    """The plotting script that comes inside the plotly package, served as it is."""
+
+    @cached_property
+    def path(self) -> Path:
+        """Its file."""
+        import plotly
+
+        return Path(plotly.__file__).parent / "package_data" / "plotly.min.js"
+
+    @cached_property
+    def style_ids(self) -> tuple[str, ...]:
+        """Ids of the style elements that it would add by itself, which the page's policy forbids.
+
+        It leaves out an element whose id is there already, so a page that holds them empty stays without complaint.
+        They belong to kinds of plots that are not drawn here.
+        """
+        text = self.path.read_text(encoding="utf-8")
+        return tuple(dict.fromkeys(re.findall(r'getElementById\("([0-9a-f]{64})"\)', text)))

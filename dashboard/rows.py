@@ -8,6 +8,7 @@ from datetime import datetime
 from typing import Literal
 from urllib.parse import urlencode
 
+from reactance.analysis.movement_words import edit_words, name_words
 from reactance.analysis.report import Check, Comparison, Edit, Movement, Report, Status, Verdict
 from reactance.daemon.history import RevisionRow, StripCell
 from reactance.dashboard import words
@@ -99,7 +100,7 @@ def columns(archive: Archive, revisions: Sequence[RevisionRow], shown: int | Non
 
 def edits_words(edits: Sequence[Edit]) -> str:
     """Edits in one line."""
-    return words.listed((words.edit_words(edit) for edit in edits), _EDITS_NAMED)
+    return words.listed((edit_words(edit, None, None) for edit in edits), _EDITS_NAMED)
 
 
 class Strips:
@@ -110,25 +111,26 @@ class Strips:
         board: int,
         cells: Mapping[str, tuple[StripCell, ...]],
         columns: Sequence[Column],
-        newest: Report,
+        reports: Sequence[Report],
         baseline: int | None,
     ) -> None:
+        """`reports` are the baseline's, if there is one, and the shown revision's; the later one speaks."""
         self._board = board
         self._cells = cells
         self._columns = columns
         self._baseline = baseline
-        self._checks = {check.id: check for check in newest.checks}
+        self._checks = {check.id: check for report in reports for check in report.checks}
 
     def strip(self, check_id: str) -> Strip:
         """The strip of one check."""
         cells = self._cells.get(check_id, ())
         check = self._checks.get(check_id)
-        unit, measure = (check.unit, check.measure) if check else ("", "")
+        unit = check.unit if check else ""
         before = next((cell.nominal for cell in cells if cell.revision == self._baseline), None)
         if before is None:
             before = next((cell.nominal for cell in cells if cell.nominal is not None), None)
         scale = scale_of(cells, check.limit if check else None, unit, before)
-        name = str(words.name_of(check_id, measure))
+        name = name_words(check) if check else words.id_words(check_id)
         edits = {column.revision: column.edits for column in self._columns}
         labels = {cell.revision: _cell_words(cell, check, edits.get(cell.revision, "")) for cell in cells}
         hrefs = {
@@ -141,8 +143,8 @@ class Strips:
 
 
 def _cell_words(cell: StripCell, check: Check | None, edits: str) -> str:
-    if cell.nominal is None and check is None:
-        figure = "gone from the board"
+    if cell.nominal is None and cell.verdict is not None:
+        figure = "no longer there"
     else:
         unit, measure = (check.unit, check.measure) if check else ("", "")
         figure = words.value_words(cell.nominal, unit, measure)
@@ -159,7 +161,7 @@ def check_row(board: int, check: Check, strips: Strips, note: str = "") -> Row:
         key=check.id,
         word=words.STATUS[check.status],
         tone=TONES.get(check.status, "watched"),
-        text=str(words.name_of(check.id, check.measure)),
+        text=name_words(check),
         figure=words.check_words(check),
         note=note,
         href=check_href(board, check.id),

@@ -20,7 +20,7 @@ LINE = 15.0  # the limit
 _UNIT = BASE - LINE
 _HEADROOM = LINE - 2.0
 _LEAST_EXCESS = 2.5  # a failing bar stands clear of the line, however small the excess
-_PITCHES = ((16, 20), (30, 14), (45, 11))
+_PITCHES = ((16, 16), (30, 13), (45, 10))
 _NARROWEST = 8
 
 
@@ -162,7 +162,7 @@ def _cell(
     figures: Mapping[int, str],
     hrefs: Mapping[int, str],
 ) -> Drawn:
-    gap = 2 if step > _NARROWEST else 1
+    gap = 4 if step > 10 else 3 if step > _NARROWEST else 2
     href = hrefs.get(column.revision, "")
     place = f"save {column.number}, {column.when}"
     if cell is None:

@@ -3,11 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
 from datetime import datetime
 
 from reactance.analysis.quantity import format_quantity
-from reactance.analysis.report import Check, Edit, Limit, Status, Verdict
+from reactance.analysis.report import Check, Limit, Status, Verdict
 
 PERCENT = frozenset({"stress", "tilt", "overshoot"})  # shares that people read as percentages
 
@@ -19,17 +18,6 @@ SCOPES: Mapping[str, str] = {
     "net": "Nets",
     "": "Other checks",
 }
-_MEASURES: Mapping[str, str] = {
-    "corner_low": "lower corner",
-    "corner_high": "upper corner",
-    "startup_peak": "start-up peak",
-    "impedance": "impedance over target",
-    "dc": "DC difference",
-    "stress": "voltage stress",
-    "range": "temperature room",
-    "return": "DC path",
-    "bypass": "capacitors per supply pin",
-}
 STATUS: Mapping[Status, str] = {
     "pass": "holds",
     "marginal": "marginal",
@@ -40,30 +28,11 @@ STATUS: Mapping[Status, str] = {
 VERDICT: Mapping[Verdict, str] = {"worse": "worse", "better": "better", "moved": "moved"}
 
 
-@dataclass(frozen=True, slots=True)
-class Name:
-    """A check id taken apart: what it is about, which measure, and both in words."""
-
-    scope: str
-    anchor: str
-    measure: str
-    detail: str
-
-    def __str__(self) -> str:
-        words = _MEASURES.get(self.measure, self.measure.replace("_", " "))
-        return f"{self.anchor} {words}{f' at {self.detail}' if self.detail else ''}"
-
-
-def name_of(check_id: str, measure: str = "") -> Name:
-    """The parts of a check id. Anchors and details may themselves hold colons; a known `measure` decides."""
-    scope, _, rest = check_id.partition(":")
-    cut = rest.rfind(f":{measure}") if measure else -1
-    if cut < 0:
-        at = rest.find("@")
-        cut = rest.rfind(":", 0, at if at >= 0 else len(rest))
-    anchor, tail = (rest[:cut], rest[cut + 1 :]) if cut >= 0 else (rest, "")
-    found, _, detail = tail.partition("@")
-    return Name(scope, anchor.replace(">", " → "), found, detail)
+def id_words(check_id: str) -> str:
+    """The name of a check of which only the id is left."""
+    _, _, rest = check_id.partition(":")
+    anchor, _, measure = rest.rpartition(":")
+    return f"{anchor or rest} {measure.replace('_', ' ')}".replace(">", " → ").strip()
 
 
 def value_words(value: float | None, unit: str, measure: str) -> str:
@@ -101,31 +70,6 @@ def band_words(low: float | None, high: float | None, unit: str, measure: str) -
         return ""
     ends = value_words(low, unit, measure), value_words(high, unit, measure)
     return "" if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}"
-
-
-def edit_words(edit: Edit) -> str:
-    """One edit: `C14 value 100 nF → 10 nF`, `C14 removed`, `C14 is now C20`."""
-    part, attribute = edit.part or "", edit.attribute or ""
-    before, after = edit.before, edit.after
-    match edit.kind:
-        case "part added":
-            return f"{part} added{f' ({after})' if after else ''}"
-        case "part removed":
-            return f"{part} removed{f' ({before})' if before else ''}"
-        case "part renumbered":
-            return f"{before or part} is now {after}"
-        case "pin moved":
-            return f"{part} {attribute}: {before or 'open'} → {after or 'open'}"
-        case "brief changed":
-            return f"brief: {attribute or part} {_change(before, after)}".strip()
-    name = "" if attribute.casefold() == "value" else f" {attribute}"
-    return f"{part}{name} {_change(before, after)}"
-
-
-def _change(before: str | None, after: str | None) -> str:
-    if before is None:
-        return f"{after} stated" if after is not None else "changed"
-    return f"{before} no longer stated" if after is None else f"{before} → {after}"
 
 
 def listed(texts: Iterable[str], most: int) -> str:

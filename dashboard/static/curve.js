@@ -8,41 +8,90 @@
     return `rgba(${whole >> 16}, ${(whole >> 8) & 255}, ${whole & 255}, ${share})`;
   }
 
+  const PREFIXES = { 12: "T", 9: "G", 6: "M", 3: "k", 0: "", "-3": "m", "-6": "µ", "-9": "n", "-12": "p", "-15": "f" };
+  const PLAIN = new Set(["dB", "", "1", "K"]);
+
+  // Engineering notation, as everywhere else on the page: 1.59 kHz, 164 mV.
+  function engineering(value, unit, digits = 4) {
+    if (value === null || !Number.isFinite(value)) return "none";
+    const symbol = unit === "1" ? "" : unit;
+    let power = 0;
+    if (value !== 0 && !PLAIN.has(unit)) {
+      power = Math.floor(Math.log10(Math.abs(Number(value.toPrecision(digits)))) / 3) * 3;
+      power = Math.max(-15, Math.min(12, power));
+    }
+    const number = String(Number((value / 10 ** power).toPrecision(digits))).replace("-", "−");
+    return `${number} ${PREFIXES[power]}${symbol}`.trim();
+  }
+
+  // Round numbers inside a range of an axis, about as many as there is room for.
+  function roundNumbers([from, to], log, room) {
+    const found = [];
+    const [low, high] = from < to ? [from, to] : [to, from];
+    if (log) {
+      const decades = high - low;
+      const most = room / Math.max(decades, 0.1);
+      const steps = most >= 5 ? [1, 2, 3, 5, 7] : most >= 3 ? [1, 2, 5] : most >= 2 ? [1, 3] : [1];
+      const stride = Math.max(1, Math.ceil(decades / room));
+      for (let power = Math.floor(low / stride) * stride; power <= high; power += stride) {
+        for (const step of steps) {
+          const place = power + Math.log10(step);
+          if (place >= low - 1e-9 && place <= high + 1e-9) found.push(Number(`${step}e${power}`));
+        }
+      }
+      return found;
+    }
+    const rough = (high - low) / room;
+    const power = Math.floor(Math.log10(rough));
+    const step = [1, 2, 5, 10].find((one) => one * 10 ** power >= rough * 0.999) * 10 ** power;
+    for (let place = Math.ceil(low / step - 1e-9); place * step <= high + step * 1e-9; place += 1) found.push(place * step);
+    return found;
+  }
+
   function axis(about) {
-    const log = about.log;
-    const plain = about.unit === "dB" || about.unit === "";
     return {
       title: { text: about.label, standoff: 12 },
-      type: log ? "log" : "linear",
-      exponentformat: "SI",
-      minexponent: plain ? 6 : 0,
-      ticksuffix: about.unit ? (plain ? ` ${about.unit}` : about.unit) : "",
-      dtick: log ? 1 : undefined,
-      showgrid: true,
+      type: about.log ? "log" : "linear",
       gridcolor: css("--hair"),
-      gridwidth: 1,
-      zeroline: !log,
+      zeroline: !about.log,
       zerolinecolor: css("--quiet"),
-      zerolinewidth: 1,
       linecolor: css("--rule"),
       tickcolor: css("--rule"),
       ticks: "outside",
       ticklen: 5,
       automargin: true,
-      nticks: 8,
-      fixedrange: false,
+      exponentformat: "none",
     };
   }
 
+  // Labels for the ranges shown now; again after every zoom.
+  function label(place) {
+    const { xaxis, yaxis, width, height } = place._fullLayout;
+    const shown = JSON.stringify([xaxis.range, yaxis.range, width, height]);
+    if (place.labelled === shown) return;
+    place.labelled = shown;
+    const change = {};
+    for (const [name, of, about, room] of [
+      ["xaxis", xaxis, place.drawn.x, width / 110],
+      ["yaxis", yaxis, place.drawn.y, height / 60],
+    ]) {
+      const values = roundNumbers(of.range, about.log, room);
+      change[`${name}.tickvals`] = values;
+      change[`${name}.ticktext`] = values.map((value) => engineering(value, about.unit));
+    }
+    Plotly.relayout(place, change);
+  }
+
   const looks = {
-    before: () => ({ color: css("--watched"), width: 2, dash: "6px,4px" }),
+    before: () => ({ color: css("--quiet"), width: 2, dash: "6px,4px" }),
     after: () => ({ color: css("--good"), width: 2.5, dash: "solid" }),
     input: () => ({ color: css("--ink"), width: 1, dash: "2px,3px" }),
   };
 
   function traces(plot) {
     const made = [];
-    const hover = `%{y:.4~s}${plot.y.unit} at %{x:.4~s}${plot.x.unit}`;
+    const told = (name, x, y) =>
+      x.map((at, place) => `${name}: ${engineering(y[place], plot.y.unit)} at ${engineering(at, plot.x.unit)}`);
     for (const side of plot.sides) {
       const line = looks[side.role]();
       if (side.low.length) {
@@ -53,16 +102,16 @@
       }
       made.push({
         type: "scatter", mode: "lines", name: side.name, x: side.x, y: side.y, line,
-        hovertemplate: `${side.name}: ${hover}<extra></extra>`,
+        text: told(side.name, side.x, side.y), hoverinfo: "text",
       });
     }
     const named = new Set();
     for (const limit of plot.limits) {
       made.push({
         type: "scatter", mode: "lines", name: limit.name, x: limit.x, y: limit.y,
-        line: { color: css("--bad"), width: 1.5, dash: "solid" },
+        line: { color: css("--bad"), width: 1.5 },
         legendgroup: limit.name, showlegend: !named.has(limit.name),
-        hovertemplate: `${limit.name}: %{y:.4~s}${plot.y.unit}<extra></extra>`,
+        text: told(limit.name, limit.x, limit.y), hoverinfo: "text",
       });
       named.add(limit.name);
     }
@@ -102,8 +151,11 @@
       return;
     }
     place.replaceChildren();
-    await Plotly.newPlot(place, traces(plot), layout(plot), config);
     place.drawn = plot;
+    place.labelled = "";
+    await Plotly.newPlot(place, traces(plot), layout(plot), config);
+    place.on("plotly_afterplot", () => label(place));
+    label(place);
     place.dataset.curves = String(plot.sides.length);
     place.dataset.limits = String(plot.limits.length);
   }
@@ -133,7 +185,9 @@
 
   function redraw() {
     for (const place of document.querySelectorAll(".plot")) {
-      if (place.drawn) Plotly.react(place, traces(place.drawn), layout(place.drawn), config);
+      if (!place.drawn) continue;
+      place.labelled = "";
+      Plotly.react(place, traces(place.drawn), layout(place.drawn), config);
     }
   }
 

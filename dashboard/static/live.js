@@ -56,11 +56,11 @@
   function replace(part) {
     const mark = remember();
     const scroll = [window.scrollX, window.scrollY];
-    const opened = [...main().querySelectorAll("details")].map((one) => one.open);
+    const opened = new Set([...main().querySelectorAll("details[open]")].map((one) => one.dataset.key));
     const fresh = document.importNode(part, true);
     fresh.classList.add("fresh");
     main().replaceWith(fresh);
-    fresh.querySelectorAll("details").forEach((one, place) => { one.open = opened[place] || false; });
+    for (const one of fresh.querySelectorAll("details")) one.open = opened.has(one.dataset.key);
     document.title = fresh.dataset.title || document.title;
     window.scrollTo(...scroll);
     restore(mark);
