@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import os
 import stat
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from types import MappingProxyType
@@ -19,29 +19,31 @@ MOST_BYTES = 256 * 2**20
 _HEAD_BYTES = 8192
 _NO_EXPORTS = (BRIEF_SUFFIX, ".parts.csv")
 
-Signature = tuple[object, ...]
+Stamp = tuple[int, int, int, int] | None
+Signature = tuple[Stamp, ...]
 
 
 @dataclass(frozen=True, slots=True)
 class Reading:
     """A board's files as read, or why they could not be.
 
-    `dependencies` are the paths of all files that matter to the board, those that do not exist among them.
-    `saved` is the newest modification time, in seconds since 1970.
+    `seen` maps the paths of all files that matter to the board, those that do not exist among them, to how they
+    looked just before they were read. `saved` is the newest modification time, in seconds since 1970.
     """
 
     files: BoardFiles | None
     error: InputError | None
-    dependencies: tuple[str, ...]
+    seen: Mapping[str, Stamp]
     saved: float
 
 
 def signature(paths: Iterable[str]) -> Signature:
     """Changes whenever one of these files is replaced or written, as far as the file system tells."""
-    return tuple(_stamp(path) for path in paths)
+    return tuple(stamp(path) for path in paths)
 
 
-def _stamp(path: str) -> tuple[int, int, int, int] | None:
+def stamp(path: str) -> Stamp:
+    """Changes whenever that file is replaced or written; None where there is none."""
     try:
         found = Path(path).stat()
     except OSError:
@@ -76,20 +78,22 @@ def read_board(export: Path, brief: Path | None = None) -> Reading:
     try:
         files = _board_files(reader, export, brief)
     except InputError as error:
-        return Reading(None, error, tuple(reader.looked_at), reader.newest)
-    return Reading(files, None, tuple(reader.looked_at), reader.newest)
+        return Reading(None, error, MappingProxyType(reader.seen), reader.newest)
+    return Reading(files, None, MappingProxyType(reader.seen), reader.newest)
 
 
 class _Reader:
     """Reads files and remembers which were looked at, and the newest time among them."""
 
     def __init__(self) -> None:
-        self.looked_at: dict[str, None] = {}
+        self.seen: dict[str, Stamp] = {}
         self.newest = 0.0
 
     def note(self, path: Path) -> None:
         """The board depends on that file, whether it exists or not."""
-        self.looked_at[str(path.parent.resolve() / path.name)] = None
+        where = str(path.parent.resolve() / path.name)
+        if where not in self.seen:
+            self.seen[where] = stamp(where)
 
     def optional(self, path: Path) -> bytes | None:
         """The file's bytes, None where there is none."""

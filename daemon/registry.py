@@ -2,20 +2,21 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 
-from reactance.daemon.reading import Signature, signature
+from reactance.daemon.reading import Signature, Stamp, signature
+from reactance.daemon.settle import Hint
 
 
 @dataclass(slots=True)
 class Known:
-    """One board. `sha256` is that of the contents last handed on, `seen` how its files looked when last read."""
+    """One board. `seen` is how its files looked when last read; `sha256` that of the contents last handed on."""
 
-    dependencies: tuple[str, ...]
+    seen: Mapping[str, Stamp]
     sha256: str | None = None
     gone: bool = False
-    seen: Signature = ()
 
 
 class Registry:
@@ -24,7 +25,6 @@ class Registry:
     def __init__(self) -> None:
         self._boards: dict[str, Known] = {}
         self._dependents: dict[str, set[str]] = {}
-        self.changes = 0
 
     def __contains__(self, board: str) -> bool:
         return board in self._boards
@@ -41,27 +41,19 @@ class Registry:
         """The board, known from now on."""
         known = self._boards.get(board)
         if known is None:
-            known = self._boards[board] = Known((board,))
-            self.changes += 1
+            known = self._boards[board] = Known({board: None})
             self._dependents.setdefault(board, set()).add(board)
         return known
 
-    def depend(self, board: str, dependencies: tuple[str, ...]) -> None:
-        """The board depends on these files and no others."""
+    def saw(self, board: str, seen: Mapping[str, Stamp]) -> None:
+        """The board was read: it depends on these files, which looked like this, and on no others."""
         known = self.know(board)
-        wanted = tuple(dict.fromkeys((board, *dependencies)))
-        if wanted == known.dependencies:
-            return
-        self.changes += 1
-        for path in known.dependencies:
-            self._dependents.get(path, set()).discard(board)
-        known.dependencies = wanted
-        for path in known.dependencies:
-            self._dependents.setdefault(path, set()).add(board)
-
-    def paths(self) -> tuple[str, ...]:
-        """All files that any board depends on. The same as long as `changes` is."""
-        return tuple(path for path, boards in self._dependents.items() if boards)
+        if known.seen.keys() != seen.keys():
+            for path in known.seen:
+                self._dependents.get(path, set()).discard(board)
+            for path in (board, *seen):
+                self._dependents.setdefault(path, set()).add(board)
+        known.seen = {board: None, **seen}
 
     def dependents(self, path: str) -> tuple[str, ...]:
         """The boards that depend on a file."""
@@ -78,11 +70,15 @@ class Registry:
     def signature(self, board: str) -> Signature:
         """Changes whenever one of the board's files does."""
         known = self._boards.get(board)
-        return signature(known.dependencies if known else (board,))
+        return signature(known.seen if known else (board,))
 
-    def lost_some(self, board: str, now: Signature) -> bool:
-        """Whether a file that was there when the board was last looked at is missing now."""
-        known = self._boards.get(board)
-        if known is None or len(known.seen) != len(now):
-            return False
-        return any(old is not None and new is None for old, new in zip(known.seen, now, strict=True))
+    def changed(self, board: str, look: Callable[[str], Stamp], only: Callable[[str], bool]) -> Hint | None:
+        """Whether files of the board that `only` picks look other than when last read, and how: if one is missing
+        it is `removed`, for it may be on its way. Only a board that was read once can have changed."""
+        known = self._boards[board]
+        found: Hint | None = None
+        for path, old in known.seen.items():
+            now = look(path) if only(path) else old
+            if now != old:
+                found = "removed" if now is None else found or "found"
+        return found

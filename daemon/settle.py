@@ -79,6 +79,9 @@ class Settler:
         """The board was read whole; whatever happens next is another save."""
         self._pending.pop(board, None)
 
+    def __contains__(self, board: str) -> bool:
+        return board in self._pending
+
     def boards(self) -> tuple[str, ...]:
         """The boards on which something is going on."""
         return tuple(self._pending)

@@ -10,6 +10,7 @@ import queue
 import time
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass
+from functools import lru_cache
 from pathlib import Path
 
 from reactance.analysis.files import BoardFiles
@@ -17,7 +18,7 @@ from reactance.daemon.analyst import Analyst, Job
 from reactance.daemon.history import History
 from reactance.daemon.intake import Intake
 from reactance.daemon.outcome import Outcome, Timings
-from reactance.daemon.reading import Signature, is_export, read_board, signature
+from reactance.daemon.reading import Signature, Stamp, is_export, read_board, signature, stamp
 from reactance.daemon.registry import Registry
 from reactance.daemon.settle import Hint, Settler
 from reactance.daemon.sources import Source
@@ -41,31 +42,6 @@ class _Event:
 class _Done:
     job: Job
     outcome: Outcome
-
-
-class _Aside:
-    """Files that boards depend on and of which no watched folder brings word, each with how it last looked."""
-
-    def __init__(self, registry: Registry, roots: tuple[Root, ...]) -> None:
-        self._registry = registry
-        self._roots = roots
-        self._changes = -1
-        self._stamps: dict[str, Signature] = {}
-
-    def stamps(self) -> dict[str, Signature]:
-        """The files as they were when last seen."""
-        if self._registry.changes != self._changes:
-            self._changes = self._registry.changes
-            paths = [path for path in self._registry.paths() if not self._is_heard_of(Path(path))]
-            self._stamps = {path: self._stamps.get(path) or signature((path,)) for path in paths}
-        return dict(self._stamps)
-
-    def seen(self, path: str, stamp: Signature) -> None:
-        """The file looks like this now."""
-        self._stamps[path] = stamp
-
-    def _is_heard_of(self, path: Path) -> bool:
-        return any(root.hears_of(path) for root in self._roots)
 
 
 class _Lost:
@@ -103,9 +79,8 @@ class Watcher:
         self._registry = Registry()
         self._settler = Settler(lambda board: Path(board).exists(), self._registry.signature)
         self._analyst = Analyst(intake, lambda job, outcome: self._inbox.put(_Done(job, outcome)))
-        self._aside = _Aside(self._registry, self._roots)
         self._refused: dict[str, tuple[BoardFiles, str]] = {}
-        self._no_exports: dict[str, Signature] = {}
+        self._no_exports: dict[str, Stamp] = {}
         self._polled: tuple[Root, ...] = ()
         self._next_poll = self._next_aside = self._next_rescan = 0.0
         self._folders: dict[Root, object] = {}
@@ -215,12 +190,15 @@ class Watcher:
 
     def _look_aside(self, source: Source) -> None:
         """Looks at what known boards depend on outside the watched folders, and whether those are the same ones."""
-        for path, old in self._aside.stamps().items():
-            now = signature((path,))
-            if now != old:
-                self._aside.seen(path, now)
-                for board in self._registry.dependents(path):
-                    self._note(board, "removed" if now == (None,) else "found")
+        looks: dict[str, Stamp] = {}  # boards share such files: each is looked at once
+
+        def look(path: str) -> Stamp:
+            if path not in looks:
+                looks[path] = stamp(path)
+            return looks[path]
+
+        for board in self._registry.names():
+            self._check(board, look, self._is_aside)
         for root in self._roots if self._polling is None else ():
             identity = _identity(root.folder)
             if identity is not None and identity != self._folders.get(root):
@@ -229,14 +207,20 @@ class Watcher:
                     self._search((root,))
                 self._folders[root] = identity
 
-    def _check(self, board: str) -> None:
+    @lru_cache(maxsize=65536)  # noqa: B019 - a watcher lives as long as its process
+    def _is_aside(self, path: str) -> bool:
+        return not any(root.hears_of(Path(path)) for root in self._roots)
+
+    def _check(
+        self, board: str, look: Callable[[str], Stamp] = stamp, only: Callable[[str], bool] = lambda path: True
+    ) -> None:
+        """Has a board read again whose files look other than when it was read, unless that is under way."""
         known = self._registry.get(board)
-        if known is None or not known.seen:
+        if known is None or board in self._settler or (known.gone and not Path(board).exists()):
             return
-        now = self._registry.signature(board)
-        if now != known.seen and not (known.gone and not Path(board).exists()):
-            self._note(board, "removed" if self._registry.lost_some(board, now) else "found")
-            known.seen = now
+        hint = self._registry.changed(board, look, only)
+        if hint is not None:
+            self._note(board, hint)
 
     def _search(self, roots: Iterable[Root], folder: Path | None = None) -> None:
         """Looks through roots (or through one folder of theirs) for exports that are new or have changed."""
@@ -247,7 +231,7 @@ class Watcher:
                 board = str(path)
                 if board in self._registry:
                     self._check(board)
-                elif self._no_exports.get(board) != signature((board,)):
+                elif board not in self._settler and self._no_exports.get(board) != stamp(board):
                     self._note(board, "found")
         for board in self._registry.names():
             self._check(board)
@@ -256,46 +240,43 @@ class Watcher:
 
     def _read(self, board: str) -> None:
         if not self._is_board(board):
-            self._no_exports[board] = signature((board,))
+            self._no_exports[board] = stamp(board)
             self._settler.settled(board)
             return
         known = self._registry.know(board)
         started, clock = time.time(), time.perf_counter()
-        before = self._registry.signature(board)
         reading = read_board(Path(board))
-        if self._registry.signature(board) != before:
-            self._settler.note(board, "written", time.monotonic())
+        if signature(reading.seen) != tuple(reading.seen.values()):
+            self._settler.note(board, "written", time.monotonic())  # while it was being read
             return
         changed = self._settler.changed(board, time.monotonic())
-        self._registry.depend(board, reading.dependencies)
-        known.seen = self._registry.signature(board)
+        self._registry.saw(board, reading.seen)
+        seen = self._registry.signature(board)
         took = time.perf_counter() - clock
         if reading.files is None:
             self._refused.pop(board, None)
             known.sha256 = None
-            self._settler.broken(board, known.seen, str(reading.error), changed)
+            self._settler.broken(board, seen, str(reading.error), changed)
             return
         if reading.files.sha256 == known.sha256:
-            self._same_again(board, changed)
+            self._same_again(board, seen, changed)
             return
         self._settler.settled(board)
         self._refused.pop(board, None)
         known.sha256, known.gone = reading.files.sha256, False
         timings = _so_far(reading.saved, started, time.monotonic() - took - changed, took)
-        self._analyst.submit(
-            Job("take", board, reading.saved, started, reading.files, "", known.seen, changed, timings)
-        )
+        self._analyst.submit(Job("take", board, reading.saved, started, reading.files, "", seen, changed, timings))
 
     def _is_board(self, board: str) -> bool:
         if board in self._registry or any(board in root.files for root in self._roots):
             return True
         return is_export(Path(board))
 
-    def _same_again(self, board: str, changed: float) -> None:
+    def _same_again(self, board: str, seen: Signature, changed: float) -> None:
         known = self._registry.know(board)
         refused = self._refused.get(board)
         if refused is not None:  # and still waiting to be called broken
-            self._settler.broken(board, known.seen, refused[1], changed)
+            self._settler.broken(board, seen, refused[1], changed)
             return
         self._settler.settled(board)
         if known.gone:
@@ -311,7 +292,7 @@ class Watcher:
 
     def _refuse(self, board: str, message: str) -> None:
         known = self._registry.know(board)
-        saved = max((_modified(path) for path in known.dependencies), default=0.0)
+        saved = max((_modified(path) for path in known.seen), default=0.0)
         files, _ = self._refused.pop(board, (None, ""))
         self._analyst.submit(Job("refuse", board, saved, time.time(), files, message))
 
@@ -325,7 +306,7 @@ class Watcher:
                 self._settler.broken(job.board, job.signature, outcome.message, job.changed)
             return
         if outcome.kind == "not stored" and known is not None:
-            known.sha256, known.seen = None, ()
+            known.sha256, known.seen = None, dict.fromkeys(known.seen)  # so that it is tried again
         self._tell(outcome)
         self._arrived(job.board)
 

@@ -48,7 +48,7 @@ to = "ADC"
 corner = "1.6 kHz"
 tolerance = "10 %"
 """
-PATIENCE = 30.0
+PATIENCE = 15.0
 
 
 def small_export(resistance: str = "10k") -> bytes:
