@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 from reactance.analysis.parts.base import Kind, Stated
@@ -150,7 +150,7 @@ NOT_FITTED = (
 
 # Words that say so in place of a value or beside it.
 NOT_FITTED_WORDS = frozenset(
-    "".join(ch for ch in name if ch.isalnum()) for name in (*NOT_FITTED, "unpopulated", "not populated", "open")
+    "".join(filter(str.isalnum, name)) for name in (*NOT_FITTED, "unpopulated", "not populated", "open")
 )
 
 TRUE_WORDS = frozenset(("true", "yes", "y", "1", "x", "t", "on", "fitted", "populated", "mounted", "pol"))
@@ -159,43 +159,68 @@ FALSE_WORDS = frozenset(("false", "no", "n", "0", "f", "off", "none", "nonpolar"
 
 def folded(name: str) -> str:
     """A raw name without case, spaces and marks: `Part Number`, `PART_NUMBER` and `part-number` are one."""
-    return "".join(ch for ch in name.casefold() if ch.isalnum())
+    return "".join(filter(str.isalnum, name.casefold()))
+
+
+def _meanings() -> dict[str, tuple[tuple[int, str], ...]]:
+    """Folded raw name -> what it can stand for, each with its rank among the names for that."""
+    table: dict[str, tuple[tuple[int, str], ...]] = {}
+    for canonical, names in ALIASES.items():
+        for rank, name in enumerate(names):
+            table[folded(name)] = (*table.get(folded(name), ()), (rank, canonical))
+    return table
+
+
+_MEANINGS = _meanings()
+_FOLDED_VALUE: dict[Kind, tuple[str, ...]] = {kind: tuple(map(folded, names)) for kind, names in VALUE_BY_KIND.items()}
+_FOLDED_NOT_FITTED = tuple(map(folded, NOT_FITTED))
 
 
 @dataclass(frozen=True, slots=True)
 class RawAttributes:
-    """A part's attributes as the export has them, found by canonical name."""
+    """A part's attributes as the export has them, found by canonical name or by folded raw name."""
 
-    by_name: Mapping[str, tuple[str, str]]
-    extra: Mapping[str, tuple[str, ...]]
+    by_name: Mapping[str, Stated]
+    by_canonical: Mapping[str, tuple[Stated, ...]]
 
     @classmethod
     def of(cls, attributes: Mapping[str, str], extra: Mapping[str, tuple[str, ...]]) -> RawAttributes:
-        """Of an export's part, with the aliases that the brief adds."""
-        table: dict[str, tuple[str, str]] = {}
+        """Of an export's part, with the aliases that the brief adds going before the known ones."""
+        by_name: dict[str, Stated] = {}
         for name, text in attributes.items():
-            if text.strip():
-                table.setdefault(folded(name), (name, text.strip()))
-        return cls(table, extra)
+            plain = text.strip()
+            if plain:
+                by_name.setdefault(folded(name), Stated(plain, f"export {name}"))
+        ranked: dict[str, list[tuple[int, Stated]]] = {}
+        for canonical, names in extra.items():
+            for name in names:
+                if folded(name) in by_name:
+                    ranked.setdefault(canonical, []).append((-1, by_name[folded(name)]))
+        for name, stated in by_name.items():
+            for rank, canonical in _MEANINGS.get(name, ()):
+                ranked.setdefault(canonical, []).append((rank, stated))
+        by_rank = {canonical: sorted(found, key=_rank) for canonical, found in ranked.items()}
+        return cls(by_name, {canonical: tuple(stated for _, stated in found) for canonical, found in by_rank.items()})
 
-    def find(self, canonical: str, kind: Kind = "other") -> Iterator[Stated]:
+    def find(self, canonical: str, kind: Kind = "other") -> tuple[Stated, ...]:
         """Every text stated under a name of `canonical`, the most telling first."""
-        names = [*self.extra.get(canonical, ()), *ALIASES.get(canonical, (canonical,))]
-        if canonical == "value":
-            names += VALUE_BY_KIND[kind]
-        for name in names:
-            found = self.by_name.get(folded(name))
-            if found:
-                yield Stated(found[1], f"export {found[0]}")
+        found = self.by_canonical.get(canonical, ())
+        if canonical != "value":
+            return found
+        return (*found, *(self.by_name[name] for name in _FOLDED_VALUE[kind] if name in self.by_name))
 
     def not_fitted(self) -> Stated | None:
         """The attribute that says that the part is not fitted, if there is one."""
-        for name in NOT_FITTED:
-            found = self.by_name.get(folded(name))
-            if found and folded(found[1]) not in FALSE_WORDS:
-                return Stated(found[1], f"export {found[0]}")
+        for name in _FOLDED_NOT_FITTED:
+            found = self.by_name.get(name)
+            if found and folded(found.text) not in FALSE_WORDS:
+                return found
         for stated in self.find("fitted"):
             word = folded(stated.text)
             if word in FALSE_WORDS or word in NOT_FITTED_WORDS:
                 return stated
         return None
+
+
+def _rank(entry: tuple[int, Stated]) -> int:
+    return entry[0]

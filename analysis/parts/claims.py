@@ -5,11 +5,12 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass, field
 from fnmatch import fnmatchcase
+from functools import lru_cache
 from types import MappingProxyType
 from typing import TYPE_CHECKING, TypedDict, TypeVar
 
 from reactance.analysis.design import Part, Problem, Severity
-from reactance.analysis.parts.attributes import ALIASES, NOT_FITTED_WORDS, RawAttributes, folded
+from reactance.analysis.parts.attributes import NOT_FITTED_WORDS, RawAttributes, folded
 from reactance.analysis.parts.base import Assumption, Kind, Stated
 from reactance.analysis.parts.descriptions import parse_description
 from reactance.analysis.parts.values import parse_value
@@ -24,17 +25,8 @@ T = TypeVar("T")
 # A temperature coefficient's names also stand over dielectric codes.
 _LOOSE = frozenset(
     (
-        "temperaturecoefficient",
-        "tempcoeff",
-        "type",
-        "rating",
-        "material",
-        "characteristic",
-        "tc",
-        "tempco",
-        "size",
-        "comment",
-        "part",
+        *("type", "rating", "material", "characteristic", "tc", "tempco", "size", "comment", "part"),
+        *("temperaturecoefficient", "tempcoeff"),
     )
 )
 
@@ -120,7 +112,7 @@ def gather(part: Part, kind: Kind, knowledge: Knowledge) -> Claims:
         if matches(row, part.refdes, raw, kind):
             for attribute, value in row.attributes.items():
                 table.setdefault(attribute, []).append(Claim(toml_text(value), row.source, value))
-    for attribute in ALIASES:
+    for attribute in dict.fromkeys((*raw.by_canonical, "value")):
         for stated in raw.find(attribute, kind):
             table.setdefault(attribute, []).append(Claim(stated.text, stated.source))
     not_fitted = raw.not_fitted()
@@ -188,18 +180,19 @@ def _matches(pattern: str, text: str, name: str, kind: Kind) -> bool:
 
 def _same_value(one: str, other: str, kind: Kind) -> bool:
     """Whether two texts are one value in two spellings, such as `10uF` and `10 µF`."""
-    try:
-        a, b = parse_value(one, kind).value, _value_in(other, kind)
-    except QuantityError:
-        return False
-    return abs(a - b) <= 1e-9 * abs(a)
+    a, b = _value_in(one, kind), _value_in(other, kind)
+    return a is not None and b is not None and abs(a - b) <= 1e-9 * abs(a)
 
 
-def _value_in(text: str, kind: Kind) -> float:
-    try:
-        return parse_value(text, kind).value
-    except QuantityError:
-        return parse_value(parse_description(text, kind).get("value", ""), kind).value
+@lru_cache(maxsize=4096)  # each table's pattern meets every part, and most parts share their texts
+def _value_in(text: str, kind: Kind) -> float | None:
+    """The value that a text is or contains, or None."""
+    for piece in (text, parse_description(text, kind).get("value", "")):
+        try:
+            return parse_value(piece, kind).value
+        except QuantityError:
+            continue
+    return None
 
 
 def says_not_fitted(text: str) -> bool:

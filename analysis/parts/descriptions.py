@@ -8,6 +8,8 @@ from __future__ import annotations
 
 import re
 from collections.abc import Mapping
+from functools import lru_cache
+from types import MappingProxyType
 
 from reactance.analysis.parts.attributes import NOT_FITTED_WORDS, folded
 from reactance.analysis.parts.base import Kind
@@ -102,6 +104,7 @@ _LAND_PATTERN = re.compile(r"(?:CAPC|RESC|INDC|BEADC)\d{4}\w*", _KEEP)
 _VALUE_START = re.compile(r"\d|\.\d|R\d|[pnuµμ]\d")
 
 
+@lru_cache(maxsize=4096)  # a board states the same descriptions over and over
 def parse_description(text: str, kind: Kind) -> Mapping[str, str]:
     """The attributes that `text` contains, by canonical name, each as its piece of the text.
 
@@ -123,7 +126,7 @@ def parse_description(text: str, kind: Kind) -> Mapping[str, str]:
         token = piece.strip("'\"#").rstrip(".-").lstrip("-")
         if token:
             _sort_in(token, kind, found)
-    return found
+    return MappingProxyType(found)
 
 
 def _cut(text: str, attribute: str, pattern: re.Pattern[str], found: dict[str, str]) -> str:
