@@ -7,7 +7,7 @@ from collections.abc import Iterator
 
 from reactance.analysis.design import Design, InputError, Pin, Place
 from reactance.analysis.exports.collect import Collector, listed
-from reactance.analysis.exports.ipc356_names import NET_WIDTH, REFDES_WIDTH, full_names
+from reactance.analysis.exports.ipc356_names import REFDES_WIDTH, full_names
 from reactance.analysis.exports.limits import DEFAULT_LIMITS, Limits
 from reactance.analysis.exports.sniff import stem
 from reactance.analysis.exports.tables_parts import add_parts, note_missing_table, read_parts
@@ -20,6 +20,7 @@ _TEST_POINT = re.compile(r"3\d7")
 _OTHER_RECORD = re.compile(r"[\d ]\d\d")
 _ALIAS = re.compile(r"P\s*(NNAME\s*\d{1,9})\s+(\S.*)")
 _ALIAS_USED = re.compile(r"NNAME\s*\d{1,9}")
+_NET_WIDTH = 14
 _LONGEST = 10_000  # no record is longer; keeps a file that is one line from being copied many times
 
 
@@ -133,7 +134,7 @@ class _Records:
             self._collector.problem("note", Place(self._collector.file), message + listed(full))
 
     def _full_nets(self) -> Iterator[str]:
-        return (name for name in self._collector.net_names() if len(name) == NET_WIDTH)
+        return (name for name in self._collector.net_names() if len(name) == _NET_WIDTH)
 
     def _problem(self, number: int, column: int, message: str) -> None:
         place = Place(self._collector.file, number, column)

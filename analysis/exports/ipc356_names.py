@@ -6,10 +6,9 @@ import re
 from collections.abc import Iterable
 
 REFDES_WIDTH = 6
-NET_WIDTH = 14
 
 _NUMBERED = re.compile(r"(?P<base>.{2,}?)(?P<number>_\d{1,3})")
-_REPLACED = re.compile(r"[^0-9a-z+-]")
+_REPLACED = re.compile(r"[^0-9a-z]")
 
 
 def full_names(short: Iterable[str], full: Iterable[str], width: int) -> dict[str, str]:

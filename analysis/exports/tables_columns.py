@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import csv
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from types import MappingProxyType
 from typing import Literal, NamedTuple
 
@@ -79,7 +79,7 @@ def columns_of(cells: Iterable[str], wanted: Iterable[Column]) -> dict[Column, i
     return found
 
 
-def find_pins_header(lines: Iterable[str]) -> Header | None:
+def find_pins_header(lines: Sequence[str]) -> Header | None:
     """The header of a pins table: a line with columns for refdes, pin and net."""
     for number, delimiter, cells in _candidates(lines):
         columns = columns_of(cells, COLUMNS)
@@ -90,13 +90,16 @@ def find_pins_header(lines: Iterable[str]) -> Header | None:
     return None
 
 
-def find_parts_header(lines: Iterable[str]) -> Header | None:
-    """The header of a parts table: a line with a column for refdes and at least one more."""
+def find_parts_header(lines: Sequence[str]) -> Header | None:
+    """The header of a parts table: a line with a column for refdes and at least one more, else that column alone."""
     for number, delimiter, cells in _candidates(lines):
         columns = columns_of(cells, ("refdes",))
         if columns and sum(map(bool, cells)) > 1:
             return Header(number, delimiter, cells, columns)
-    return None
+    number, first = next(((number, line) for number, line in enumerate(lines, 1) if line.strip()), (1, ""))
+    alone = (visible(first).strip().strip('"'),)
+    columns = columns_of(alone, ("refdes",))
+    return Header(number, ",", alone, columns) if columns else None
 
 
 def has_pins_header(head: str) -> bool:
@@ -104,7 +107,7 @@ def has_pins_header(head: str) -> bool:
     return find_pins_header(head.replace("\r", "\n").split("\n")) is not None
 
 
-def _candidates(lines: Iterable[str]) -> Iterator[tuple[int, str, tuple[str, ...]]]:
+def _candidates(lines: Sequence[str]) -> Iterator[tuple[int, str, tuple[str, ...]]]:
     met = 0
     for number, line in enumerate(lines, 1):
         if not line.strip():
