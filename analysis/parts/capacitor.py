@@ -91,6 +91,8 @@ class CapacitorModel(Model):
         lines.append(f"R_s {format_quantity(self.esr, 'ohm')}, L_s {format_quantity(self.esl, 'H')} with mounting")
         if self.loss_tangent:
             lines.append(f"tan δ {self.loss_tangent:g}")
+        if self.measured is not None:
+            lines.append(self.measured.describe())
         if math.isfinite(self.leakage_resistance):
             lines.append(f"leakage {format_quantity(self.leakage_resistance, 'ohm')}")
         return tuple(lines)

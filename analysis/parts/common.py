@@ -72,23 +72,28 @@ def _value(claims: Claims, fitted: bool, text: str) -> Value | None:
     """The first value that is understood, with a caution where another one contradicts it."""
     read = reading.value(claims.kind)
     understood: list[tuple[Claim, Value]] = []
-    refused: list[str] = []
+    refused: list[tuple[Claim, str]] = []
     for claim in claims.of("value"):
         try:
             understood.append((claim, read(claim)))
         except QuantityError as problem:
-            refused.append(f"value in {claim.source} is not understood: {problem}")
+            refused.append((claim, str(problem)))
     if not understood:
         if fitted:
-            message = refused[0] if refused else "no value is stated"
-            claims.tell("caution", message)
+            claims.tell("caution", _not_understood(*refused[0]) if refused else "no value is stated")
         return None
     claim, value = understood[0]
     claims.stated["value"] = Stated(claim.text, claim.source)
+    if refused and refused[0][0].source != claim.source and not says_not_fitted(refused[0][0].text):
+        claims.tell("note", f"{_not_understood(*refused[0])}; {claim.text} in {claim.source} is used")
     if value.remark:
         claims.tell("note", value.remark)
     _compare(claims, understood)
     return value
+
+
+def _not_understood(claim: Claim, problem: str) -> str:
+    return f"value in {claim.source} is not understood: {problem}"
 
 
 def _compare(claims: Claims, understood: list[tuple[Claim, Value]]) -> None:

@@ -14,6 +14,7 @@ from reactance.analysis.parts.claims import Claims
 from reactance.analysis.quantity import QuantityError, format_quantity
 
 if TYPE_CHECKING:
+    from reactance.analysis.circuit.network import Element
     from reactance.analysis.parts.passive_fit import PassiveFit
     from scipy.interpolate import PchipInterpolator
 
@@ -70,6 +71,22 @@ class MeasuredPart:
         """A passive network with the measured impedance, for time work; raises QuantityError if none is close."""
         return self._fit
 
+    def fit_elements(self, name: str, a: str, b: str) -> tuple[Element, ...] | None:
+        """The fit as elements of a network between nodes `a` and `b`, or None where there is no close fit."""
+        try:
+            return self._fit.elements(name, a, b)
+        except QuantityError:
+            return None
+
+    def describe(self) -> str:
+        """The data's range, and how well it is followed in time work."""
+        low, high = format_quantity(self.low, "Hz"), format_quantity(self.high, "Hz")
+        try:
+            fit = self._fit.describe()
+        except QuantityError as problem:
+            fit = f"none, {problem}"
+        return f"measured, {self.file}, {low} to {high}; in time work: {fit}"
+
     @cached_property
     def _fit(self) -> PassiveFit:
         from reactance.analysis.parts.passive_fit import fit_passive  # not on the path of a cold start
@@ -108,6 +125,10 @@ def read_measured(claims: Claims, files: Mapping[str, bytes]) -> MeasuredPart | 
         claims.tell("error", f"touchstone in {claim.source}: {problem}; the measurement is not used")
         return None
     claims.stated["touchstone"] = Stated(claim.text, claim.source)
+    try:
+        measured.fit()
+    except QuantityError as problem:
+        claims.tell("caution", f"touchstone in {claim.source}: {problem}; it serves over frequency only")
     return measured
 
 

@@ -11,9 +11,11 @@ enforced on the result; what such a network cannot follow is refused with the er
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+from reactance.analysis.circuit.network import Bead, Capacitor, Element, Inductor, Resistor
 from reactance.analysis.quantity import QuantityError, format_quantity
 
 POLES_PER_DECADE = 3
@@ -49,6 +51,24 @@ class PassiveFit:
         for r, capacitance in self.rc:
             z = z + 1.0 / (1.0 / r + s * capacitance)
         return np.asarray(z, dtype=complex)
+
+    def elements(self, name: str, a: str, b: str) -> tuple[Element, ...]:
+        """The network as elements between nodes `a` and `b`, with nodes of its own between its branches."""
+        nodes = [a, *(f"{name} inner {n}" for n in range(1, len(self.rl) + len(self.rc) + 1)), b]
+        ends = list(pairwise(nodes))
+        first: Element
+        if np.isfinite(self.capacitance):
+            first = Capacitor(f"{name} C", *ends[0], self.capacitance, self.resistance, self.inductance)
+        elif self.inductance:
+            first = Inductor(f"{name} L", *ends[0], self.inductance, self.resistance)
+        else:
+            first = Resistor(f"{name} R", *ends[0], self.resistance)
+        made: list[Element] = [first]
+        for n, (r, inductance) in enumerate(self.rl, 1):
+            made.append(Bead(f"{name} RL {n}", *ends[n], 0.0, r, inductance))
+        for n, (r, c) in enumerate(self.rc, len(self.rl) + 1):
+            made.append(Capacitor(f"{name} RC {n}", *ends[n], c, leakage=r))
+        return tuple(made)
 
     def describe(self) -> str:
         """The fit and its error in words."""

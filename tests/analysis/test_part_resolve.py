@@ -156,6 +156,7 @@ def test_the_next_text_is_used_where_the_first_is_not_understood_and_that_is_tol
     model = resolve(part("C1", VALUE="see note", COMMENT="100n", TOL="about ten"))
     assert model.value == 1e-7
     assert any("about ten" in p.message and "TOL" in p.message for p in model.problems)
+    assert any("see note" in p.message and "export COMMENT is used" in p.message for p in model.problems)
 
 
 @pytest.mark.parametrize("name", [*NOT_FITTED, "DO_NOT_FIT", "Do Not Populate"])

@@ -10,6 +10,7 @@ import pytest
 import scipy.signal
 import skrf
 from numpy.typing import NDArray
+from reactance.analysis.circuit.network import Bead, Capacitor
 from reactance.analysis.design import Part, Pin, Place
 from reactance.analysis.parts.knowledge import Connection, Knowledge, KnowledgeRow
 from reactance.analysis.parts.measured import MeasuredPart
@@ -124,6 +125,25 @@ def test_what_is_no_passive_part_is_refused_with_the_reason() -> None:
         MeasuredPart("line.s1p", tuple(F.tolist()), tuple(line.tolist())).fit()
 
 
+def test_the_elements_of_a_fit_are_its_network() -> None:
+    """Each element's impedance by its own definition, added up along the chain of nodes."""
+    fit = MeasuredPart("part.s2p", tuple(F.tolist()), tuple(lossy(F).tolist())).fit()
+    elements = fit.elements("C1", "A", "B")
+    assert len(fit.rl) + len(fit.rc) == len(elements) - 1 > 0
+    node, total = "A", np.zeros(len(F), dtype=complex)
+    jw = 2j * np.pi * F
+    for element in elements:
+        if isinstance(element, Capacitor):
+            total += element.esr + jw * element.esl + 1 / (1 / element.leakage + jw * element.capacitance)
+        else:
+            assert isinstance(element, Bead)
+            total += element.dcr + 1 / (1 / element.resistance + 1 / (jw * element.inductance))
+        assert element.a == node
+        node = element.b
+    assert node == "B"
+    assert np.max(np.abs(total / fit.impedance(F) - 1)) < 1e-12
+
+
 def resolved(row: dict[str, object], files: dict[str, bytes]) -> CapacitorModel:
     rows = (KnowledgeRow({"refdes": "C*"}, row, Place("parts.toml"), "parts.toml [[part]] 1"),)
     knowledge = Knowledge(rows=rows, files=MappingProxyType(files))
@@ -140,6 +160,10 @@ def test_a_part_is_measured_by_its_table(tmp_path: Path) -> None:
         assert model.measured is not None
         assert abs(model.measured.impedance(1e6) / rlc(np.array([1e6]))[0] - 1) < 1e-3
         assert model.stated["touchstone"].source == "parts.toml [[part]] 1"
+        assert any("c.s2p, 1 kHz to 1 GHz" in line and "rms" in line for line in model.explain(0.0))
+        elements = model.measured.fit_elements("C1", "A", "B")
+        assert elements is not None
+        assert [type(element) for element in elements] == [Capacitor]
 
 
 @pytest.mark.parametrize(
@@ -150,9 +174,18 @@ def test_a_part_is_measured_by_its_table(tmp_path: Path) -> None:
         ("c.s1p", "shunt", b"# Hz S RI R 50\n1e6 0.5 0\n2e6 0.5 0\n", "1 ports"),
         ("d.s2p", "shunt", b"", "d.s2p is not there"),
         ("c.s1p", "one-port", b"# Hz S RI R 50\n1e6 0.5 0\n", "two usable points"),
+        ("c.s1p", "one-port", b"# Hz S RI R 50\n1e6 0.5 nan\n2e6 x 0\n", "c.s1p"),
     ],
 )
 def test_an_unusable_file_is_a_problem(file: str, connection: str, content: bytes, message: str) -> None:
     model = resolved({"touchstone": {"file": file, "connection": connection}}, {file.replace("d.", "x."): content})
     assert model.measured is None
     assert any(message in problem.message and problem.severity == "error" for problem in model.problems)
+
+
+def test_data_that_has_no_fit_serves_over_frequency_only() -> None:
+    content = b"# Hz S RI R 50\n" + b"".join(b"%de6 -3 0\n" % n for n in range(1, 9))
+    model = resolved({"touchstone": {"file": "c.s1p", "connection": "one-port"}}, {"c.s1p": content})
+    assert model.measured is not None
+    assert model.measured.fit_elements("C1", "A", "B") is None
+    assert any("over frequency only" in problem.message for problem in model.problems)
