@@ -191,7 +191,6 @@ def _losses(claims: Claims, common: Common, nature: _Nature) -> tuple[float, flo
         loss = defaults.LOSS_TANGENT[technology]
     if loss:
         claims.assume("loss_tangent", f"{loss:g}", f"usual for {technology} (common practice, from memory)")
-        claims.assume("loss in time response", "R_s alone", "dielectric loss only damps: leaving it out is safe")
     return esr, loss
 
 
