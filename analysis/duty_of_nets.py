@@ -38,7 +38,7 @@ def in_briefed_path(capacitor: Branch, view: View) -> Found | None:
         for path in table.get(capacitor.a, ()) + table.get(capacitor.b, ()):
             where = f"{path.kind} {path.name!r} of the brief, from {path.from_net} to {path.to_net}"
             if path.kind == "coupling" and _passes(capacitor, path, view):
-                return Found("coupling", f"in series in the {where}", f"coupling:{path.name}")
+                return Found("coupling", f"in series in the {where}{_with(capacitor, view)}", f"coupling:{path.name}")
             if path.kind == "filter" and _shapes(capacitor, path, view):
                 return Found("filter", f"in the {where}{_with(capacitor, view)}", f"filter:{path.name}")
     return None

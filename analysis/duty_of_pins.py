@@ -22,7 +22,13 @@ def converter_pins(capacitor: Branch, view: View) -> Found | None:
 
 
 def feedback(capacitor: Branch, view: View) -> Found | None:
-    return _around_amplifier(capacitor, view) or _around_part(capacitor, view) or _feed_forward(capacitor, view)
+    return (
+        _around_amplifier(capacitor, view)
+        or _around_part(capacitor, view)
+        or _into_own_input(capacitor, view)
+        or _gain_leg(capacitor, view)
+        or _feed_forward(capacitor, view)
+    )
 
 
 def _around_amplifier(capacitor: Branch, view: View) -> Found | None:
@@ -61,9 +67,53 @@ def _around_part(capacitor: Branch, view: View) -> Found | None:
         if beside and ends in ({"driver", "receiver"}, {"part"}, {"driver", "part"}):
             with_it = f"with {beside[0].refdes} in parallel"
             return Found("feedback", f"from {one.label} to {other.label}, {with_it}")
-        if ends == {"driver", "receiver"} and inverting and _has_one_output(one, topology):
+        own = _has_one_output(one, topology) or "" != pin_roles.channel(one) == pin_roles.channel(other)
+        if ends == {"driver", "receiver"} and inverting and own:
             return Found("feedback", f"from output to inverting input: {one.label}, {other.label}")
     return None
+
+
+def _gain_leg(capacitor: Branch, view: View) -> Found | None:
+    """In series with a resistor, in either order, from an inverting input to ground or a rail."""
+    topology = view.topology
+    for middle, far in ((capacitor.a, capacitor.b), (capacitor.b, capacitor.a)):
+        others = [branch for branch in topology.on(middle) if branch is not capacitor]
+        if topology.is_fixed(middle) or topology.pins(middle) or [b.kind for b in others] != ["resistor"]:
+            continue
+        onward = others[0].other(middle)
+        for inverting, end in ((onward, far), (far, onward)):
+            if topology.is_fixed(end) and _is_inverting_input(inverting, topology):
+                with_it = f"with {others[0].refdes} from the inverting input {inverting} to {end}"
+                return Found("feedback", f"{with_it}: it sets the gain at low frequencies")
+    return None
+
+
+def _is_inverting_input(net: str, topology: Topology) -> bool:
+    if topology.is_fixed(net):
+        return False
+    described = any(net == minus for _, minus, _ in topology.amplifiers_by_net.get(net, ()))
+    return described or any(pin.prefix == "U" and pin_roles.is_inverting(pin) for pin in topology.pins(net))
+
+
+def _into_own_input(capacitor: Branch, view: View) -> Found | None:
+    """From an output over a resistor to an input of the same amplifier, as in an active filter with one amplifier."""
+    topology = view.topology
+    for near, far in ((capacitor.a, capacitor.b), (capacitor.b, capacitor.a)):
+        outputs = [pin for pin in topology.pins(near) if pin.prefix == "U" and pin_roles.role(pin) == "driver"]
+        for branch in topology.series(far) if outputs and not topology.is_fixed(near) else ():
+            for pin in topology.pins(branch.other(far)):
+                for output in outputs:
+                    if branch.other(far) != near and _is_input_of(pin, output, topology):
+                        over = f"over {branch.refdes} to {pin.label}"
+                        return Found("feedback", f"from {output.label} {over}, an input of the same amplifier")
+    return None
+
+
+def _is_input_of(pin: Terminal, output: Terminal, topology: Topology) -> bool:
+    if pin.refdes != output.refdes or pin_roles.role(pin) != "receiver":
+        return False
+    channels = pin_roles.channel(pin), pin_roles.channel(output)
+    return channels[0] == channels[1] and (bool(channels[0]) or _has_one_output(output, topology))
 
 
 def _has_one_output(terminal: Terminal, topology: Topology) -> bool:

@@ -23,8 +23,8 @@ def what_holds(topology: Topology, net: str) -> str:
     if holding:
         return listing(f"{branch.refdes} to {branch.other(net)}" for branch in holding)
     amplifiers = topology.amplifiers_by_net.get(net, ())
-    if any(out == net for _, _, out in amplifiers):
-        return "an amplifier's output"
+    if amplifiers:
+        return f"an amplifier's {'output' if any(out == net for _, _, out in amplifiers) else 'input'}"
     onward = topology.series(net)
     if onward:
         return listing(f"{branch.refdes} from {branch.other(net)}" for branch in onward)

@@ -6,8 +6,9 @@ import re
 from collections.abc import Iterable, Mapping, Sequence
 
 from reactance.analysis.movements import split_id
+from reactance.analysis.parts.attributes import ALIASES, folded
 from reactance.analysis.quantity import QuantityError, format_quantity, parse_quantity
-from reactance.analysis.report import Check, Edit, Limit, Movement, Report
+from reactance.analysis.report import Check, Duty, Edit, Limit, Movement, Report
 
 _PERCENT = frozenset({"stress", "tilt", "overshoot"})
 _NAMES: Mapping[str, str] = {
@@ -22,7 +23,9 @@ _NAMES: Mapping[str, str] = {
     "bypass": "capacitors per supply pin",
 }
 _UNIT_BY_KIND: Mapping[str, str] = {"capacitor": "F", "resistor": "ohm", "inductor": "H"}
-_VALUE_NAMES = frozenset({"value", "val", "part_value", "comment"})
+_VALUE_NAMES = frozenset(map(folded, ALIASES["value"]))
+# What is only said of a part; it goes along with a change of the part itself.
+_ONLY_SAID = frozenset(folded(name) for said in ("description", "number") for name in ALIASES[said])
 _MOST_EDITS = 3
 _WORD = re.compile(r"[\w/+.-]+")
 
@@ -100,11 +103,22 @@ def _edits_behind(
         by_id = {edit.id: edit for edit in edits}
         ranked = sorted(movement.causes, key=lambda cause: -abs(cause.share))
         return [by_id[cause.edit] for cause in ranked if cause.edit in by_id]
-    effective = [edit for edit in edits if edit.kind != "part renumbered"]
+    effective = _telling(edits)
     if len(effective) == 1:
         return effective
     parts, nets = _surroundings(check, [report for report in (older, newer) if report])
     return [edit for edit in effective if _touches(edit, check, parts, nets)]
+
+
+def _telling(edits: Sequence[Edit]) -> list[Edit]:
+    """Without renumberings, and without order numbers and descriptions that go along with a part's other edits."""
+    said = [edit.kind == "attribute changed" and folded(edit.attribute or "") in _ONLY_SAID for edit in edits]
+    otherwise = {edit.part for edit, only in zip(edits, said, strict=True) if not only and edit.part is not None}
+    return [
+        edit
+        for edit, only in zip(edits, said, strict=True)
+        if edit.kind != "part renumbered" and not (only and edit.part in otherwise)
+    ]
 
 
 def _surroundings(check: Check, reports: Iterable[Report]) -> tuple[set[str], set[str]]:
@@ -112,16 +126,23 @@ def _surroundings(check: Check, reports: Iterable[Report]) -> tuple[set[str], se
     scope, anchor, _ = split_id(check)
     parts = {anchor} if scope == "part" else set()
     nets = set() if scope == "part" else set(anchor.split(">"))
-    for report in reports:
-        for duty in report.duties:
-            about = duty.id == f"{scope}:{anchor}" or (scope in ("rail", "net") and anchor in duty.nets)
-            if about or (">" in anchor and nets <= set(duty.nets)):
-                parts.update(duty.parts)
-                parts.update(_WORD.findall(duty.because))
-                if scope in ("coupling", "filter"):
-                    nets.update(duty.nets)
-    fixed = {net.name for report in reports for net in report.nets if net.kind != "signal"}
-    return parts, nets - fixed if scope in ("coupling", "filter") else nets
+    for duty in (duty for report in reports for duty in report.duties if _is_about(duty, scope, anchor, nets)):
+        parts.update(_WORD.findall(duty.because))
+        if scope != "part" or duty.kind != "decoupling":
+            parts.update(duty.parts)
+        if scope in ("coupling", "filter"):
+            nets.update(duty.nets)
+    if scope in ("coupling", "filter"):
+        nets -= {net.name for report in reports for net in report.nets if net.kind != "signal"}
+    return parts, nets
+
+
+def _is_about(duty: Duty, scope: str, anchor: str, nets: set[str]) -> bool:
+    if scope == "part":
+        return anchor in duty.parts
+    if scope in ("rail", "net"):
+        return anchor in duty.nets
+    return duty.id == f"{scope}:{anchor}" or (">" in anchor and nets <= set(duty.nets))
 
 
 def _touches(edit: Edit, check: Check, parts: set[str], nets: set[str]) -> bool:
@@ -144,7 +165,7 @@ def edit_words(edit: Edit, older: Report | None, newer: Report | None) -> str:
         return f"{part} {name}: {edit.before or 'open'} → {edit.after or 'open'}"
     if edit.kind == "brief changed":
         return f"brief{f', {name},' if name else ''} {_change(edit.before, edit.after)}"
-    if edit.kind == "attribute changed" and name.casefold() not in _VALUE_NAMES:
+    if edit.kind == "attribute changed" and folded(name) not in _VALUE_NAMES:
         return f"{part} {name} {_change(edit.before, edit.after)}".strip()
     before, after = _as_value(part, edit.before, older), _as_value(part, edit.after, newer)
     if edit.kind == "attribute changed":

@@ -37,6 +37,7 @@ _RECEIVER_NAME = re.compile(
     r"[+-]|[AVL]?IN|[AVL]?IN[A-D]?[PNM+-]|[+-]IN[A-D]?|[PNM]?IN[PNM]?|INPUT|[A-D]IN[PNM+-]?|[1-8]IN[+-]|INV|NINV|NONINV|MICIN|ADC|RFIN|IN[A-D]"
 )
 _INVERTING_NAME = re.compile(r"-|IN[A-D]?-|-IN[A-D]?|INV|IN[NM]|IN[A-D]?[NM]|NIN|[1-8]IN-|[A-D]IN-")
+_CHANNEL = re.compile(r"[+-]?(?P<before>[A-D1-8])?[+-]?(?:V?IN|V?OUT)[+-]?(?P<after>[A-D1-8])?[PNM+-]?")
 _CONTROL = {"B", "BASE", "G", "GATE"}
 _CONTROLLED = {"C", "COLLECTOR", "D", "DRAIN"}
 
@@ -104,7 +105,19 @@ def is_flying(terminal: Terminal) -> bool:
 
 def is_inverting(terminal: Terminal) -> bool:
     """Whether the pin is named as an inverting input."""
-    return any(_INVERTING_NAME.fullmatch(text) for text in (plain(terminal.name), stem(terminal.name)))
+    return any(_INVERTING_NAME.fullmatch(text) for text in _spellings(terminal))
+
+
+def channel(terminal: Terminal) -> str:
+    """The amplifier of several in one package that a pin belongs to: `A` of OUTA, `2` of IN2+; empty if not told."""
+    found = _CHANNEL.fullmatch(plain(terminal.name).replace("_", ""))
+    return (found["after"] or found["before"] or "") if found else ""
+
+
+def _spellings(terminal: Terminal) -> tuple[str, ...]:
+    """The name without underscores, as it is and without a number at its end."""
+    text = plain(terminal.name).replace("_", "")
+    return text, text.rstrip("0123456789") or text
 
 
 def is_supply(terminal: Terminal) -> bool:
@@ -136,7 +149,7 @@ def _role_by_name(terminal: Terminal) -> Role:
         return "receiver" if name in _CONTROL else "driver"
     if terminal.prefix in SINKS:
         return "receiver"
-    for text in (name, stem(name)):
+    for text in _spellings(terminal):
         if _DRIVER_NAME.fullmatch(text):
             return "driver"
         if _RECEIVER_NAME.fullmatch(text):

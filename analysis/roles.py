@@ -67,7 +67,8 @@ def assign_roles(board: Board) -> Roles:
     overrules = {duty.capacitor: duty.is_ for duty in board.brief.tables.duty}
     duties = assign_duties(topology, briefed, overrules)
     known = {frozenset((path.from_net, path.to_net)) for path in paths}
-    for shown in shown_paths(topology):
+    claimed = {duty.refdes for duty in duties if duty.id.startswith(("coupling:", "filter:"))}
+    for shown in shown_paths(topology, claimed):
         ends = frozenset((shown.from_net, shown.to_net))
         if ends not in known:
             known.add(ends)
@@ -76,5 +77,3 @@ def assign_roles(board: Board) -> Roles:
     loads = {duty.refdes for duty in duties if duty.kind == "load"}
     crystal_nets = {net for section in board.sections if section.refdes in loads for net in (section.a, section.b)}
     return Roles(duties, tuple(paths), frozenset(crystal_nets))
-
-

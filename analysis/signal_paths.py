@@ -6,14 +6,14 @@ one side, an input on the other, or a connector on one side. Where two readings 
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Collection, Iterator
 from dataclasses import dataclass
 from itertools import pairwise
 from typing import Literal
 
 from reactance.analysis import pin_roles
 from reactance.analysis.duties import PathKind, duties
-from reactance.analysis.duty_words import listing
+from reactance.analysis.duty_words import listing, what_holds
 from reactance.analysis.topology import Branch, Topology
 
 Side = Literal["driver", "receiver", "connector", "part", "mixed", "none"]
@@ -31,15 +31,19 @@ class ShownPath:
     parts: tuple[str, ...] = ()
 
 
-def shown_paths(topology: Topology) -> tuple[ShownPath, ...]:
-    """The couplings, then the filters, each once, in the order of the design's parts."""
+def shown_paths(topology: Topology, claimed: Collection[str] = ()) -> tuple[ShownPath, ...]:
+    """The couplings, then the filters, each once, in the order of the design's parts.
+
+    `claimed`: capacitors whose path the brief describes already; a path with one of them is not shown again.
+    """
     capacitors = [branch for branch in topology.branches if branch.kind == "capacitor"]
     assigned = [found.kind for found in duties(topology)]
     of_kind = {
         wanted: [capacitor for capacitor, kind in zip(capacitors, assigned, strict=True) if kind == wanted]
         for wanted in ("coupling", "filter")
     }
-    return (*_couplings(topology, of_kind["coupling"]), *_filters(topology, of_kind["filter"]))
+    found = (*_couplings(topology, of_kind["coupling"]), *_filters(topology, of_kind["filter"]))
+    return tuple(path for path in found if not any(part in claimed for part in path.parts))
 
 
 def side_of(topology: Topology, net: str) -> Side:
@@ -96,21 +100,29 @@ def _drives(one: Side, other: Side) -> bool:
 
 
 def _nearest(topology: Topology, start: str) -> tuple[Side, str] | None:
-    """Who is nearest to `start` over resistors, inductors and beads, and on which net; None where that is not one."""
-    layer, seen = [start], {start}
-    while layer and len(seen) <= _FARTHEST:
+    """Who is nearest to `start` over resistors, inductors and beads; None where that is not one.
+
+    With it the net to measure at: where that one is, unless a capacitor loads the way there; then `start` itself.
+    """
+    layer, loaded = [start], {start: False}
+    while layer and len(loaded) <= _FARTHEST:
         sides = [(side, net) for net in layer if (side := side_of(topology, net)) != "none"]
         if sides:
-            return sides[0] if len(sides) == 1 and sides[0][0] != "mixed" else None
-        onward = dict.fromkeys(branch.other(net) for net in layer for branch in topology.series(net))
-        layer = [net for net in onward if net not in seen]
-        seen.update(layer)
+            side, net = sides[0]
+            return (side, start if loaded[net] else net) if len(sides) == 1 and side != "mixed" else None
+        following: list[str] = []
+        for net in layer:
+            for onward in (branch.other(net) for branch in topology.series(net)):
+                if onward not in loaded:
+                    loaded[onward] = loaded[net] or any(b.kind == "capacitor" for b in topology.on(onward))
+                    following.append(onward)
+        layer = following
     return None
 
 
 def _who(topology: Topology, net: str) -> str:
     pins = [pin for pin in topology.pins(net) if pin_roles.role(pin) != "none"]
-    return listing(pin.label for pin in pins) if pins else "an amplifier"
+    return listing(pin.label for pin in pins) if pins else what_holds(topology, net)
 
 
 def _filters(topology: Topology, capacitors: list[Branch]) -> Iterator[ShownPath]:

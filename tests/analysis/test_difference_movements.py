@@ -250,6 +250,21 @@ def test_removed_parts_and_moved_pins_and_the_brief_are_named() -> None:
     assert line.endswith("C15 removed (10u), R4 pin 1: A → +3V3, brief, rail +3V3: allowed, 5 % → 4 %")
 
 
+def test_an_order_number_that_goes_along_is_not_named() -> None:
+    number = Edit("C14.Part Number", "attribute changed", "C14", "Part Number", "X-100N", "X-10N")
+    assert told(*rail_reports(0.081, 0.164), number, C14, C20).endswith("of 165 mV: C14 100 nF → 10 nF")
+    assert told(*rail_reports(0.081, 0.164), number).endswith("of 165 mV: C14 Part Number X-100N → X-10N")
+
+
+def test_resistors_named_in_the_reason_are_behind_a_coupling_and_the_stress_in_it() -> None:
+    because = "in series in the coupling 'mic' of the brief, from A to B, with R11 and R12"
+    more = {"duties": (Duty("coupling:mic", "coupling", ("C40",), ("A", "B"), because),)}
+    bias = Edit("R11.VALUE", "attribute changed", "R11", "VALUE", "100k", "10k")
+    for check_id in ("coupling:mic:corner", "part:C40:stress"):
+        older, newer = report(check(check_id, 1.0), **more), report(check(check_id, 2.0), **more)
+        assert told(older, newer, bias, C20).endswith(": R11 100k → 10k")
+
+
 def test_units_that_differ_stand_twice() -> None:
     older, newer = (
         report(check("filter:A>B:corner_high", 950.0, unit="Hz")),

@@ -67,8 +67,34 @@ CASES: dict[str, tuple[str, DutyKind, str]] = {
         "feedback",
         "R2",
     ),
+    "a leg that sets the gain": ("R1 M OUT\nR2 M L\nC1 L GND\nU1.1=OUT>output OUT\nU1.2=IN- M", "feedback", "R2"),
+    "the same leg, capacitor first": (
+        "R1 M OUT\nC1 M L\nR2 L VREF_2V5\nU1.1=OUT>output OUT\nU1.2=IN- M",
+        "feedback",
+        "R2",
+    ),
+    "into an inverting stage": (
+        "J1.1 A\nC1 A L\nR2 L M\nR1 M OUT\nU1.1=OUT>output OUT\nU1.2=IN- M",
+        "coupling",
+        "J1.1",
+    ),
     "an integrator": ("R1 IN M\nC1 M OUT\nU1.1=OUT>output OUT\nU1.2=IN->input M", "feedback", "inverting"),
     "around pins without names": ("R1 IN M\nR2 M OUT\nC1 M OUT\nU1.1 OUT\nU1.2 M", "feedback", "R2"),
+    "an active filter around a follower": (
+        "J1.1 A\nR1 A X\nR2 X P\nC1 X OUT\nU8.5=INB_P P\nU8.6=INB_N OUT\nU8.7=OUTB OUT\nU8.1=OUTA Z",
+        "feedback",
+        "same amplifier",
+    ),
+    "from one stage over a resistor to the next": (
+        "U8.1=OUTA A\nC1 A X\nR1 X P\nU8.5=INB_P P\nU8.7=OUTB Z",
+        "coupling",
+        "U8.1",
+    ),
+    "an integrator in a package of two": (
+        "C1 M O\nR1 A M\nU8.2=INA- M\nU8.1=OUTA O\nU8.7=OUTB Z\nJ1.1 A",
+        "feedback",
+        "inverting",
+    ),
     "from one stage to the next in one package": (
         "U1.1=OUTA>output A\nC1 A B\nR1 B VMID\nU1.5=INB+>input B",
         "coupling",

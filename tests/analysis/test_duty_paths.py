@@ -40,6 +40,10 @@ SHOWN = {
         "U1.1>output O; R3 O A; C1 A B; R1 B VMID; R2 B I; U2.3>input I",
         ["coupling O>I"],
     ),
+    "no farther than a loaded net": (
+        "U1.1>output A; C1 A B; R1 B VMID; R2 B D; C2 D GND; R3 D I; U2.3>input I",
+        ["coupling A>B"],
+    ),
     "into an inverting stage": (
         "U1.1>output A; C1 A B; R1 B M; R2 M O; U2.2>input M; U2.1>output O",
         ["coupling A>M"],
@@ -81,6 +85,9 @@ NOT_SHOWN = {
     "a forked ladder": "J1.1 A; R1 A B; C1 B GND; R2 B D; R3 B E; C2 D GND; C3 E GND; U1.1>input D; U1.2>input E",
     "a filtered supply": "R1 +5V A; C1 A GND; U1.1>input A",
     "an active stage": ("J1.1 A; R1 A X; R2 X P; C1 X O; C2 P GND; U1.3>input P; U1.1>output O; U1.2>input O"),
+    "a stage whose amplifier the names of its pins show": (
+        "J1.1 A; R1 A X; R2 X P; C1 X O; C2 P GND; U8.5=INB_P P; U8.6=INB_N O; U8.7=OUTB O; U8.1=OUTA Z"
+    ),
     "a reset": "R1 SW_IN NRST; J1.1 SW_IN; C1 NRST GND; U1.1=NRST>input NRST",
 }
 
@@ -116,3 +123,10 @@ def test_the_reason_names_parts_and_ends() -> None:
     assert shown.parts == ("R1", "C1")
     for word in ("R1 and C1", "J1.1", "U1.5 (PA0)"):
         assert word in shown.because
+
+
+def test_a_path_with_a_claimed_capacitor_is_not_shown_again() -> None:
+    topology = circuit("J1.1 A; R1 A B; C1 B GND; U1.1>input B; C2 A D; R2 D VMID; U1.2>input D")
+    assert [path.kind for path in shown_paths(topology)] == ["coupling", "filter"]
+    assert [path.kind for path in shown_paths(topology, {"C2"})] == ["filter"]
+    assert shown_paths(topology, {"C1", "C2"}) == ()
