@@ -205,7 +205,7 @@ def _grow(p: ComplexArray, members: set[int]) -> _Group | None:
         distance[inside] = np.inf
         nearest = min(float(distance.min()), abs(centre))
         limit = 0.5 * abs(centre.real)
-        radius = min(float(np.sqrt(extent * nearest)), limit, 0.3 * nearest)
+        radius = min(limit, 0.3 * nearest)
         if radius >= 3.0 * extent:
             return _Group(tuple(map(int, inside)), centre, radius)
         if not np.isfinite(distance.min()) or limit < 3.0 * extent:

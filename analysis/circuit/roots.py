@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 
 from reactance.analysis.circuit.forest import Forest
 from reactance.analysis.circuit.network import CircuitError, ComplexArray, FloatArray
-from reactance.analysis.circuit.system import Drive, System
+from reactance.analysis.circuit.system import Drive, Equations, System
 
 _FAR_LOW, _FAR_HIGH = 1e-30, 1e30
 _MOST_ROUNDS = 120
@@ -39,9 +39,8 @@ class Question:
         return answer
 
     def _slope(self, forest: Forest, s: ComplexArray) -> ComplexArray:
-        eq = self.system.equations(forest, s, self.drive, self.probe, slopes=True)
+        eq, inverse = self.system.nudged(s, lambda x: self._inverse(forest, x))
         assert eq.matrix_slope is not None and eq.rhs_slope is not None and eq.denominator_slope is not None
-        inverse = _inverse(eq.matrix)
         total = np.einsum("...ij,...ji->...", inverse, eq.matrix_slope) + eq.denominator_slope
         if not self.zeros:
             return np.asarray(total)
@@ -51,22 +50,13 @@ class Question:
         h_slope = (inverse @ moved[..., None])[..., 0] @ eq.observe
         return np.asarray(total + h_slope / h)
 
+    def _inverse(self, forest: Forest, s: ComplexArray) -> tuple[Equations, ComplexArray]:
+        eq = self.system.equations(forest, s, self.drive, self.probe, slopes=True)
+        return eq, np.linalg.inv(eq.matrix)
+
     def only(self, rows: NDArray[np.intp]) -> Question:
         """The same question of some of the sets of values."""
         return Question(self.system.only(rows), self.drive, self.probe, self.zeros)
-
-
-def _inverse(matrix: ComplexArray) -> ComplexArray:
-    try:
-        return np.linalg.inv(matrix)
-    except np.linalg.LinAlgError:
-        pass
-    size = np.abs(matrix).max(axis=(-2, -1), keepdims=True) if matrix.size else 1.0
-    nudge = size * 1e-15 * np.random.default_rng(1).standard_normal(matrix.shape[-2:])
-    try:
-        return np.linalg.inv(matrix + nudge)
-    except np.linalg.LinAlgError:
-        raise CircuitError("the network has no unique solution: its gains cancel") from None
 
 
 def find_roots(question: Question) -> tuple[ComplexArray, int]:

@@ -9,10 +9,11 @@ written in cutset voltages).
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from copy import copy
 from dataclasses import dataclass
 from functools import cached_property
+from typing import TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
@@ -29,6 +30,7 @@ from reactance.analysis.circuit.network import (
     VoltageSource,
 )
 
+T = TypeVar("T")
 NEAR_ZERO = 1e-40  # rad/s that stands for DC: far below any rate of any network, far above underflow
 NEAR_INFINITY = 1e40
 
@@ -268,9 +270,22 @@ class System:
         """The probe's voltage at s (V, F) or (1, F): complex (V, F)."""
         answer = np.empty((self.count, s.shape[1]), complex)
         for forest, where in self.groups(s):
-            equations = self.equations(forest, s[:, where], drive, probe)
-            answer[:, where] = solve(equations)
+            answer[:, where] = self.nudged(s[:, where], lambda x, f=forest: self._solve(f, x, drive, probe))  # type: ignore[misc]
         return answer
+
+    def _solve(self, forest: Forest, s: ComplexArray, drive: Drive, probe: tuple[str, str]) -> ComplexArray:
+        eq = self.equations(forest, s, drive, probe)
+        x = np.linalg.solve(eq.matrix, eq.rhs[..., None])[..., 0]
+        return np.asarray(x @ eq.observe + eq.known)
+
+    def nudged(self, s: ComplexArray, work: Callable[[ComplexArray], T]) -> T:
+        """`work` at s; where that is exactly on a pole, right beside it. Raises `CircuitError` if singular anywhere."""
+        for shift in (0.0, 3e-16, 7e-15):
+            try:
+                return work(s * (1.0 + shift) if shift else s)
+            except np.linalg.LinAlgError:
+                continue
+        raise CircuitError("the network has no unique solution: its gains cancel")
 
     def groups(self, s: ComplexArray) -> list[tuple[Forest, slice | NDArray[np.intp]]]:
         """The forests that serve the columns of s, each with the columns it serves."""
@@ -283,15 +298,6 @@ class System:
         if len(found) == 1:
             return [(self._forests[key], slice(None)) for key in found]
         return [(self._forests[key], np.array(sorted(columns))) for key, columns in found.items()]
-
-
-def solve(equations: Equations) -> ComplexArray:
-    """The probe's voltage (V, F) from its equations."""
-    try:
-        x = np.linalg.solve(equations.matrix, equations.rhs[..., None])[..., 0]
-    except np.linalg.LinAlgError:
-        raise CircuitError("the network has no unique solution: its gains cancel") from None
-    return np.asarray(x @ equations.observe + equations.known)
 
 
 class _Layout:
