@@ -70,25 +70,29 @@ class Collector:
 
         Raises InputError beyond the limits.
         """
-        draft = self.part(refdes, place)
-        number, name, net, direction = pin.number, pin.name, pin.net, pin.direction
-        known = draft.pins.get(number)
+        draft = self.parts.get(refdes) or self.part(refdes, place)
+        known = draft.pins.get(pin.number)
         if known is None:
-            self._pin_count += 1
-            self._check_name(number, place)
-            self._check_name(name, place)
-            self.limits.check("pins", self._pin_count, place)
-        elif net is not None and known.net is not None and known.net != net:
-            message = f"pin {refdes}.{number} is on net {known.net} and on net {net}; the first counts"
+            self._new_pin(pin, place)
+        elif pin.net is not None and known.net not in (None, pin.net):
+            message = f"pin {refdes}.{pin.number} is on net {known.net} and on net {pin.net}; the first counts"
             self.problem("error", place, message)
             return
         else:
-            net = net if known.net is None else known.net
-            name, direction = known.name or name, known.direction or direction
-        draft.pins[number] = Pin(number, name, net, direction)
-        if net is not None:
-            self.net(net, place)
-            self._nets[net][1][refdes, number] = None
+            net = pin.net if known.net is None else known.net
+            pin = Pin(pin.number, known.name or pin.name, net, known.direction or pin.direction)
+        draft.pins[pin.number] = pin
+        if pin.net is not None:
+            if pin.net not in self._nets:
+                self.net(pin.net, place)
+            self._nets[pin.net][1][refdes, pin.number] = None
+
+    def _new_pin(self, pin: Pin, place: Place) -> None:
+        self._pin_count += 1
+        self._check_name(pin.number, place)
+        self._check_name(pin.name, place)
+        if self._pin_count > self.limits.pins:
+            self.limits.check("pins", self._pin_count, place)
 
     def attribute(self, draft: PartDraft, name: str, text: str, place: Place) -> None:
         """An attribute of a part. The first of equal names counts; what is too long is cut, and noted."""

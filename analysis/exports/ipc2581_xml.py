@@ -28,7 +28,7 @@ def read_elements(
 ) -> None:
     """Call `start` and `end` for each element in turn.
 
-    A document type, and with it every entity and external reference, is refused where it begins. Raises
+    A document type, and with it every entity and external reference, is refused where it is met. Raises
     InputError for that, for what is no well-formed IPC-2581, and beyond the limits.
     """
     limits.check("bytes", len(data), Place(file))

@@ -5,11 +5,11 @@ from __future__ import annotations
 from collections.abc import Mapping
 from types import MappingProxyType
 
-from reactance.analysis.design import Design, Direction, Pin
+from reactance.analysis.design import Design, Direction, Pin, Place
 from reactance.analysis.exports.collect import Collector
 from reactance.analysis.exports.limits import DEFAULT_LIMITS, Limits
 from reactance.analysis.exports.sniff import stem
-from reactance.analysis.exports.tables_columns import find_pins_header
+from reactance.analysis.exports.tables_columns import Column, find_pins_header
 from reactance.analysis.exports.tables_parts import add_parts, note_missing_table, read_parts
 from reactance.analysis.exports.tables_rows import Row, Table
 
@@ -57,16 +57,16 @@ def read_tables(data: bytes, file: str, parts: bytes | None = None, *, limits: L
 
 def _add_pin(row: Row, table: Table, collector: Collector) -> None:
     columns = table.header.columns
-    refdes, number, net = (row.cell(columns[key]) for key in ("refdes", "pin", "net"))
-    for what, text in (("refdes", refdes), ("pin", number)):
-        if not text:
-            place = table.place(row, columns["refdes" if what == "refdes" else "pin"])
-            collector.problem("error", place, f"no {what} in this row; it is left out")
-            return
+    refdes, number, net = row.cell(columns["refdes"]), row.cell(columns["pin"]), row.cell(columns["net"])
+    if not (refdes and number):
+        missing: Column = "pin" if refdes else "refdes"
+        message = f"no {missing} in this row; it is left out"
+        collector.problem("error", table.place(row, columns[missing]), message)
+        return
     if len(row.cells) <= columns["net"]:
         message = f"the row of {refdes[:40]}.{number[:40]} ends before its net; taken as not connected"
         collector.problem("caution", table.place(row, columns["net"]), message)
-    elif any(row.cells[len(table.header.cells) :]):
+    elif len(row.cells) > len(table.header.cells) and any(row.cells[len(table.header.cells) :]):
         message = f"{len(row.cells)} cells where the header has {len(table.header.cells)}"
         collector.problem("caution", table.place(row), message)
     pin = Pin(
@@ -75,7 +75,7 @@ def _add_pin(row: Row, table: Table, collector: Collector) -> None:
         None if net.lower() in UNCONNECTED else net,
         _DIRECTIONS.get(row.cell(columns.get("direction")).lower(), ""),
     )
-    collector.pin(refdes, pin, table.place(row, columns["refdes"]))
+    collector.pin(refdes, pin, Place(table.file, row.line, 1))
 
 
 def _name(file: str) -> str:

@@ -61,7 +61,7 @@ class Table:
                 raise self._unclosed(line)
             self._check(line, cells)
             if any(cells):
-                yield Row(line, tuple(visible(cell).strip() for cell in cells))
+                yield Row(line, tuple([visible(cell).strip() for cell in cells]))
 
     def place(self, row: Row, index: int | None = None) -> Place:
         """Where a cell of a row begins, as far as quotation marks let it be known."""
