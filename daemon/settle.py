@@ -28,6 +28,8 @@ _QUIET: Mapping[Hint, float] = {
 }
 # Only Linux says when a writer closes; elsewhere a file that was written may be whole.
 _QUIET_WITHOUT_CLOSE: Mapping[Hint, float] = {**_QUIET, "written": 0.15}
+# Where files are only looked at, nothing says that a writer is done.
+QUIET_POLLED: Mapping[Hint, float] = {**_QUIET, "found": 0.4}
 BROKEN_AFTER = 2.0
 GONE_AFTER = 1.0
 RESTLESS_AFTER = 0.5

@@ -20,7 +20,7 @@ from reactance.daemon.intake import Intake
 from reactance.daemon.outcome import Outcome, Timings
 from reactance.daemon.reading import Signature, Stamp, is_export, read_board, signature, stamp
 from reactance.daemon.registry import Registry
-from reactance.daemon.settle import Hint, Settler
+from reactance.daemon.settle import QUIET_POLLED, Hint, Settler
 from reactance.daemon.sources import Source
 from reactance.daemon.walk import Root, roots_of
 
@@ -103,6 +103,8 @@ class Watcher:
             else:
                 deaf = source.start(self._roots)
                 self._polled = tuple(root for root in self._roots if root.folder in deaf)
+            if self._polled:
+                self._settler.quiet = QUIET_POLLED
             self._catch_up()
             while self._turn(source):
                 pass
@@ -286,9 +288,11 @@ class Watcher:
 
     def _lose(self, board: str) -> None:
         known = self._registry.get(board)
-        if known is not None and not known.gone:
-            known.gone = True
-            self._analyst.submit(Job("gone", board))
+        if known is None or known.gone:
+            self._arrived(board)
+            return
+        known.gone = True
+        self._analyst.submit(Job("gone", board))
 
     def _refuse(self, board: str, message: str) -> None:
         known = self._registry.know(board)

@@ -42,7 +42,7 @@ BRIEFS: dict[str, tuple[str, str]] = {
     "a pin that the design lacks": (BRIEF + '[[pin]]\nat = "U1.99"\nresistance = "1 Mohm"\n', "U1.99"),
     "a capacitor that the design lacks": (BRIEF + '[[duty]]\ncapacitor = "C77"\nis = "timing"\n', "C77"),
     "a duty that is none": (BRIEF + '[[duty]]\ncapacitor = "C1"\nis = "decoration"\n', "duty"),
-    "a file that is not there": (BRIEF + '[board]\nparts = "team.toml"\n', "team.toml"),
+    "a file that is not there": (BRIEF + '[board]\nparts = ["team.toml"]\n', "team.toml"),
     "no text": ("\x00\x01", "board.brief.toml"),
 }
 
