@@ -162,7 +162,7 @@ def _side(name: str, check: Check) -> Side:
     margin = ""
     if check.margin is not None:
         zero = check.limit is not None and 0 in (check.limit.min, check.limit.max)
-        margin = words.value_words(check.margin, unit, measure) if zero else f"{check.margin:.1%}"
+        margin = words.value_words(check.margin, unit, measure) if zero else format_quantity(check.margin, "fraction")
     return Side(
         name=name,
         figure=words.value_words(check.nominal, unit, measure),

@@ -25,7 +25,7 @@ class Streams:
     def __init__(self, history: History, viewers: int = VIEWERS, heartbeat: float = HEARTBEAT) -> None:
         self._history = history
         self._places = threading.BoundedSemaphore(viewers)
-        self._heartbeat = heartbeat
+        self.heartbeat = heartbeat
         self._closing = threading.Event()
         self._count = 0
         self._guard = threading.Lock()
@@ -63,7 +63,7 @@ class Streams:
                     seen, spoken = now, time.monotonic()
                     yield f"id: {now}\nevent: change\ndata: {now}\n\n"
                 version = max(version, self._history.wait(version, _SLICE))
-                if time.monotonic() - spoken >= self._heartbeat:
+                if time.monotonic() - spoken >= self.heartbeat:
                     spoken = time.monotonic()
                     yield ": here\n\n"
         except HistoryError:

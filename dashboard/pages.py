@@ -213,7 +213,7 @@ def board_page(found: Shown) -> BoardPage:
     return BoardPage(
         head=head(found),
         change=change(found, strips),
-        failing=tuple(check_row(board, check, strips, check.explain) for check in failing[:MOST_FAILING]),
+        failing=tuple(check_row(board, check, strips, since=True) for check in failing[:MOST_FAILING]),
         more_failing=max(0, len(failing) - MOST_FAILING),
         groups=groups(found, strips),
         capacitors=capacitors[:MOST_CAPACITORS],

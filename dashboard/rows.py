@@ -155,18 +155,27 @@ def _cell_words(cell: StripCell, check: Check | None, edits: str) -> str:
     return f"{figure}, {words.STATUS[cell.status]}{verdict}{why}"
 
 
-def check_row(board: int, check: Check, strips: Strips, note: str = "") -> Row:
-    """A check as it stands."""
+def check_row(board: int, check: Check, strips: Strips, *, since: bool = False) -> Row:
+    """A check as it stands; with `since`, from which save on it fails and what that save changed."""
+    strip = strips.strip(check.id)
     return Row(
         key=check.id,
         word=words.STATUS[check.status],
         tone=TONES.get(check.status, "watched"),
         text=name_words(check),
         figure=words.check_words(check),
-        note=note,
+        note=_since_words(strip) if since else "",
         href=check_href(board, check.id),
-        strip=strips.strip(check.id),
+        strip=strip,
     )
+
+
+def _since_words(strip: Strip) -> str:
+    column = strip.failing_since
+    if column is None:
+        return ""
+    edits = f": {column.edits}" if column.edits else ""
+    return f"since save {column.number}, {column.when}{edits}"
 
 
 def movement_row(board: int, move: Movement, text: str, strips: Strips | None, at: int | None = None) -> Row:

@@ -9,7 +9,7 @@ from cheroot import wsgi
 
 from reactance.daemon.history import History
 from reactance.dashboard.app import create_app
-from reactance.dashboard.events import VIEWERS
+from reactance.dashboard.events import VIEWERS, Streams
 
 _WORKERS = 8  # threads for answers beside those that open pages hold
 _OWN_NAMES = ("127.0.0.1", "localhost", "[::1]")
@@ -38,7 +38,7 @@ class Server:
         self.port = int(self._server.bind_addr[1])
         self._host = f"[{host}]" if ":" in host else host
         app = create_app(history, hosts=own_hosts(self.port))
-        self._streams = app.extensions["reactance.streams"]
+        self.streams: Streams = app.extensions["reactance.streams"]
         self._server.wsgi_app = app
         self._thread: threading.Thread | None = None
 
@@ -55,7 +55,7 @@ class Server:
 
     def stop(self) -> None:
         """Ends open streams, finishes what is being answered, frees the port."""
-        self._streams.close()
+        self.streams.close()
         self._server.stop()
         if self._thread is not None:
             self._thread.join(timeout=10)

@@ -18,8 +18,8 @@ HEIGHT = 48
 BASE = 39.0  # where bars stand
 LINE = 15.0  # the limit
 _UNIT = BASE - LINE
-_HEADROOM = LINE - 2.0
-_LEAST_EXCESS = 2.5  # a failing bar stands clear of the line, however small the excess
+_HEADROOM = LINE - 1.0
+_LEAST_EXCESS = 4.0  # a failing bar stands clear of the line, however small the excess
 _PITCHES = ((16, 16), (30, 13), (45, 10))
 _NARROWEST = 8
 
@@ -72,6 +72,18 @@ class Strip:
     pitch: int
     judged: bool
     cells: tuple[Drawn, ...]
+
+    @property
+    def failing_since(self) -> Column | None:
+        """The save from which on the check fails without a break until now; None where it does not fail now."""
+        found: Column | None = None
+        for cell in reversed(self.cells):
+            if cell.column.unjudged:
+                continue
+            if cell.status != "fail":
+                break
+            found = cell.column
+        return found
 
 
 def pitch(columns: int) -> int:
@@ -131,7 +143,7 @@ def y_of(share: float) -> float:
         return BASE
     if share <= 1:
         return round(BASE - _UNIT * max(share, 0.0), 2)
-    return round(LINE - _HEADROOM * (1 - 1 / share), 2)
+    return round(LINE - _HEADROOM * (1 - share**-3), 2)
 
 
 def draw(

@@ -50,7 +50,7 @@
 
   function axis(about) {
     return {
-      title: { text: about.label, standoff: 12 },
+      title: { text: about.label, standoff: 12, font: { size: 14 } },
       type: about.log ? "log" : "linear",
       gridcolor: css("--hair"),
       zeroline: !about.log,
@@ -145,11 +145,9 @@
       return;
     }
     note.textContent = plot.note;
-    if (!plot.sides.length) {
-      Plotly.purge(place);
-      place.replaceChildren();
-      return;
-    }
+    place.hidden = !plot.sides.length;
+    if (place.hidden) return;
+    if (place.drawn) Plotly.purge(place);
     place.replaceChildren();
     place.drawn = plot;
     place.labelled = "";
