@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import gc
 from collections.abc import Iterator, Mapping
+from contextlib import contextmanager
 
 from reactance.analysis.design import Design, InputError
 from reactance.analysis.exports import edif_entries as says
@@ -29,7 +31,24 @@ def read_edif(
     Raises InputError, with line, column and remedy, for what is no EDIF 2 0 0, ends too early, contains itself or
     goes beyond `limits`.
     """
-    source = Source(data, file, limits)
+    with _no_collection():
+        return _read(Source(data, file, limits), memory)
+
+
+@contextmanager
+def _no_collection() -> Iterator[None]:
+    """No search for cycles meanwhile: the many small objects of a reading live on, so that each search goes through
+    all of them and frees nothing."""
+    was_enabled = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if was_enabled:
+            gc.enable()
+
+
+def _read(source: Source, memory: FormMemory | None) -> Design:
     top, aliases = outline(source)
     _declare(top, source, aliases, memory)
     _check_version(top, source)
@@ -41,7 +60,7 @@ def read_edif(
     parts, nets = flatten(
         view, netlists(view, catalogue, source), source
     )
-    return Design(name, file, "EDIF 2 0 0", parts, nets, source.problems())
+    return Design(name, source.file, "EDIF 2 0 0", parts, nets, source.problems())
 
 
 def _entries(top: Container) -> Iterator[Entry]:

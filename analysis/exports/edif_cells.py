@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from decimal import Decimal
@@ -142,6 +143,7 @@ class Catalogue:
 
     def __init__(self, source: Source) -> None:
         self._source = source
+        self._pins = 0
         self._libraries: dict[str, Library] = {}
         self._everywhere: dict[str, Cell] = {}
 
@@ -180,7 +182,7 @@ class Catalogue:
         name = self._name(form, "cell")
         cell = Cell(name, library, form.start)
         known = library.cells.get(name.key)
-        if known is not None and known.views and not (form.inner and not known.contents()):
+        if known is not None and known.views:
             self._source.problem("caution", form.start, f"cell {name.text} is defined twice; the first is used")
             return
         for entry in form.entries:
@@ -224,7 +226,6 @@ class Catalogue:
         for entry in form.entries:
             value = entry.value
             if isinstance(value, says.Port):
-                self._source.check("array", value.name.width, entry.start)
                 if value.name.key in view.interface.groups:
                     self._source.problem("caution", entry.start, f"port {value.name.text} stands twice")
                     continue
@@ -235,15 +236,22 @@ class Catalogue:
                 view.interface.joined.append(value.refs)
             elif isinstance(value, says.Word) and entry.keyword == "designator":
                 view.prefix = value.name.text
+        numbers = Counter([bit.number for bit in view.interface.bits])
+        if len(numbers) < len(view.interface.bits):
+            twice = ", ".join([number for number, count in numbers.items() if count > 1][:5])
+            message = f"cell {view.cell.name.text} has pin numbers more than once: {twice}"
+            self._source.problem("caution", form.start, message)
 
     def _port(self, port: says.Port, interface: Interface, entry: Entry) -> PortGroup:
         if port.bundle:
             inner = {each.name.key: self._port(each, interface, entry) for each in port.inner}
             return PortGroup(tuple(bit for group in inner.values() for bit in group.bits), (), inner)
+        self._source.check("array", port.name.width, entry.start)
+        self._pins += port.name.width
+        self._source.check("pins", self._pins, entry.start)
         names = member_names(port.name)
         numbers = pin_numbers(port.number, names)
         bits = [interface.add(number, name, port.direction) for number, name in zip(numbers, names, strict=True)]
-        self._source.check("pins", len(interface.bits), entry.start)
         return PortGroup(tuple(bits), port.name.size)
 
     def _name(self, form: Container, what: str) -> Name:

@@ -53,6 +53,8 @@ class Connector:
         self._scopes: list[dict[str, tuple[int, int, tuple[int, ...]]]] = []  # key -> first part, count, size
         self._by_name: dict[str, int] = {}
         self._by_key: list[set[str]] = []
+        # Pins of instances other than usual ones, and ends of nets other than plain ones, against blow-ups.
+        self._pin_count = self._end_count = 0
         self._ports: dict[int, int] = {}
         self._connectors: dict[str, int] = {}
         self._globals: dict[str, tuple[str, int]] = {}
@@ -64,6 +66,7 @@ class Connector:
             self._declare(scope)
         for position, scope in enumerate(scopes):
             self._by_key.append(set())
+            self._source.check("parts", len(self._parts), self._view.cell.start)
             for entry in scope.entries:
                 if isinstance(entry.value, says.Net):
                     self._net(entry.value, position, entry)
@@ -94,6 +97,10 @@ class Connector:
         self, value: says.Instance, entry: Entry, known: dict[str, tuple[int, int, tuple[int, ...]]]
     ) -> None:
         name = value.name
+        if value.usual and name.key not in known and (part := self._maker.usual(value, entry.start)):
+            known[name.key] = (len(self._parts), 1, ())
+            self._parts.append(part)
+            return
         self._source.check("name", len(name.text), entry.start)
         if name.size:
             self._source.check("array", name.width, entry.start)
@@ -104,6 +111,8 @@ class Connector:
         first = len(self._parts)
         self._parts.extend(self._maker.parts(value, entry.start))
         self._source.check("parts", len(self._parts), entry.start)
+        self._pin_count += sum([len(part.interface.bits) for part in self._parts[first:]])
+        self._source.check("pins", self._pin_count, entry.start)
         known.setdefault(name.key, (first, len(self._parts) - first, name.size))
 
     def _new_node(self, name: str, start: int) -> int:
@@ -128,6 +137,8 @@ class Connector:
                 on[bit] = node
             return [node]
         ends = [self._ends(ref, scope, net.name, entry) for ref in net.refs]
+        self._end_count += sum(map(len, ends))
+        self._source.check("pins", self._end_count, entry.start)
         width = net.name.width if net.name.size else self._bus_width(net, ends)
         nodes = self._net_nodes(net.name, width, entry.start)
         for ref, reached in zip(net.refs, ends, strict=True):
@@ -177,6 +188,7 @@ class Connector:
             if node is None:
                 node = self._by_name[key] = self._new_node(shown, start)
             nodes.append(node)
+        self._source.check("pins", len(self._nodes), start)
         return nodes
 
     def _attach(

@@ -61,8 +61,8 @@ class PinNumber(NamedTuple):
 class Instance(NamedTuple):
     """`(instance …)`; `faults` are parts of it that could not be understood.
 
-    `plain` are its attributes by visible name where none needs the library's units; `longest` is the length of
-    their longest name or text.
+    `plain` are its attributes by visible name where none needs the library's units; `longest` is the length of the
+    longest name or text in it; `usual` says that it is one instance with a refdes and plain attributes, no more.
     """
 
     name: Name
@@ -73,6 +73,7 @@ class Instance(NamedTuple):
     faults: tuple[str, ...]
     plain: Mapping[str, str] | None
     longest: int
+    usual: bool
 
 
 class Port(NamedTuple):
@@ -209,8 +210,10 @@ def _instance(form: list[Sexp]) -> Instance:
     plain: Mapping[str, str] | None = None
     if not any(attribute.unit for attribute in texts):
         plain = MappingProxyType(dict({each.key: (each.name, each.text) for each in texts}.values()))
-    longest = max((max(len(each.name), len(each.text)) for each in texts), default=0)
-    return Instance(declared, cells, designator, tuple(texts), tuple(numbers), tuple(faults), plain, longest)
+    longest = max(len(declared.text), *(max(len(each.name), len(each.text)) for each in texts), 0)
+    stands = bool(designator) and not designator.endswith("?")
+    usual = stands and plain is not None and not (declared.size or numbers or faults)
+    return Instance(declared, cells, designator, tuple(texts), tuple(numbers), tuple(faults), plain, longest, usual)
 
 
 def _item(form: Sexp, position: int = 1) -> Sexp | None:
@@ -219,8 +222,7 @@ def _item(form: Sexp, position: int = 1) -> Sexp | None:
 
 def _view_ref(form: Sexp) -> CellRef:
     view, _ = reference(_item(form))
-    inner = _item(form, 2)
-    return _cell_ref(inner, view) if inner is not None else CellRef(view, "", "")
+    return _cell_ref(_item(form, 2), view)
 
 
 def _cell_ref(form: Sexp | None, view: str = "") -> CellRef:

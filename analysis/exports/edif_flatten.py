@@ -154,15 +154,19 @@ def _name_nets(nets: Mapping[int, _FlatNet], source: Source) -> None:
     named = [net for net in nets.values() if net.names]
     plain = Counter(net.names[0][1] for net in named)
     used: set[str] = set()
+    tried: Counter[str] = Counter()
+    written = 0
     for net in sorted(named, key=lambda net: len(net.names[0][0]) > 0):
         path, name = net.names[0]
         net.called = name if not path or plain[name] == 1 else "/".join((*path, name))
+        if path:
+            written += len(net.called)
+            source.check("paths", written, net.start)
         if net.called in used:
             first = net.called
-            count = 2
-            while f"{first}#{count}" in used:
-                count += 1
-            net.called = f"{first}#{count}"
+            while net.called in used:
+                tried[first] += 1
+                net.called = f"{first}#{tried[first] + 1}"
             message = f"two nets are called {first}; this one is read as {net.called}"
             source.problem("caution", net.start, message)
         used.add(net.called)
@@ -175,12 +179,15 @@ def _connected(nets: Mapping[int, _FlatNet], parts: tuple[Part, ...], source: So
         for pin in part.pins:
             pins[pin.net].append((refdes, pin.number))
     taken = {net.called for net in nets.values()}
+    written = 0
     result = []
     for net in nets.values():
         if not net.called:
             continue
         aliases: tuple[str, ...] = ()
         if len(net.names) > 1 or net.names[0][0]:
+            written += sum(sum(map(len, path)) + len(path) for path, _ in net.names)
+            source.check("paths", written, net.start)
             others = dict.fromkeys("/".join((*path, name)) for path, name in net.names)
             aliases = tuple(other for other in others if other not in taken)
         result.append(Net(net.called, tuple(pins.get(net.called, ())), aliases, source.place(net.start)))

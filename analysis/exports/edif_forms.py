@@ -21,9 +21,9 @@ _PASSED_OVER = (
     "|keyworddisplay|netdelay|pagesize|portimplementation|propertydisplay|protectionframe|status|symbol|timing"
     "|transform|userdata|written"
 )
-_HINT = re.compile(r"\(\s*+(?:" + _PASSED_OVER + r")(?=[\s()\"])", re.IGNORECASE)
+_HINT = re.compile(r"\(\s*+(?:" + _PASSED_OVER + r")(?=[\s()\"])", re.IGNORECASE | re.ASCII)
 _PRUNE = re.compile(
-    r"(\"[^\"]*+\")|\(\s*+(?i:" + _PASSED_OVER + r")(?=[\s()\"])" + BALANCED_CONTENTS + r"\)"
+    r"(\"[^\"]*+\")|\(\s*+(?i:" + _PASSED_OVER + r")(?=[\s()\"])" + BALANCED_CONTENTS + r"\)", re.ASCII
 )
 
 # Lone surrogates occur in no decoded file, so they can stand for the characters that Lisp would act upon.

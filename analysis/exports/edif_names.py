@@ -34,7 +34,7 @@ class Name(NamedTuple):
         return self.text.lower() != self.key.lstrip("&")
 
 
-_CODES = re.compile(r"%\s*(\d{1,7}(?:\s+\d{1,7})*)\s*%")
+_CODES = re.compile(r"%\s*(\d{1,7}(?:\s+\d{1,7})*)\s*%", re.ASCII)
 _NEEDS_WORK = re.compile(r"[%\r\n\x00-\x1f\x7f-\x9f\u061c\u200e\u200f\u2028-\u202e\u2066-\u2069\ufeff]")
 _UNSAFE = re.compile(r"[\x00-\x1f\x7f-\x9f\u061c\u200e\u200f\u2028-\u202e\u2066-\u2069\ufeff]")
 _RANGE = re.compile(r"(.*?)([\[(<])\s*(\d{1,9})\s*(?::|\.\.|-)\s*(\d{1,9})\s*([])>])")

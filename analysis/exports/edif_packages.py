@@ -43,6 +43,9 @@ def flat_part(
     return Part(refdes, pins, attributes, local.target.name, path, source.place(local.start))
 
 
+_MOST_SECTIONS = 100  # of equal parts, the first so many are asked whether another is a section of them
+
+
 @dataclass(slots=True)
 class _Candidate:
     """A part whose refdes is also another's; `named` where it is more than the name of an instance."""
@@ -74,20 +77,24 @@ def _own_names(candidates: list[_Candidate], source: Source) -> tuple[Part, ...]
     counts = Counter([each.part.refdes for each in candidates])
     top = {each.part.refdes for each in candidates if not each.part.path}
     used: set[str] = set()
+    tried: Counter[str] = Counter()
+    written = 0
     parts: list[Part] = []
     for each in candidates:
         part = each.part
         name = part.refdes
         if counts[name] > 1 and part.path:
             name = "/".join((*part.path, name))
+            written += len(name)
+            source.check("paths", written, each.local.start)
             if each.named:
                 message = f"{counts[part.refdes]} parts have the designator {part.refdes}; this one is read as {name}"
                 source.problem("caution", each.local.start, message)
         if name in used or (part.path and name in top):
-            wanted, count = name, 2
-            while f"{wanted}#{count}" in used or f"{wanted}#{count}" in top:
-                count += 1
-            name = f"{wanted}#{count}"
+            wanted = name
+            while name in used or name in top:
+                tried[wanted] += 1
+                name = f"{wanted}#{tried[wanted] + 1}"
             message = f"two parts are called {wanted}; this one is read as {name}"
             source.problem("error", each.local.start, message)
         used.add(name)
@@ -102,7 +109,7 @@ def _sections(candidates: list[_Candidate], counts: Mapping[str, int]) -> list[_
     for each in candidates:
         if each.named and counts[each.part.refdes] > 1:
             same = by_refdes.setdefault(each.part.refdes, [])
-            whole = next((other for other in same if _one_package(other, each)), None)
+            whole = next((other for other in same[:_MOST_SECTIONS] if _one_package(other, each)), None)
             if whole is not None:
                 whole.part = _merged(whole.part, each.part)
                 continue

@@ -18,12 +18,13 @@ REFDES_PROPERTIES = ("refdes", "ref", "designator", "reference")
 
 # Words before a number that editors give to instances by themselves, so that `I12` is no refdes. From memory.
 _AUTOMATIC = frozenset(("i", "inst", "instance", "comp", "component", "sym", "symbol", "part", "id", "n", "uid", "xi"))
-_REFDES_LIKE = re.compile(r"([A-Za-z]+)[_-]?\d+[A-Za-z]?")
+_REFDES_LIKE = re.compile(r"([A-Za-z]+)[_-]?\d+[A-Za-z]?", re.ASCII)
 
 
 @dataclass(slots=True)
 class Target:
-    """What an instance refers to. `inside` is the view with the contents where that is a hierarchical block."""
+    """What an instance refers to. `inside` is the view with the contents where that is a hierarchical block;
+    `plain` says that it is the cell of a component and gives its instances nothing but pins."""
 
     cell: Cell | None
     name: str
@@ -33,6 +34,7 @@ class Target:
     defaults: tuple[Attribute, ...]
     graphic: bool
     wiring: bool = False
+    plain: bool = False
 
 
 @dataclass(slots=True)
@@ -57,6 +59,7 @@ class LocalPart:
 
 
 _NO_NUMBERS: Mapping[int, str] = MappingProxyType({})
+_NO_ATTRIBUTES: Mapping[str, str] = MappingProxyType({})
 
 
 class PartMaker:
@@ -64,11 +67,23 @@ class PartMaker:
 
     def __init__(self, home: View, catalogue: Catalogue, source: Source) -> None:
         self._home, self._catalogue, self._source = home, catalogue, source
+        self._longest = min(source.limits.name, source.limits.text)
         self._targets: dict[says.CellRef, Target] = {}
         self._notes: dict[str, list[says.Annotation]] = {}
         for note in home.cell.annotations:
             if len(note.path) == 1:
                 self._notes.setdefault(note.path[0].lower(), []).append(note)
+
+    def usual(self, instance: says.Instance, start: int) -> LocalPart | None:
+        """The part of a usual instance of a cell without surprises, the short way for most; else None."""
+        target = self._targets.get(instance.cells[0])
+        if target is None or not target.plain or self._notes or instance.longest > self._longest:
+            return None
+        name, attributes = instance.name, instance.plain or _NO_ATTRIBUTES
+        refdes, interface = instance.designator, target.interface
+        return LocalPart(
+            name.key, name.text, start, target, None, interface, refdes, attributes, _NO_NUMBERS, False
+        )
 
     def parts(self, instance: says.Instance, start: int) -> Iterable[LocalPart]:
         """The part, or the part for each member of an array of instances."""
@@ -116,6 +131,7 @@ class PartMaker:
                 target.defaults = (*cell.attributes, *(view.attributes if view else ()))
                 target.interface = view.interface if view else target.interface
                 target.wiring = cell.kind in ("tie", "ripper")
+                target.plain = not (target.wiring or target.inside or target.defaults)
                 target.graphic = view is not None and view.kind == "graphic"
         return target
 
@@ -123,7 +139,6 @@ class PartMaker:
         self, instance: says.Instance, notes: list[says.Annotation], target: Target, start: int
     ) -> Mapping[str, str]:
         """Defaults of the cell, then the instance's own, then back-annotation; each by its visible name."""
-        limits = self._source.limits
         if instance.plain is not None and not notes and not target.defaults:
             merged = instance.plain
         else:
@@ -136,7 +151,7 @@ class PartMaker:
             for attribute in given:
                 texts[attribute.key] = (attribute.name, attribute_text(attribute, scales))
             merged = MappingProxyType(dict(texts.values()))
-        if instance.longest <= limits.name and instance.longest <= limits.text and not target.defaults:
+        if instance.longest <= self._longest and not target.defaults:
             return merged
         return self._cut(merged, start)
 

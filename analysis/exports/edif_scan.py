@@ -79,11 +79,12 @@ _RULES: Mapping[str, _Rule] = MappingProxyType(
     }
 )
 
-_HEAD = re.compile(r"\(\s*+([^\s()\"]*+)")
+# ASCII throughout: the same white space as in `sexpdata`, which takes other separators as parts of words.
+_HEAD = re.compile(r"\(\s*+([^\s()\"]*+)", re.ASCII)
 _GAP = re.compile(r"[^()\"]*+")
 _STRING = re.compile(r"\"[^\"]*+\"")
 _FORM = re.compile(BALANCED)
-_USUAL = re.compile(rf"\s*+(\(\s*+((?i:instance|net|port|property))(?=[\s()\"]){BALANCED_CONTENTS}\))")
+_USUAL = re.compile(rf"\s*+(\(\s*+((?i:instance|net|port|property))(?=[\s()\"]){BALANCED_CONTENTS}\))", re.ASCII)
 _TOKEN = re.compile(r"[()]|\"[^\"]*+\"?")
 
 

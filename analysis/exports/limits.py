@@ -13,8 +13,8 @@ class Limits:
 
     `depth` counts open brackets (or XML elements); the EDIF reader holds it exactly from 32 upward. `forms` counts
     the entries of a file that are kept, `levels` the hierarchy's depth, `blocks` the places where a hierarchical
-    cell stands in the flattened design, `array` the members of one array, `columns` the
-    cells in a row of a table.
+    cell stands in the flattened design, `paths` the characters of all names that lead through it, `array` the
+    members of one array, `columns` the cells in a row of a table.
     """
 
     bytes: int = 100_000_000
@@ -24,6 +24,7 @@ class Limits:
     pins: int = 2_000_000
     blocks: int = 100_000
     levels: int = 1_000
+    paths: int = 50_000_000
     array: int = 65_536
     name: int = 1_000
     text: int = 100_000
@@ -51,6 +52,7 @@ _WORDS = {
     "pins": "pins",
     "blocks": "hierarchical blocks",
     "levels": "levels of hierarchy",
+    "paths": "characters of names through the hierarchy",
     "array": "members of one array",
     "name": "characters in one name",
     "text": "characters in one text",
