@@ -45,6 +45,8 @@ def placed(board: Board, section: Section, volts: float | None, current: float =
     """
     a, b = node(board, section.a), node(board, section.b)
     model, name = section.model, section.name
+    if isinstance(model, CapacitorModel | InductorModel | BeadModel) and model.measured is not None:
+        return Placed(Measured(name, a, b, model.measured.impedance, model.measured.fit_elements(name, a, b)))
     if isinstance(model, BeadModel):
         return _bead(name, a, b, model, current) if model.usable else None
     if model.value is None:
@@ -74,8 +76,6 @@ def _bead(name: str, a: str, b: str, model: BeadModel, current: float) -> Placed
 
 
 def _capacitor(name: str, a: str, b: str, model: CapacitorModel, volts: float) -> Placed:
-    if model.measured is not None:
-        return Placed(Measured(name, a, b, model.measured.impedance, model.measured.fit_elements(name, a, b)))
     band = model.effective(volts)
     element = Capacitor(name, a, b, band.nominal, model.esr, model.esl, model.loss_tangent, model.leakage_resistance)
     return Placed(element, (_parameter(name, "capacitance", band),))

@@ -124,6 +124,18 @@ VALUE_BY_KIND: dict[Kind, tuple[str, ...]] = {
     "other": (),
 }
 
+# Which attributes each kind of part has.
+ATTRIBUTES: dict[str, tuple[str, ...]] = {
+    "all": ("value", "tolerance", "package", "fitted"),
+    "capacitor": (
+        *("technology", "dielectric", "rated_voltage", "polarised", "esr", "esl", "leakage_resistance"),
+        *("leakage_current", "half_voltage", "bias_curve", "ageing", "temperature_coefficient", "touchstone"),
+    ),
+    "resistor": ("temperature_coefficient",),
+    "inductor": ("dcr", "self_resonance", "saturation_current", "touchstone"),
+    "bead": ("dcr", "resistance", "inductance", "capacitance", "bias_curve", "touchstone"),
+}
+
 # Attributes whose presence with a true value means that a part is not fitted.
 NOT_FITTED = (
     "dnp",

@@ -9,6 +9,7 @@ from typing import Literal
 from reactance.analysis.parts.band import Band
 from reactance.analysis.parts.base import Model
 from reactance.analysis.parts.bias import BiasCurve
+from reactance.analysis.parts.measured import MeasuredPart
 
 # A bead known only by its impedance at 100 MHz turns from inductive to resistive near here (common practice).
 TURNING_FREQUENCY = 25e6  # Hz
@@ -27,6 +28,7 @@ class BeadModel(Model):
     nominal_inductance: float | None = None
     capacitance: float = 0.0
     bias: BiasCurve | None = None
+    measured: MeasuredPart | None = None
 
     @property
     def usable(self) -> bool:

@@ -10,6 +10,8 @@ from reactance.analysis.parts.bead import BeadModel, inductance_from_impedance
 from reactance.analysis.parts.claims import Claims
 from reactance.analysis.parts.common import Common, read_common
 from reactance.analysis.parts.inductor import InductorModel
+from reactance.analysis.parts.knowledge import Knowledge
+from reactance.analysis.parts.measured import read_measured
 from reactance.analysis.parts.resistor import SHORT_BELOW, ResistorModel
 from reactance.analysis.quantity import format_quantity
 
@@ -38,7 +40,7 @@ def build_resistor(part: Part, claims: Claims, conditions: Conditions) -> Resist
     )
 
 
-def build_inductor(part: Part, claims: Claims) -> InductorModel:
+def build_inductor(part: Part, claims: Claims, knowledge: Knowledge) -> InductorModel:
     """The model of an inductor."""
     common = read_common(claims)
     tolerance = _tolerance(claims, common, defaults.TOLERANCE_INDUCTOR)
@@ -55,11 +57,12 @@ def build_inductor(part: Part, claims: Claims) -> InductorModel:
         dcr=_dcr(claims),
         self_resonance=claims.take("self_resonance", reading.positive("Hz")),
         saturation_current=saturation,
+        measured=read_measured(claims, knowledge.files),
         **claims.closing(used=common.used),
     )
 
 
-def build_bead(part: Part, claims: Claims) -> BeadModel:
+def build_bead(part: Part, claims: Claims, knowledge: Knowledge) -> BeadModel:
     """The model of a ferrite bead, from its impedance at 100 MHz or from stated R, L and C."""
     common = read_common(claims)
     tolerance = _tolerance(claims, common, defaults.TOLERANCE_BEAD)
@@ -83,6 +86,7 @@ def build_bead(part: Part, claims: Claims) -> BeadModel:
         nominal_inductance=inductance,
         capacitance=claims.take("capacitance", reading.quantity("F")) or 0.0,
         bias=claims.take("bias_curve", reading.bias_curve("A")),
+        measured=read_measured(claims, knowledge.files),
         **claims.closing(used=common.fitted and resistance is not None),
     )
 

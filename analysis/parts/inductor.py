@@ -8,6 +8,7 @@ from typing import Literal
 
 from reactance.analysis.parts.band import Band
 from reactance.analysis.parts.base import Model
+from reactance.analysis.parts.measured import MeasuredPart
 
 # At its saturation current an inductor has lost 30 % of its inductance (common practice of makers' tables).
 LOSS_AT_SATURATION = 0.3
@@ -24,6 +25,7 @@ class InductorModel(Model):
     dcr: float = 0.0
     self_resonance: float | None = None
     saturation_current: float | None = None
+    measured: MeasuredPart | None = None
 
     @property
     def inductance(self) -> Band:

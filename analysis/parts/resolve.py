@@ -6,7 +6,7 @@ import re
 from dataclasses import replace
 
 from reactance.analysis.design import Part, Problem
-from reactance.analysis.parts.attributes import RawAttributes
+from reactance.analysis.parts.attributes import ATTRIBUTES, RawAttributes
 from reactance.analysis.parts.base import Conditions, Kind, OtherModel
 from reactance.analysis.parts.build_capacitor import build_capacitor
 from reactance.analysis.parts.build_others import build_bead, build_inductor, build_resistor
@@ -35,6 +35,7 @@ def resolve_part(part: Part, knowledge: Knowledge, conditions: Conditions) -> Pa
     """
     kind = kind_of(part, knowledge)
     claims = gather(part, kind, knowledge)
+    _tell_useless(claims)
     model = _build(part, claims, knowledge, conditions)
     if len(part.pins) > 2 and model.kind != "other" and model.fitted and not sections(model, part):
         told = Problem(
@@ -46,15 +47,24 @@ def resolve_part(part: Part, knowledge: Knowledge, conditions: Conditions) -> Pa
     return model
 
 
+def _tell_useless(claims: Claims) -> None:
+    """Tell what a `[[part]]` table states that a part of this kind does not have."""
+    if claims.kind == "other":
+        return
+    for attribute, found in claims.table.items():
+        if found[0].is_knowledge and attribute not in (*ATTRIBUTES["all"], *ATTRIBUTES[claims.kind]):
+            claims.tell("note", f"{attribute} in {found[0].source}: {claims.kind}s have no such attribute")
+
+
 def _build(part: Part, claims: Claims, knowledge: Knowledge, conditions: Conditions) -> PartModel:
     if claims.kind == "capacitor":
         return build_capacitor(part, claims, knowledge, conditions)
     if claims.kind == "resistor":
         return build_resistor(part, claims, conditions)
     if claims.kind == "inductor":
-        return build_inductor(part, claims)
+        return build_inductor(part, claims, knowledge)
     if claims.kind == "bead":
-        return build_bead(part, claims)
+        return build_bead(part, claims, knowledge)
     fitted = read_fitted(claims)
     return OtherModel(refdes=part.refdes, fitted=fitted, text=value_text(claims), **claims.closing())
 

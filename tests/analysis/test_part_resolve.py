@@ -144,6 +144,24 @@ def test_a_table_can_give_everything() -> None:
     assert model.text == "10 uF"
 
 
+@pytest.mark.parametrize(
+    ("refdes", "attribute", "useless"),
+    [
+        ("C1", "esr", False),
+        ("C1", "dcr", True),
+        ("R1", "esr", True),
+        ("R1", "temperature_coefficient", False),
+        ("L1", "half_voltage", True),
+        ("FB1", "dcr", False),
+        ("U1", "esr", False),
+    ],
+)
+def test_an_attribute_of_another_kind_is_told(refdes: str, attribute: str, useless: bool) -> None:
+    texts = {"C1": "1u", "L1": "1u", "R1": "1k", "FB1": "600R", "U1": ""}
+    model = resolve(part(refdes, VALUE=texts[refdes]), row({attribute: 1}, refdes=refdes))
+    assert any("no such attribute" in p.message and attribute in p.message for p in model.problems) == useless
+
+
 def test_a_contradiction_inside_the_export_is_told() -> None:
     model = resolve(part("C1", VALUE="100n", DESCRIPTION="CAP CER 1UF 50V X7R"))
     assert model.value == 1e-7
