@@ -56,11 +56,13 @@ def placed(board: Board, section: Section, volts: float | None, current: float =
     if isinstance(model, ResistorModel):
         band = model.resistance
         return Placed(Resistor(name, a, b, band.nominal), (_parameter(name, "resistance", band),))
-    if isinstance(model, InductorModel):
-        band = model.inductance_at(current)
-        element = Inductor(name, a, b, band.nominal, model.dcr, model.parallel_capacitance)
-        return Placed(element, (_parameter(name, "inductance", band),))
-    return None
+    return _inductor(name, a, b, model, current) if isinstance(model, InductorModel) else None
+
+
+def _inductor(name: str, a: str, b: str, model: InductorModel, current: float) -> Placed:
+    band = model.inductance_at(current)
+    element = Inductor(name, a, b, band.nominal, model.dcr, model.parallel_capacitance)
+    return Placed(element, (_parameter(name, "inductance", band),))
 
 
 def _parameter(name: str, attribute: str, band: Band) -> Parameter:
