@@ -8,20 +8,18 @@ from typing import TYPE_CHECKING
 
 import msgspec
 from flask import Blueprint, Flask, Response, current_app, render_template, request, send_file
-from werkzeug.exceptions import HTTPException
-
 from reactance.analysis.design import InputError
-from reactance.analysis.files import BoardFiles
 from reactance.analysis.quantity import QuantityError, parse_quantity
 from reactance.analysis.report import Curve
 from reactance.daemon.history import BoardRow, History, HistoryError, RevisionRow
 from reactance.dashboard import pages, plots
-from reactance.dashboard.archive import Archive
+from reactance.dashboard.archive import Analyse, Archive
 from reactance.dashboard.capacitors import capacitor_rows
 from reactance.dashboard.check_page import check_page
 from reactance.dashboard.events import RETRY_MS, Streams, state
 from reactance.dashboard.guard import protect
 from reactance.dashboard.rows import numbered
+from werkzeug.exceptions import HTTPException
 
 if TYPE_CHECKING:
     from reactance.analysis.study import Study
@@ -32,9 +30,7 @@ _IN_GROUP = 60
 views = Blueprint("views", __name__)
 
 
-def create_app(
-    history: History, *, hosts: tuple[str, ...], analyse: Callable[[BoardFiles], Study] | None = None
-) -> Flask:
+def create_app(history: History, *, hosts: tuple[str, ...], analyse: Analyse | None = None) -> Flask:
     """The application over `history`, answering only to `hosts` (values of the Host header, with port).
 
     `analyse` analyses a stored revision again for its curves; the program's own unless another is given.
@@ -99,9 +95,7 @@ def checks(board: int, scope: str) -> Response:
     group = pages.page_of_group(found, "" if scope == "other" else scope, start, _IN_GROUP)
     if group is None:
         return _missing("This board has no such checks.")
-    return _page(
-        "checks.html", _events(board), seen, head=pages.head(found), group=group, start=start, size=_IN_GROUP
-    )
+    return _page("checks.html", _events(board), seen, head=pages.head(found), group=group, start=start, size=_IN_GROUP)
 
 
 @views.get("/board/<int:board>/capacitors")

@@ -5,7 +5,7 @@ from __future__ import annotations
 import threading
 from collections import OrderedDict
 from collections.abc import Callable, Hashable
-from typing import TYPE_CHECKING, Generic, TypeVar
+from typing import TYPE_CHECKING, Generic, TypeAlias, TypeVar
 
 from reactance.analysis.files import BoardFiles
 from reactance.analysis.report import Comparison, Report
@@ -16,6 +16,7 @@ if TYPE_CHECKING:
 
 K = TypeVar("K", bound=Hashable)
 V = TypeVar("V")
+Analyse: TypeAlias = "Callable[[BoardFiles], Study]"
 
 _REPORTS = 8  # of 2,000 parts each takes a few megabytes
 _COMPARISONS = 500
@@ -62,13 +63,11 @@ class Shelf(Generic[K, V]):
 class Archive:
     """The history with what is dear to read kept at hand: reports, comparisons, and studies for curves."""
 
-    def __init__(self, history: History, analyse: Callable[[BoardFiles], Study] | None = None) -> None:
+    def __init__(self, history: History, analyse: Analyse | None = None) -> None:
         self.history = history
         self._analyse = analyse
         self._reports: Shelf[int, tuple[Report | None]] = Shelf(_REPORTS, lambda key: (history.report(key),))
-        self._stored: Shelf[int, tuple[Comparison | None]] = Shelf(
-            _COMPARISONS, lambda key: (history.comparison(key),)
-        )
+        self._stored: Shelf[int, tuple[Comparison | None]] = Shelf(_COMPARISONS, lambda key: (history.comparison(key),))
         self._compared: Shelf[tuple[int, int], Comparison] = Shelf(_REPORTS, lambda pair: history.compare(*pair))
         self._studies: Shelf[tuple[str, int], Study] = Shelf(_STUDIES, self._study)
 

@@ -45,7 +45,9 @@ def capacitor_rows(board: int, report: Report) -> tuple[CapacitorRow, ...]:
     return tuple(_row(board, entry, reasons, stress.get(f"part:{entry.refdes}:stress")) for entry in ordered)
 
 
-def _row(board: int, entry: CapacitorEntry, reasons: Mapping[tuple[str, str], Duty], check: Check | None) -> CapacitorRow:
+def _row(
+    board: int, entry: CapacitorEntry, reasons: Mapping[tuple[str, str], Duty], check: Check | None
+) -> CapacitorRow:
     duty = reasons.get((entry.duty, entry.refdes))
     effective, value = entry.effective, entry.value
     ends = words.band_words(effective.low, effective.high, "F", "") if effective else ""

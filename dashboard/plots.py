@@ -8,7 +8,6 @@ from pathlib import Path
 from typing import Literal
 
 import msgspec
-
 from reactance.analysis.report import Curve, LimitLine
 
 

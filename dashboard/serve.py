@@ -6,12 +6,13 @@ import threading
 from typing import Any
 
 from cheroot import wsgi
-
 from reactance.daemon.history import History
 from reactance.dashboard.app import create_app
+from reactance.dashboard.archive import Analyse
 from reactance.dashboard.events import VIEWERS, Streams
 
 _WORKERS = 8  # threads for answers beside those that open pages hold
+_QUEUE = 2 * VIEWERS  # all pages come back at once when a server starts again
 _OWN_NAMES = ("127.0.0.1", "localhost", "[::1]")
 
 
@@ -22,12 +23,14 @@ class ServeError(Exception):
 class Server:
     """A dashboard that is bound to its port from the beginning and answers between `start` and `stop`."""
 
-    def __init__(self, history: History, host: str, port: int) -> None:
+    def __init__(self, history: History, host: str, port: int, analyse: Analyse | None = None) -> None:
         if host not in ("127.0.0.1", "localhost", "::1"):
             raise ServeError(
                 f"{host}: the dashboard is for this machine only and listens on 127.0.0.1 (give --listen 127.0.0.1:{port})"
             )
-        self._server = wsgi.Server((host, port), _not_yet, numthreads=_WORKERS + VIEWERS, shutdown_timeout=3)
+        self._server = wsgi.Server(
+            (host, port), _not_yet, numthreads=_WORKERS + VIEWERS, request_queue_size=_QUEUE, shutdown_timeout=3
+        )
         try:
             self._server.prepare()
         except OSError as error:
@@ -37,7 +40,7 @@ class Server:
             ) from error
         self.port = int(self._server.bind_addr[1])
         self._host = f"[{host}]" if ":" in host else host
-        app = create_app(history, hosts=own_hosts(self.port))
+        app = create_app(history, hosts=own_hosts(self.port), analyse=analyse)
         self.streams: Streams = app.extensions["reactance.streams"]
         self._server.wsgi_app = app
         self._thread: threading.Thread | None = None
@@ -74,9 +77,12 @@ def own_hosts(port: int) -> tuple[str, ...]:
     return (*named, *_OWN_NAMES) if port == 80 else named
 
 
-def serve(history: History, host: str = "127.0.0.1", port: int = 8462) -> Server:
-    """A server for the history, bound and ready to `start()`. Raises ServeError where it cannot be."""
-    return Server(history, host, port)
+def serve(history: History, host: str = "127.0.0.1", port: int = 8462, *, analyse: Analyse | None = None) -> Server:
+    """A server for the history, bound and ready to `start()`. Raises ServeError where it cannot be.
+
+    `analyse` is how stored revisions are analysed again for their curves, the program's own if None.
+    """
+    return Server(history, host, port, analyse)
 
 
 def _not_yet(environ: Any, start_response: Any) -> list[bytes]:

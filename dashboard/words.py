@@ -103,7 +103,7 @@ def count(number: int, one: str, many: str | None = None) -> str:
 
 def tally(status: Mapping[Status, int]) -> str:
     """How many checks stand how, in one line."""
-    phrases = (
+    phrases: tuple[tuple[Status, str, str], ...] = (
         ("fail", "fails", "fail"),
         ("marginal", "is marginal", "are marginal"),
         ("pass", "holds", "hold"),

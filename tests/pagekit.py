@@ -111,7 +111,8 @@ class MadeStudy:
         parts = (
             PartLine(
                 "C14", "capacitor", "100nF", ("+3V3", "GND"),
-                (("C_eff", f"{70 + self.number:g} nF"), ("R_s", "20 mΩ"), ("L_s", "0.5 nH")), ("bias 3.3 V keeps 71 %",),
+                (("C_eff", f"{70 + self.number:g} nF"), ("R_s", "20 mΩ"), ("L_s", "0.5 nH")),
+                ("bias 3.3 V keeps 71 %",),
             ),
         )  # fmt: skip
         return Origin(

@@ -92,7 +92,13 @@ def look(driver: webdriver.Chrome, size: tuple[int, int], *, dark: bool) -> None
 
 
 def photograph(
-    driver: webdriver.Chrome, url: str, to: Path, size: tuple[int, int] = WIDE, *, dark: bool = False, whole: bool = False
+    driver: webdriver.Chrome,
+    url: str,
+    to: Path,
+    size: tuple[int, int] = WIDE,
+    *,
+    dark: bool = False,
+    whole: bool = False,
 ) -> None:
     """One page once its curves are drawn: what the window shows of it, or the whole of it."""
     look(driver, size, dark=dark)

@@ -10,7 +10,7 @@ import pytest
 from pagekit import Keeper, figures
 from reactance.daemon.history import History
 from reactance.dashboard.events import Stream, Streams, state
-from reactance.dashboard.serve import Server, ServeError, serve
+from reactance.dashboard.serve import ServeError, Server, serve
 
 PATIENCE = 20.0  # seconds until a test gives up; nothing is expected to take that long
 
