@@ -176,16 +176,18 @@ class History:
 
         Checks come in the order of the newest report; those that vanished follow.
         """
+        names = dict(self._database.rows("SELECT id, check_id FROM measured WHERE board = ?", (board_id,)))
         rows = self._database.rows(
-            "SELECT figure.revision, measured.check_id, figure.nominal, figure.low, figure.high, figure.margin, "
-            "figure.status, figure.verdict FROM figure JOIN measured ON measured.id = figure.measured "
-            "WHERE figure.revision IN (SELECT id FROM revision WHERE board = ? AND error IS NULL "
-            "ORDER BY id DESC LIMIT ?) ORDER BY figure.revision, figure.measured",
+            "SELECT revision, measured, nominal, low, high, margin, status, verdict FROM figure "
+            "WHERE revision IN (SELECT id FROM revision WHERE board = ? AND error IS NULL "
+            "ORDER BY id DESC LIMIT ?) ORDER BY revision, measured",
             (board_id, most),
         )
-        cells: dict[str, list[StripCell]] = {}
-        for row in rows:
-            cells.setdefault(row[1], []).append(StripCell(*row))
+        cells: dict[str, list[StripCell]] = {name: [] for name in names.values()}
+        for revision, measured, *figures in rows:
+            name = names[measured]
+            cells[name].append(StripCell(revision, name, *figures))
+        cells = {name: found for name, found in cells.items() if found}
         return MappingProxyType({check: tuple(found) for check, found in self._ordered(board_id, cells)})
 
     def _ordered(self, board_id: int, cells: Mapping[str, list[StripCell]]) -> list[tuple[str, list[StripCell]]]:
