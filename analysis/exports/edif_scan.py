@@ -14,6 +14,7 @@ from types import MappingProxyType
 from reactance.analysis.design import InputError
 from reactance.analysis.exports.edif_forms import parsed, pruned
 from reactance.analysis.exports.edif_source import Source
+from reactance.analysis.exports.text import visible
 from reactance.analysis.exports.edif_words import BALANCED, BALANCED_CONTENTS, BALANCED_DEPTH
 
 
@@ -180,7 +181,7 @@ class _Scan:
             if keyword == "keywordmap":
                 self._keyword_map(start, end)
         elif keyword not in rule.others:
-            shown = f"({head.group(1)[:40]} …)" if head.group(1) else "a form without keyword"
+            shown = f"({visible(head.group(1)[:40])} …)" if head.group(1) else "a form without keyword"
             self.source.problem("caution", start, f"{shown} has no meaning in ({within.keyword} …); passed over")
         return end
 
@@ -241,7 +242,7 @@ class _Scan:
 
     def _unclosed(self, start: int) -> InputError:
         head = _HEAD.match(self.text, start)
-        shown = head.group(1)[:40] if head else ""
+        shown = visible(head.group(1)[:40]) if head else ""
         message = f"the file ends inside ({shown} …), which begins here; expected ')'"
         return InputError(message, self.source.place(start), "the file is cut off, or a bracket is missing")
 
