@@ -18,6 +18,9 @@ CLASS_LETTERS: dict[str, Kind] = {
     "CA": "capacitor",  # * capacitor array
     "BEAD": "bead",  # *
     "FER": "bead",  # *
+    "CAP": "capacitor",  # *
+    "RES": "resistor",  # *
+    "IND": "inductor",  # *
 }
 
 OTHER_LETTERS = frozenset(
@@ -33,13 +36,18 @@ OTHER_LETTERS = frozenset(
 PERHAPS_CAPACITOR = frozenset(("CN", "CP", "TC", "FT", "FL", "CT", "CE", "CX", "CY", "EC"))
 
 _LETTERS = re.compile(r"([A-Za-z]+)(?=[\d?*_]|$)")
+_LAST_WORD = re.compile(r".*[_-]([A-Za-z]+)\d+[A-Za-z]?")
 
 
 def class_letters(refdes: str) -> str:
-    """The letters that a designator begins with, after any path: `PSU/C5`, `A1.C5` and `C5A` give `C`."""
-    last = re.split(r"[/.:\\]", refdes.strip())[-1]
-    match = _LETTERS.match(last)
-    return match[1].upper() if match else ""
+    """The letters that a designator begins with, after any path: `PSU/C5`, `A1.C5`, `PSU_C5` and `C5A` give `C`."""
+    for level in reversed(re.split(r"[/.:\\]", refdes.strip())):
+        match = _LETTERS.match(level)
+        if match:
+            letters, word = match[1].upper(), _LAST_WORD.fullmatch(level)
+            known = letters in CLASS_LETTERS or letters in OTHER_LETTERS
+            return letters if known or not word else word[1].upper()
+    return ""
 
 
 def kind_by_refdes(refdes: str) -> Kind | None:

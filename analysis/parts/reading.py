@@ -15,7 +15,7 @@ from reactance.analysis.parts.claims import Claim
 from reactance.analysis.parts.codes import parse_tolerance
 from reactance.analysis.parts.descriptions import TECHNOLOGY_WORDS, parse_description
 from reactance.analysis.parts.dielectrics import Dielectric, parse_dielectric
-from reactance.analysis.parts.values import UNIT_OF_KIND, Value, parse_value
+from reactance.analysis.parts.values import GREATEST, UNIT_OF_KIND, Value, parse_value
 from reactance.analysis.quantity import QuantityError, Unit, parse_quantity
 
 TECHNOLOGIES = frozenset(("ceramic", "film", "aluminium", "tantalum", "polymer"))
@@ -47,7 +47,8 @@ def value(kind: Kind) -> Callable[[Claim], Value]:
 
     def read(claim: Claim) -> Value:
         if isinstance(claim.raw, int | float) and not isinstance(claim.raw, bool):
-            return Value(parse_quantity(claim.raw, UNIT_OF_KIND[kind]))
+            number = quantity(UNIT_OF_KIND[kind], 0.0 if kind == "resistor" else 5e-324, GREATEST[kind])(claim)
+            return Value(number)
         return parse_value(claim.text, kind)
 
     return read
@@ -60,12 +61,23 @@ def tolerance(nominal: float | None) -> Callable[[Claim], tuple[float, float]]:
         if isinstance(claim.raw, int | float) and not isinstance(claim.raw, bool):
             low, high = -float(claim.raw), float(claim.raw)
         else:
-            low, high = parse_tolerance(claim.text, nominal)
+            low, high = _tolerance_in(claim.text, nominal)
         if not -1.0 < low <= high:
             raise QuantityError(f"{claim.text!r} is no tolerance that a part can have")
         return low, high
 
     return read
+
+
+def _tolerance_in(text: str, nominal: float | None) -> tuple[float, float]:
+    """A tolerance alone or within other words (`±10 % (K)`)."""
+    try:
+        return parse_tolerance(text, nominal)
+    except QuantityError:
+        piece = parse_description(text, "other").get("tolerance")
+        if piece is None:
+            raise
+        return parse_tolerance(piece, nominal)
 
 
 def switch(claim: Claim) -> bool:

@@ -76,7 +76,7 @@ def kind_of(part: Part, knowledge: Knowledge) -> Kind:
     if kind == "other" and class_letters(part.refdes) in PERHAPS_CAPACITOR and _any_value(texts, "capacitor"):
         return "capacitor"
     if kind is None:
-        return _kind_by_words(texts)
+        return _kind_by_words(class_letters(part.refdes), texts)
     if kind in ("inductor", "bead"):
         return _coil(kind, texts)
     if kind == "resistor" and any(_OTHER_WORD.search(text) for text in texts):
@@ -101,15 +101,16 @@ def _coil(kind: Kind, texts: tuple[str, ...]) -> Kind:
     return kind
 
 
-def _kind_by_words(texts: tuple[str, ...]) -> Kind:
-    """The kind of a part whose designator has no known class letters."""
+def _kind_by_words(letters: str, texts: tuple[str, ...]) -> Kind:
+    """The kind of a part whose designator has no known class letters (`CIN`, `I17`): by its words and value."""
+    if any(_OTHER_WORD.search(text) for text in texts):
+        return "other"
     for text in texts:
-        if _OTHER_WORD.search(text):
-            return "other"
         for word, kind in _KINDS_BY_WORD:
             if word.search(text) and _any_value(texts, kind):
                 return kind
-    return "other"
+    first = kind_by_refdes(letters[:1])
+    return first if first and first != "other" and _any_value(texts, first) else "other"
 
 
 _KINDS_BY_WORD: tuple[tuple[re.Pattern[str], Kind], ...] = (
@@ -125,8 +126,9 @@ def _any_value(texts: tuple[str, ...], kind: Kind) -> bool:
 
 
 def _is_value(text: str, kind: Kind) -> bool:
+    """Whether a text is a value with its unit, which a bare number is not."""
     try:
         parse_value(text, kind)
     except QuantityError:
         return False
-    return not text.strip().isdigit()
+    return any(character.isalpha() for character in text)

@@ -221,6 +221,16 @@ def test_the_brief_decides_what_is_fitted() -> None:
         ("A1.C5", {}, "capacitor"),
         ("C?", {}, "capacitor"),
         ("c7", {}, "capacitor"),
+        ("C5.1", {}, "capacitor"),
+        ("PSU_C5", {}, "capacitor"),
+        ("C_IN", {}, "capacitor"),
+        ("CAP3", {}, "capacitor"),
+        ("CIN", {"VALUE": "10uF"}, "capacitor"),
+        ("CIN", {"VALUE": "whatever"}, "other"),
+        ("RFB2", {"VALUE": "10k"}, "resistor"),
+        ("REF1", {"VALUE": "2.5"}, "other"),
+        ("RELAY1", {"VALUE": "5V"}, "other"),
+        ("LOUT", {"VALUE": "2u2"}, "inductor"),
         ("CN1", {"VALUE": "header 2x5"}, "other"),
         ("CN1", {"VALUE": "4x100nF"}, "other"),
         ("CN1", {"VALUE": "100nF"}, "capacitor"),
@@ -330,6 +340,28 @@ def test_bead_stated_in_full_with_bias() -> None:
     assert not model.assumptions or {a.attribute for a in model.assumptions} == {"dcr"}
 
 
+@pytest.mark.parametrize(
+    ("name", "text", "attribute", "wanted"),
+    [
+        ("TOL", "±10 % (K)", "tolerance", (-0.1, 0.1)),
+        ("TOL", "10% max", "tolerance", (-0.1, 0.1)),
+        ("VOLTAGE", "16 V DC", "rated_voltage", 16.0),
+        ("VOLTAGE", "25WV", "rated_voltage", 25.0),
+        ("VOLTAGE", "50V max", "rated_voltage", 50.0),
+        ("PACKAGE", "0603 (1608 Metric)", "package", "0603"),
+        ("FOOTPRINT", "lib:C_0805_2012Metric", "package", "0805"),
+        ("DIELECTRIC", "Ceramic X7R", "dielectric", "X7R"),
+        ("DIELECTRIC", "x5r", "dielectric", "X5R"),
+        ("TYPE", "Tantalum, moulded", "technology", "tantalum"),
+        ("ESR", "20m", "esr", 0.02),
+    ],
+)
+def test_attributes_with_words_around_them(name: str, text: str, attribute: str, wanted: object) -> None:
+    model = resolve(part("C1", VALUE="1uF", **{name: text}))
+    assert getattr(model, attribute) == wanted
+    assert not any(text in problem.message for problem in model.problems)
+
+
 def test_a_parasitic_misread_by_capitals_is_refused() -> None:
     model = resolve(part("L1", VALUE="10uH", DCR="45MOHM"))
     assert isinstance(model, InductorModel)
@@ -345,6 +377,7 @@ def test_a_parasitic_misread_by_capitals_is_refused() -> None:
         ({"esr": -1}, "esr"),
         ({"esl": "5 ohm"}, "esl"),
         ({"value": "ten"}, "value"),
+        ({"value": -1}, "value"),
         ({"tolerance": "lots"}, "tolerance"),
         ({"technology": "vacuum"}, "technology"),
         ({"dielectric": "X7Q"}, "dielectric"),
