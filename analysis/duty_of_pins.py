@@ -58,8 +58,9 @@ def _around_amplifier(capacitor: Branch, view: View) -> Found | None:
 def _around_part(capacitor: Branch, view: View) -> Found | None:
     """Between output and inverting input of a part that the brief does not describe."""
     topology = view.topology
-    beside = [b for b in topology.series(capacitor.a) if b.other(capacitor.a) == capacitor.b and b.kind == "resistor"]
-    for one, other in topology.shared_parts(capacitor.a, capacitor.b):
+    near, far = (capacitor.b, capacitor.a) if topology.is_fixed(capacitor.a) else (capacitor.a, capacitor.b)
+    beside = [branch for branch in topology.on(near) if branch.other(near) == far and branch.kind == "resistor"]
+    for one, other in topology.shared_parts(near, far):
         if one.prefix in pin_roles.CONNECTORS | pin_roles.PROBES or pin_roles.are_a_pair(one.name, other.name):
             continue
         ends = {pin_roles.role(one), pin_roles.role(other)}
@@ -77,8 +78,10 @@ def _gain_leg(capacitor: Branch, view: View) -> Found | None:
     """In series with a resistor, in either order, from an inverting input to ground or a rail."""
     topology = view.topology
     for middle, far in ((capacitor.a, capacitor.b), (capacitor.b, capacitor.a)):
+        if topology.is_fixed(middle) or topology.pins(middle) or len(topology.on(middle)) != 2:
+            continue
         others = [branch for branch in topology.on(middle) if branch is not capacitor]
-        if topology.is_fixed(middle) or topology.pins(middle) or [b.kind for b in others] != ["resistor"]:
+        if [branch.kind for branch in others] != ["resistor"]:
             continue
         onward = others[0].other(middle)
         for inverting, end in ((onward, far), (far, onward)):
@@ -99,8 +102,10 @@ def _into_own_input(capacitor: Branch, view: View) -> Found | None:
     """From an output over a resistor to an input of the same amplifier, as in an active filter with one amplifier."""
     topology = view.topology
     for near, far in ((capacitor.a, capacitor.b), (capacitor.b, capacitor.a)):
+        if topology.is_fixed(near) or topology.is_fixed(far):
+            continue
         outputs = [pin for pin in topology.pins(near) if pin.prefix == "U" and pin_roles.role(pin) == "driver"]
-        for branch in topology.series(far) if outputs and not topology.is_fixed(near) else ():
+        for branch in topology.series(far) if outputs else ():
             for pin in topology.pins(branch.other(far)):
                 for output in outputs:
                     if branch.other(far) != near and _is_input_of(pin, output, topology):
