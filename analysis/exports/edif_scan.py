@@ -14,8 +14,8 @@ from types import MappingProxyType
 from reactance.analysis.design import InputError
 from reactance.analysis.exports.edif_forms import parsed, pruned
 from reactance.analysis.exports.edif_source import Source
-from reactance.analysis.exports.text import visible
 from reactance.analysis.exports.edif_words import BALANCED, BALANCED_CONTENTS, BALANCED_DEPTH
+from reactance.analysis.exports.text import visible
 
 
 @dataclass(slots=True)
@@ -209,7 +209,7 @@ class _Scan:
             if len(word.split()) == 1:
                 return
             word = word.split()[1]
-        shown = word[:40]
+        shown = visible(word[:40])
         self.source.problem("caution", offset, f"the word {shown} has no meaning in ({within.keyword} …); passed over")
 
     def _stray_string(self, start: int) -> int:
