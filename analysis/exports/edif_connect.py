@@ -69,7 +69,8 @@ class Connector:
             self._source.check("parts", len(self._parts), self._view.cell.start)
             for entry in scope.entries:
                 if isinstance(entry.value, says.Net):
-                    self._net(entry.value, position, entry)
+                    if not self._plain_net(entry.value, position, entry.start):
+                        self._net(entry.value, position, entry)
                 elif isinstance(entry.value, says.NetBundle):
                     self._report(entry, entry.value.faults)
                     for net in entry.value.nets:
@@ -88,9 +89,9 @@ class Connector:
                 for instance in value.instances:
                     self._instance(instance, entry, known)
             elif isinstance(value, says.OffPage):
-                node = self._connectors.get(_merge_key(value.name))
+                node = self._connectors.get(says.merge_key(value.name))
                 if node is None:
-                    node = self._connectors[_merge_key(value.name)] = self._new_node("", entry.start)
+                    node = self._connectors[says.merge_key(value.name)] = self._new_node("", entry.start)
                 self._connectors[value.name.key] = node
 
     def _instance(
@@ -130,40 +131,40 @@ class Connector:
         if net.name.key in self._by_key[scope]:
             self._source.problem("caution", entry.start, f"net {net.name.text} stands twice; taken as one net")
         self._by_key[scope].add(net.name.key)
-        pins = self._plain_pins(net, scope)
-        if pins is not None:
-            (node,) = self._net_nodes(net.name, 1, entry.start)
-            for on, bit in pins:
-                on[bit] = node
-            return [node]
         ends = [self._ends(ref, scope, net.name, entry) for ref in net.refs]
         self._end_count += sum(map(len, ends))
         self._source.check("pins", self._end_count, entry.start)
         width = net.name.width if net.name.size else self._bus_width(net, ends)
-        nodes = self._net_nodes(net.name, width, entry.start)
+        nodes = self._net_nodes(net, width, entry.start)
         for ref, reached in zip(net.refs, ends, strict=True):
             self._attach(nodes, reached, net, ref, entry)
         for inner in net.inner:
             self._nest(nodes, net, inner, scope, entry)
         return nodes
 
-    def _plain_pins(self, net: says.Net, scope: int) -> list[tuple[dict[int, int], int]] | None:
-        """Where to note the net's node, if it joins nothing but single free pins of single instances: the short way,
-        which nearly every net goes."""
-        if net.plain is None:
-            return None
-        known, parts = self._scopes[scope], self._parts
+    def _plain_net(self, net: says.Net, scope: int, start: int) -> bool:
+        """Take in a net that joins nothing but single free pins of single instances: the short way for nearly every
+        net. False, and nothing done, where it is not so."""
+        known, parts, keys = self._scopes[scope], self._parts, self._by_key[scope]
+        if net.plain is None or net.name.key in keys or len(net.name.text) > self._source.limits.name:
+            return False
         pins: list[tuple[dict[int, int], int]] = []
         for port, instance in net.plain:
             found = known.get(instance)
             if found is None or found[1] != 1:
-                return None
+                return False
             part = parts[found[0]]
             group = part.interface.groups.get(port)
             if group is None or len(group.bits) != 1 or group.bits[0] in part.nodes:
-                return None
+                return False
             pins.append((part.nodes, group.bits[0]))
-        return pins
+        keys.add(net.name.key)
+        node = self._by_name.get(net.merge)
+        if node is None:
+            node = self._by_name[net.merge] = self._new_node(net.name.text, start)
+        for on, bit in pins:
+            on[bit] = node
+        return True
 
     def _bus_width(self, net: says.Net, ends: list[list[_End]]) -> int:
         """How many conductors a net without stated members has.
@@ -177,9 +178,10 @@ class Connector:
         buses = sum(not isinstance(ref, says.PortList) for ref in net.refs)
         return widths.pop() if buses or len(net.refs) > 1 else 1
 
-    def _net_nodes(self, name: Name, width: int, start: int) -> list[int]:
+    def _net_nodes(self, net: says.Net, width: int, start: int) -> list[int]:
+        name = net.name
         if width == 1 and not name.size:
-            names, keys = [name.text], [_merge_key(name)]
+            names, keys = [name.text], [net.merge]
         else:
             names = keys = member_names(Name(name.key, name.text, name.size or (width,)))
         nodes = []
@@ -337,32 +339,27 @@ class Connector:
     def _compressed(self) -> Netlist:
         """Nodes renumbered without gaps."""
         nodes = self._nodes
+        result = Netlist(self._view, self._parts, pins=sum([len(part.interface.bits) for part in self._parts]))
         number: dict[int, int] = {}
-        result = Netlist(self._view, self._parts)
         renumbered: list[int] = []
         for node, name in enumerate(self._names):
-            root = nodes.root(node)
+            root = nodes.root(node) if nodes.joined else node
             new = number.get(root)
             if new is None:
                 new = number[root] = len(result.names)
-                result.names.append([])
+                result.names.append([name] if name else [])
                 result.starts.append(self._starts[node])
-            renumbered.append(new)
-            if name:
+            elif name:
                 result.names[new].append(name)
+            renumbered.append(new)
         for part in self._parts:
-            part.nodes = {bit: renumbered[node] for bit, node in part.nodes.items()}
+            if nodes.joined:
+                part.nodes = {bit: renumbered[node] for bit, node in part.nodes.items()}
             if len(part.nodes) == 1 and not part.refdes:
                 part.symbol = part.symbol or is_mark(part, result.names[next(iter(part.nodes.values()))])
-        result.pins = sum([len(part.interface.bits) for part in self._parts])
         result.ports = {bit: renumbered[node] for bit, node in self._ports.items()}
         result.globals = {key: (name, renumbered[node]) for key, (name, node) in self._globals.items()}
         return result
-
-
-def _merge_key(name: Name) -> str:
-    """Nets of equal merge key in one cell are one net: visible names exactly, identifiers without regard to case."""
-    return name.text if name.renamed else name.key
 
 
 def netlists(

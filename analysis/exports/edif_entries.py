@@ -90,6 +90,7 @@ class Net(NamedTuple):
     """`(net …)`, with what it joins, the nets in it and instances drawn inside it.
 
     `plain` is what it joins as (port, instance), both as keys, where that is all there is to it: the usual case.
+    Nets of equal `merge` key in one cell are one net: visible names exactly, identifiers without regard to case.
     """
 
     name: Name
@@ -98,6 +99,7 @@ class Net(NamedTuple):
     instances: tuple[Instance, ...] = ()
     faults: tuple[str, ...] = ()
     plain: tuple[tuple[str, str], ...] | None = None
+    merge: str = ""
 
 
 class NetBundle(NamedTuple):
@@ -328,8 +330,13 @@ def _net(form: Sexp) -> Net:
         except BadEntryError as error:
             faults.append(str(error))
     said = tuple(f"net {declared.text}: {fault}" for fault in faults)
-    plain = None if inner or declared.size else _plain(refs)
-    return Net(declared, tuple(refs), tuple(inner), tuple(instances), said, plain)
+    plain = None if inner or instances or faults or declared.size else _plain(refs)
+    return Net(declared, tuple(refs), tuple(inner), tuple(instances), said, plain, merge_key(declared))
+
+
+def merge_key(declared: Name) -> str:
+    """What makes nets or off-page connectors of one cell the same."""
+    return declared.text if declared.renamed else declared.key
 
 
 def _plain(refs: list[Ref]) -> tuple[tuple[str, str], ...] | None:

@@ -6,10 +6,11 @@ from __future__ import annotations
 class Nodes:
     """Nodes numbered from 0, joined into sets; the lowest number of a set stands for it."""
 
-    __slots__ = ("parent",)
+    __slots__ = ("joined", "parent")
 
     def __init__(self) -> None:
         self.parent: list[int] = []
+        self.joined = False
 
     def __len__(self) -> int:
         return len(self.parent)
@@ -30,6 +31,7 @@ class Nodes:
 
     def join(self, one: int, other: int) -> int:
         """Make two sets one; the node that stands for it."""
+        self.joined = True
         one, other = self.root(one), self.root(other)
         if one > other:
             one, other = other, one
