@@ -9,7 +9,7 @@ written as poles and residues, so that everything downstream sees one form and n
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -82,7 +82,7 @@ def first(found: PoleResidue) -> PoleResidue:
 def expand(system: System, drive: Drive, probe: tuple[str, str]) -> PoleResidue:
     """Poles and residues (V, n) of the probe's response to `drive`."""
     poles, at_zero = find_roots(Question(system, drive, probe))
-    poles, residues = _residues(system, drive, probe, poles)
+    poles, residues = residues_at(poles, lambda s: system.respond(s, drive, probe))
     ends = np.array([[NEAR_ZERO, NEAR_INFINITY]], complex)
     low, high = system.respond(ends, drive, probe).T
     if at_zero and (np.abs(low) > 1e20).any():
@@ -120,10 +120,13 @@ def _judge(system: System, drive: Drive, probe: tuple[str, str], found: PoleResi
     return found
 
 
-def _residues(
-    system: System, drive: Drive, probe: tuple[str, str], poles: ComplexArray
+def residues_at(
+    poles: ComplexArray, respond: Callable[[ComplexArray], ComplexArray]
 ) -> tuple[ComplexArray, ComplexArray]:
-    """Poles (V, n') and residues, groups replaced by their circles."""
+    """Poles (V, n') and residues of a response, given its poles (V, n): groups of poles become circles.
+
+    `respond` gives the response (V, F) at s (V, F). NaN among the poles stands for none.
+    """
     missing = np.isnan(poles)
     poles = np.where(missing, -1.0, poles)
     if not poles.shape[1]:
@@ -136,13 +139,13 @@ def _residues(
     upper = np.flatnonzero((poles.imag >= 0).any(axis=0))
     offset = radius[:, upper, None] * turn
     points = (single[:, upper, None] + offset).reshape(len(poles), -1)
-    around = system.respond(points, drive, probe).reshape(offset.shape)
+    around = respond(points).reshape(offset.shape)
     alone[:, upper] = (around * offset).mean(axis=-1)
     alone = _share_conjugates(poles, alone)
     alone = np.where(missing, 0.0, alone)
     if not any(groups):
         return poles, alone
-    return _with_groups(system, drive, probe, poles, alone, groups)
+    return _with_groups(respond, poles, alone, groups)
 
 
 def _share_conjugates(poles: ComplexArray, residues: ComplexArray) -> ComplexArray:
@@ -214,9 +217,7 @@ def _grow(p: ComplexArray, members: set[int]) -> _Group | None:
 
 
 def _with_groups(
-    system: System,
-    drive: Drive,
-    probe: tuple[str, str],
+    respond: Callable[[ComplexArray], ComplexArray],
     poles: ComplexArray,
     residues: ComplexArray,
     groups: Sequence[Sequence[_Group]],
@@ -232,5 +233,5 @@ def _with_groups(
             nodes[row, span] = group.centre + group.radius * turn
             weights[row, span] = group.radius * turn / _GROUP_NODES
             residues[row, list(group.members)] = 0.0
-    weights = weights * np.where(weights != 0, system.respond(nodes, drive, probe), 0.0)
+    weights = weights * np.where(weights != 0, respond(nodes), 0.0)
     return np.concatenate([poles, nodes], axis=1), np.concatenate([residues, weights], axis=1)

@@ -16,7 +16,6 @@ from reactance.analysis.circuit.network import CircuitError, ComplexArray, Float
 from reactance.analysis.circuit.roots import Question, find_roots
 from reactance.analysis.circuit.system import NEAR_INFINITY, NEAR_ZERO, System
 
-Number = float | FloatArray
 _PER_DECADE = 24
 _BLIND_PER_DECADE = 150  # where measured data without a fit hides the poles
 _CANDIDATES = 4
@@ -25,8 +24,7 @@ _CANDIDATES = 4
 class Response:
     """Voltage at `probe` per unit of `source` over frequency, for one or (with `values` (V, P)) many sets of values.
 
-    Results are floats and (F,) arrays without `values`, (V,) and (V, F) arrays with them. Where something does not
-    exist the answer is NaN (in a batch) or None.
+    Results are arrays (V,) and (V, F), with V = 1 without `values`. Where something does not exist the answer is NaN.
     """
 
     def __init__(
@@ -39,7 +37,6 @@ class Response:
         values: ArrayLike | None = None,
     ) -> None:
         grid = None if values is None else np.asarray(values, float)
-        self.batched = values is not None
         self.source = source
         self.system = System(network, over_time=False, parameters=parameters, values=grid)
         self.probe = self.system.probe(probe)
@@ -48,25 +45,28 @@ class Response:
         self._rates: FloatArray | None = None
 
     def at(self, frequencies: ArrayLike) -> ComplexArray:
-        """H at frequencies (F,) in Hz."""
-        found = self._at(np.atleast_1d(np.asarray(frequencies, float))[None, :])
-        return found if self.batched else found[0]
+        """H (V, F) at frequencies (F,) in Hz."""
+        return self._at(np.atleast_1d(np.asarray(frequencies, float))[None, :])
+
+    def size_at(self, frequency: float) -> FloatArray:
+        """|H| (V,) at one frequency in Hz."""
+        return np.asarray(np.abs(self.at(frequency))[:, 0])
 
     def grid(self, low: float, high: float) -> FloatArray:
         """Frequencies from `low` to `high` between which the response holds no surprise, (F,)."""
         return np.unique(self._grid(low, high))
 
-    def greatest(self, low: float, high: float) -> tuple[Number, Number]:
+    def greatest(self, low: float, high: float) -> tuple[FloatArray, FloatArray]:
         """Where |H| is greatest in [low, high], and how great."""
         return self._extreme(low, high, 1.0)
 
-    def least(self, low: float, high: float) -> tuple[Number, Number]:
+    def least(self, low: float, high: float) -> tuple[FloatArray, FloatArray]:
         """Where |H| is least in [low, high], and how small."""
         return self._extreme(low, high, -1.0)
 
     def local_maxima(self, low: float, high: float) -> tuple[tuple[float, float], ...]:
         """Every local maximum strictly inside (low, high): (frequency, |H|), by frequency. Not for a batch."""
-        if self.batched:
+        if self.system.count != 1:
             raise ValueError("local maxima are listed for one set of values")
         f = self._grid(low, high)
         size = np.abs(self._at(f))
@@ -77,8 +77,8 @@ class Response:
         at, top = self._polish(f, size, choice, 1.0)
         return tuple((float(x), float(y)) for x, y in zip(at[0], top[0], strict=True))
 
-    def highest_local_maximum(self, low: float, high: float) -> tuple[Number, Number]:
-        """The highest local maximum strictly inside (low, high); NaN where there is none."""
+    def greatest_local_maximum(self, low: float, high: float) -> tuple[FloatArray, FloatArray]:
+        """The greatest local maximum strictly inside (low, high); NaN where there is none."""
         f = self._grid(low, high)
         size = np.abs(self._at(f))
         score = np.where(_inside_peaks(size), size, -np.inf)
@@ -87,17 +87,14 @@ class Response:
         top = np.where(np.isfinite(np.take_along_axis(score, choice, 1)), top, -np.inf)
         rows, best = np.arange(len(f)), top.argmax(axis=1)
         none = np.isneginf(top[rows, best])
-        return (
-            self._out(np.where(none, np.nan, at[rows, best])),
-            self._out(np.where(none, np.nan, top[rows, best])),
-        )
+        return np.where(none, np.nan, at[rows, best]), np.where(none, np.nan, top[rows, best])
 
     def falls_through(
         self, level: ArrayLike, from_frequency: ArrayLike, direction: Literal["up", "down"], until: float
-    ) -> Number | None:
+    ) -> FloatArray:
         """Going from `from_frequency` up or down to `until`, where |H| first falls through `level`.
 
-        `level` and `from_frequency` may be (V,). None (in a batch, NaN) where it does not.
+        `level` and `from_frequency` may be (V,). NaN where it does not.
         """
         count = self.system.count
         start = np.broadcast_to(np.asarray(from_frequency, float), (count,))
@@ -114,15 +111,9 @@ class Response:
         a = f[rows, np.maximum(first - 1, 0)]
         b = f[rows, first]
         found = self._cross(a, b, levels)
-        answer = np.where(exists, found, np.nan)
-        if self.batched:
-            return answer
-        return float(answer[0]) if exists[0] else None
+        return np.where(exists, found, np.nan)
 
     # within
-
-    def _out(self, x: FloatArray) -> Number:
-        return x if self.batched else float(x[0])
 
     def _at(self, f: FloatArray) -> ComplexArray:
         return evaluate(self.system, self.source, self.probe, f)
@@ -168,7 +159,7 @@ class Response:
         f = np.where(np.isnan(f), low[:, None], f)
         return np.sort(np.clip(f, low[:, None], high[:, None]), axis=1)
 
-    def _extreme(self, low: float, high: float, sign: float) -> tuple[Number, Number]:
+    def _extreme(self, low: float, high: float, sign: float) -> tuple[FloatArray, FloatArray]:
         f = self._grid(low, high)
         size = sign * np.abs(self._at(f))
         padded = np.pad(size, ((0, 0), (1, 1)), constant_values=-np.inf)
@@ -177,7 +168,7 @@ class Response:
         at, top = self._polish(f, sign * size, choice, sign)
         rows = np.arange(len(f))
         best = (sign * top).argmax(axis=1)
-        return self._out(at[rows, best]), self._out(top[rows, best])
+        return at[rows, best], top[rows, best]
 
     def _polish(
         self, f: FloatArray, size: FloatArray, choice: NDArray[np.intp], sign: float

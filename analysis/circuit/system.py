@@ -278,6 +278,30 @@ class System:
         x = np.linalg.solve(eq.matrix, eq.rhs[..., None])[..., 0]
         return np.asarray(x @ eq.observe + eq.known)
 
+    def transfers(self, s: ComplexArray, probe: tuple[str, str]) -> ComplexArray:
+        """Probe voltage per unit of current that flows within each branch from a to b, all sources at zero.
+
+        s (V, F); returns (V, F, m) in the order of `branches`. One adjoint solve serves all branches (Director and
+        Rohrer, IEEE Trans. Circuit Theory 16 (1969) 318).
+        """
+        answer = np.empty((self.count, s.shape[1], len(self.branches)), complex)
+        silent = Drive(
+            np.zeros(len(self.branches)), np.zeros(len(self.parts.ideal)), np.zeros(len(self.parts.currents))
+        )
+        for forest, where in self.groups(s):
+            layout = _Layout(self, forest, silent, probe)
+            answer[:, where] = self.nudged(s[:, where], lambda x, one=layout: self._adjoint(one, x))  # type: ignore[misc]
+        return answer
+
+    def _adjoint(self, layout: _Layout, s: ComplexArray) -> ComplexArray:
+        matrix, _ = layout.assemble([self.admittances(s, True), self.admittances(s, False)], s)
+        seek = np.broadcast_to(layout.observe, matrix.shape[:-1])
+        dual = np.linalg.solve(np.swapaxes(matrix, -1, -2), seek[..., None])[..., 0]
+        for row in layout.gain_unknowns:
+            dual[..., row] = 0.0
+        paths = np.concatenate(layout.paths)[:, layout.unknown]
+        return np.asarray(-dual @ paths.T)
+
     def nudged(self, s: ComplexArray, work: Callable[[ComplexArray], T]) -> T:
         """`work` at s; where that is exactly on a pole, right beside it. Raises `CircuitError` if singular anywhere."""
         for shift in (0.0, 3e-16, 7e-15):
@@ -311,6 +335,7 @@ class _Layout:
         self.fixed = np.flatnonzero(is_known)
         self.levels = np.array([drive.ideal[forest.chosen[k]] for k in self.fixed])
         self.gain_rows = [(k, i - ideal) for k, i in enumerate(forest.chosen) if ideal <= i < ideal + gains]
+        self.gain_unknowns = [int(np.flatnonzero(self.unknown == k)[0]) for k, _ in self.gain_rows]
         self.gain_parts = system.parts.gains
         edges = system.edges[ideal + gains :]
         split = system.fixed
