@@ -26,7 +26,8 @@ class Server:
     def __init__(self, history: History, host: str, port: int, analyse: Analyse | None = None) -> None:
         if host not in ("127.0.0.1", "localhost", "::1"):
             raise ServeError(
-                f"{host}: the dashboard is for this machine only and listens on 127.0.0.1 (give --listen 127.0.0.1:{port})"
+                f"{host}: the dashboard is for this machine only and listens on 127.0.0.1 "
+                f"(give --listen 127.0.0.1:{port})"
             )
         self._server = wsgi.Server(
             (host, port), _not_yet, numthreads=_WORKERS + VIEWERS, request_queue_size=_QUEUE, shutdown_timeout=3

@@ -1,7 +1,7 @@
 """Plays the demonstration into a fresh history and photographs the dashboard.
 
     python tests/dashboard/screenshots.py [FOLDER]            the README's pictures
-    python tests/dashboard/screenshots.py FOLDER --all        every page, light and dark, wide and narrow, for looking at
+    python tests/dashboard/screenshots.py FOLDER --all        every page, light and dark, wide and narrow
     python tests/dashboard/screenshots.py FOLDER --all URL    the same of a dashboard that is running
 
 FOLDER is where the pictures go, `.pictures` of the repository where none is named. Needs Debian's chromium and
