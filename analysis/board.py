@@ -19,7 +19,7 @@ from reactance.analysis.design import Design, InputError, Part, Pin, Place, Prob
 from reactance.analysis.files import BoardFiles as BoardFiles
 from reactance.analysis.files import wanted_files as wanted_files
 from reactance.analysis.net_kinds import NetClass, classify_nets
-from reactance.analysis.parts.knowledge import Knowledge, KnowledgeRow, validate_knowledge
+from reactance.analysis.parts.knowledge import Knowledge, KnowledgeRow, validate_knowledge, validate_settings
 from reactance.analysis.parts.models import CapacitorModel, Conditions, PartModel, ResistorModel
 from reactance.analysis.parts.resolve import resolve_part
 from reactance.analysis.parts.sections import sections, through
@@ -185,12 +185,14 @@ def gather_knowledge(brief: Brief, files: Mapping[str, bytes]) -> Knowledge:
             rows += _team_rows(path, data)
     for row in rows:
         validate_knowledge(row)
-    return Knowledge(
+    knowledge = Knowledge(
         rows=tuple(rows),
         aliases=brief.tables.attributes,
         derating={key: float(value) for key, value in brief.tables.board.derating.items()},
         files=files,
     )
+    validate_settings(knowledge, Place(brief.file, None))
+    return knowledge
 
 
 def _team_rows(path: str, data: bytes) -> list[KnowledgeRow]:

@@ -9,6 +9,7 @@ from typing import Literal, cast
 
 from reactance.analysis.design import InputError, Place
 from reactance.analysis.parts import reading
+from reactance.analysis.parts.attributes import ALIASES
 from reactance.analysis.parts.base import Kind
 from reactance.analysis.parts.claims import Claim, toml_text
 from reactance.analysis.quantity import QuantityError
@@ -125,3 +126,17 @@ def validate_knowledge(row: KnowledgeRow) -> None:
             reader(Claim(toml_text(value), row.source, value))
         except QuantityError as problem:
             raise InputError(f"{table}, {key}: {problem}", row.place) from None
+
+
+def validate_settings(knowledge: Knowledge, place: Place) -> None:
+    """Check the aliases and deratings that a brief adds; raises InputError naming file, table and key."""
+    for canonical in knowledge.aliases:
+        if canonical not in ALIASES:
+            remedy = f"the attributes are {', '.join(ALIASES)}"
+            raise InputError(f"[attributes]: unknown attribute {canonical!r}", place, remedy)
+    for technology, share in knowledge.derating.items():
+        if technology not in reading.TECHNOLOGIES:
+            remedy = f"the technologies are {', '.join(sorted(reading.TECHNOLOGIES))}"
+            raise InputError(f"[board] derating: unknown technology {technology!r}", place, remedy)
+        if not 0.0 < share <= 1.0:
+            raise InputError(f"[board] derating, {technology}: {share:g} is no share between 0 and 1", place)

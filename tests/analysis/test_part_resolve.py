@@ -10,7 +10,7 @@ from types import MappingProxyType
 import pytest
 from reactance.analysis.design import InputError, Part, Pin, Place
 from reactance.analysis.parts.attributes import ALIASES, NOT_FITTED, folded
-from reactance.analysis.parts.knowledge import Knowledge, KnowledgeRow, validate_knowledge
+from reactance.analysis.parts.knowledge import Knowledge, KnowledgeRow, validate_knowledge, validate_settings
 from reactance.analysis.parts.models import (
     BeadModel,
     CapacitorModel,
@@ -412,6 +412,23 @@ def test_a_wrong_table_is_refused_by_file_table_and_key(attributes: dict[str, ob
 def test_a_table_must_match_something(match: dict[str, str]) -> None:
     with pytest.raises(InputError, match="match"):
         validate_knowledge(KnowledgeRow(match, {"esr": 1}, BRIEF))
+
+
+@pytest.mark.parametrize(
+    ("aliases", "derating", "words"),
+    [
+        ({"colour": ("red",)}, {}, "unknown attribute 'colour'"),
+        ({}, {"vacuum": 0.5}, "unknown technology 'vacuum'"),
+        ({}, {"ceramic": 0.0}, "ceramic"),
+        ({}, {"film": 1.5}, "film"),
+    ],
+)
+def test_wrong_settings_are_refused(
+    aliases: dict[str, tuple[str, ...]], derating: dict[str, float], words: str
+) -> None:
+    with pytest.raises(InputError, match=words):
+        validate_settings(Knowledge(aliases=aliases, derating=derating), BRIEF)
+    validate_settings(Knowledge(aliases={"value": ("Wert",)}, derating={"ceramic": 0.6}), BRIEF)
 
 
 def test_a_right_table_is_accepted() -> None:
