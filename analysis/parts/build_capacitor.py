@@ -23,6 +23,7 @@ from reactance.analysis.parts.common import Common, read_common
 from reactance.analysis.parts.dielectrics import Dielectric, parse_dielectric
 from reactance.analysis.parts.knowledge import Knowledge
 from reactance.analysis.parts.measured import read_measured
+from reactance.analysis.parts.sections import sections_of
 from reactance.analysis.parts.sizes import CHIP_INDUCTANCE, CHIP_INDUCTANCE_UNKNOWN
 from reactance.analysis.quantity import format_quantity
 
@@ -63,6 +64,9 @@ def build_capacitor(part: Part, claims: Claims, knowledge: Knowledge, conditions
     esr, loss_tangent = _losses(claims, common, nature)
     esl = _inductance(claims, common, nature) + conditions.mounting_inductance
     measured = read_measured(claims, knowledge.files)
+    if measured is not None:
+        because = "a Touchstone file states no bias, temperature or age, so none is applied to its data"
+        claims.assume("measured data", "as measured", because)
     return CapacitorModel(
         refdes=part.refdes,
         fitted=common.fitted,
@@ -83,7 +87,7 @@ def build_capacitor(part: Part, claims: Claims, knowledge: Knowledge, conditions
         derating=knowledge.derating.get(nature.technology, defaults.DERATING[nature.technology]),
         temperature=_temperature(claims, nature, conditions),
         ageing=_ageing(claims, nature, conditions),
-        bias=_bias(claims, common, nature),
+        bias=_bias(claims, common, nature, len(sections_of("capacitor", part))),
         measured=measured,
         **claims.closing(used=common.used),
     )
@@ -260,7 +264,8 @@ def _ageing(claims: Claims, nature: _Nature, conditions: Conditions) -> Band:
     return factor
 
 
-def _bias(claims: Claims, common: Common, nature: _Nature) -> BiasLaw:
+def _bias(claims: Claims, common: Common, nature: _Nature, sections: int) -> BiasLaw:
+    """The bias law; the sections of an array share the volume of its body."""
     curve = claims.take("bias_curve", reading.bias_curve("V"))
     if curve is not None:
         return curve
@@ -272,7 +277,7 @@ def _bias(claims: Claims, common: Common, nature: _Nature) -> BiasLaw:
     if common.size is None:
         claims.assume("bias loss", "none", "no package, bias curve or half voltage is known to estimate it from")
         return NOT_KNOWN
-    band = estimated_half_voltage(common.value, common.size.volume)
+    band = estimated_half_voltage(common.value, common.size.volume / max(sections, 1))
     low, high = format_quantity(band.low, "V"), format_quantity(band.high, "V")
     because = f"estimated from the geometry of {common.size.code}; a bias curve would narrow {low} to {high}"
     claims.assume("half_voltage", format_quantity(band.nominal, "V"), because)

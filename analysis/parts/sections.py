@@ -9,8 +9,9 @@ import re
 from collections.abc import Iterable
 
 from reactance.analysis.design import Part, Pin
+from reactance.analysis.parts.base import Kind, Model
+from reactance.analysis.parts.capacitor import CapacitorModel
 from reactance.analysis.parts.kinds import class_letters
-from reactance.analysis.parts.models import CapacitorModel, OtherModel, PartModel
 
 PinPair = tuple[str, str]
 
@@ -24,20 +25,25 @@ _OUT_NAMES = frozenset(("OUT", "O", "OUT1", "B", "OUTPUT"))
 _ENDS = re.compile(r"(.*?)[._-]?(?:([AB])|([12]))")
 
 
-def sections(model: PartModel, part: Part) -> tuple[PinPair, ...]:
+def sections(model: Model, part: Part) -> tuple[PinPair, ...]:
     """The pins (by designator) that each section of a part joins; empty where that is not plain."""
+    return sections_of(model.kind, part)
+
+
+def sections_of(kind: Kind, part: Part) -> tuple[PinPair, ...]:
+    """The pins that each section of a part of that `kind` joins."""
     pins = _distinct(part.pins)
-    if isinstance(model, OtherModel) or len(pins) < 2:
+    if kind == "other" or len(pins) < 2:
         return ()
     if len(pins) == 2:
         return ((pins[0].number, pins[1].number),)
-    feed = _feed_through(pins) if isinstance(model, CapacitorModel) else None
+    feed = _feed_through(pins) if kind == "capacitor" else None
     if feed is not None:
         return ((feed[0].number, feed[2].number),)
     return _array(part, pins) or _two_nets(pins)
 
 
-def through(model: PartModel, part: Part) -> tuple[PinPair, ...]:
+def through(model: Model, part: Part) -> tuple[PinPair, ...]:
     """The pins that are one conductor inside a part: a feed-through capacitor's input and output."""
     pins = _distinct(part.pins)
     feed = _feed_through(pins) if isinstance(model, CapacitorModel) and len(pins) > 2 else None

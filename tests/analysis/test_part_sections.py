@@ -5,7 +5,7 @@ from __future__ import annotations
 import pytest
 from reactance.analysis.design import Part, Pin
 from reactance.analysis.parts.knowledge import Knowledge
-from reactance.analysis.parts.models import Conditions
+from reactance.analysis.parts.models import CapacitorModel, Conditions
 from reactance.analysis.parts.resolve import resolve_part
 from reactance.analysis.parts.sections import sections, through
 
@@ -68,3 +68,13 @@ def test_a_feed_through_conducts() -> None:
     assert through(model, part) == (("1", "3"),)
     plain = Part("C1", pins("1 2"), {"VALUE": "1u"})
     assert through(resolve_part(plain, Knowledge(), Conditions()), plain) == ()
+
+
+def test_the_elements_of_an_array_share_its_body() -> None:
+    """V_half goes as the square root of the volume: four elements in one body have half of a single one's."""
+    attributes = {"VALUE": "100nF", "DIELECTRIC": "X7R", "PACKAGE": "1206"}
+    single = resolve_part(Part("C1", pins("1 2"), attributes), Knowledge(), Conditions())
+    array = resolve_part(Part("CN1", pins("1 2 3 4 5 6 7 8"), attributes), Knowledge(), Conditions())
+    assert isinstance(single, CapacitorModel)
+    assert isinstance(array, CapacitorModel)
+    assert array.bias_factor(10.0).nominal == pytest.approx(single.bias_factor(20.0).nominal, rel=1e-12)
