@@ -8,9 +8,10 @@ from contextlib import contextmanager
 
 from reactance.analysis.design import Design, InputError
 from reactance.analysis.exports import edif_entries as says
+from reactance.analysis.exports.edif_again import LastReading, last_reading, same_but_attributes
 from reactance.analysis.exports.edif_cells import Catalogue, top_cell
 from reactance.analysis.exports.edif_connect import netlists
-from reactance.analysis.exports.edif_flatten import flatten
+from reactance.analysis.exports.edif_flatten import Flat, flatten
 from reactance.analysis.exports.edif_forms import FormMemory, Sexp, declared
 from reactance.analysis.exports.edif_scan import Container, Entry, outline
 from reactance.analysis.exports.edif_source import Source
@@ -50,17 +51,28 @@ def _no_collection() -> Iterator[None]:
 
 def _read(source: Source, memory: FormMemory | None) -> Design:
     top, aliases = outline(source)
-    _declare(top, source, aliases, memory)
+    entries = list(_entries(top))
+    _declare(entries, source, aliases, memory)
+    if memory is None or aliases:
+        return _design(source, top).design
+    last = memory.kept(source.file)
+    reading = same_but_attributes(last, source, top, entries) if isinstance(last, LastReading) else None
+    if reading is not None:
+        memory.keep(source.file, reading)
+        return reading.design
+    made = _design(source, top)
+    memory.keep(source.file, last_reading(source, top, entries, made))
+    return made.design
+
+
+def _design(source: Source, top: Container) -> Flat:
     _check_version(top, source)
     catalogue = Catalogue(source)
     for form in top.inner:
         catalogue.add_library(form)
     designs = [(entry.start, entry.value) for entry in top.entries if isinstance(entry.value, says.DesignRef)]
     view, name = top_cell(catalogue, designs, source)
-    parts, nets = flatten(
-        view, netlists(view, catalogue, source), source
-    )
-    return Design(name, source.file, "EDIF 2 0 0", parts, nets, source.problems())
+    return flatten(view, name, netlists(view, catalogue, source), source)
 
 
 def _entries(top: Container) -> Iterator[Entry]:
@@ -72,11 +84,10 @@ def _entries(top: Container) -> Iterator[Entry]:
 
 
 def _declare(
-    top: Container, source: Source, aliases: Mapping[str, str], memory: FormMemory | None
+    entries: list[Entry], source: Source, aliases: Mapping[str, str], memory: FormMemory | None
 ) -> None:
     """Fill in what each entry declares."""
     text = source.text
-    entries = list(_entries(top))
     texts = [text[entry.start : entry.end] for entry in entries]
     if aliases:
         # The text of a form says what it does only together with the aliases: nothing is remembered.

@@ -183,7 +183,9 @@ class Catalogue:
         cell = Cell(name, library, form.start)
         known = library.cells.get(name.key)
         if known is not None and known.views:
-            self._source.problem("caution", form.start, f"cell {name.text} is defined twice; the first is used")
+            self._source.problem(
+                "caution", form.start, f"cell {name.text} is defined twice; the first is used"
+            )
             return
         for entry in form.entries:
             value = entry.value
@@ -197,7 +199,11 @@ class Catalogue:
             elif isinstance(value, says.Word) and entry.keyword == "designator":
                 cell.prefix = value.name.text
         library.cells[name.key] = cell
-        if name.key not in self._everywhere or self._everywhere[name.key].library.external or not library.external:
+        if (
+            name.key not in self._everywhere
+            or self._everywhere[name.key].library.external
+            or not library.external
+        ):
             self._everywhere[name.key] = cell
         for inner in form.inner:
             self._add_view(inner, cell)
@@ -251,7 +257,9 @@ class Catalogue:
         self._source.check("pins", self._pins, entry.start)
         names = member_names(port.name)
         numbers = pin_numbers(port.number, names)
-        bits = [interface.add(number, name, port.direction) for number, name in zip(numbers, names, strict=True)]
+        bits = [
+            interface.add(number, name, port.direction) for number, name in zip(numbers, names, strict=True)
+        ]
         return PortGroup(tuple(bits), port.name.size)
 
     def _name(self, form: Container, what: str) -> Name:
@@ -311,7 +319,9 @@ def top_cell(
         top = free_cells[-1].contents()
         assert top is not None
         if not designs:
-            source.problem("note", top.cell.start, f"no (design …); {top.cell.name.text} is taken as the top cell")
+            source.problem(
+                "note", top.cell.start, f"no (design …); {top.cell.name.text} is taken as the top cell"
+            )
         return top, designs[0][1].name.text if designs else top.cell.name.text
     raise InputError(
         "no cell has contents: there is no schematic in this file; expected (contents …) with instances and nets",

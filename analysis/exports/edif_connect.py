@@ -41,9 +41,7 @@ class _End:
 class Connector:
     """Builds the netlist of one view."""
 
-    def __init__(
-        self, view: View, catalogue: Catalogue, source: Source
-    ) -> None:
+    def __init__(self, view: View, catalogue: Catalogue, source: Source) -> None:
         self._view, self._source = view, source
         self._maker = PartMaker(view, catalogue, source)
         self._nodes = Nodes()
@@ -129,7 +127,9 @@ class Connector:
         if net.name.size:
             self._source.check("array", net.name.width, entry.start)
         if net.name.key in self._by_key[scope]:
-            self._source.problem("caution", entry.start, f"net {net.name.text} stands twice; taken as one net")
+            self._source.problem(
+                "caution", entry.start, f"net {net.name.text} stands twice; taken as one net"
+            )
         self._by_key[scope].add(net.name.key)
         ends = [self._ends(ref, scope, net.name, entry) for ref in net.refs]
         self._end_count += sum(map(len, ends))
@@ -339,7 +339,9 @@ class Connector:
     def _compressed(self) -> Netlist:
         """Nodes renumbered without gaps."""
         nodes = self._nodes
-        result = Netlist(self._view, self._parts, pins=sum([len(part.interface.bits) for part in self._parts]))
+        result = Netlist(
+            self._view, self._parts, pins=sum([len(part.interface.bits) for part in self._parts])
+        )
         number: dict[int, int] = {}
         renumbered: list[int] = []
         for node, name in enumerate(self._names):
@@ -362,9 +364,7 @@ class Connector:
         return result
 
 
-def netlists(
-    top: View, catalogue: Catalogue, source: Source
-) -> Mapping[int, Netlist]:
+def netlists(top: View, catalogue: Catalogue, source: Source) -> Mapping[int, Netlist]:
     """The netlist of `top` and of every view below it, by the view's id.
 
     Raises InputError where a cell contains itself, naming the cells on the way.

@@ -215,7 +215,9 @@ def _instance(form: list[Sexp]) -> Instance:
     longest = max(len(declared.text), *(max(len(each.name), len(each.text)) for each in texts), 0)
     stands = bool(designator) and not designator.endswith("?")
     usual = stands and plain is not None and not (declared.size or numbers or faults)
-    return Instance(declared, cells, designator, tuple(texts), tuple(numbers), tuple(faults), plain, longest, usual)
+    return Instance(
+        declared, cells, designator, tuple(texts), tuple(numbers), tuple(faults), plain, longest, usual
+    )
 
 
 def _item(form: Sexp, position: int = 1) -> Sexp | None:

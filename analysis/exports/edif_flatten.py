@@ -7,7 +7,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from types import MappingProxyType
 
-from reactance.analysis.design import Net, Part
+from reactance.analysis.design import Design, Net, Part
 from reactance.analysis.exports import edif_entries as says
 from reactance.analysis.exports.edif_cells import Interface, View
 from reactance.analysis.exports.edif_connect import Netlist
@@ -37,10 +37,20 @@ class _FlatNet:
     called: str = ""
 
 
-def flatten(
-    top: View, netlists: Mapping[int, Netlist], source: Source
-) -> tuple[tuple[Part, ...], tuple[Net, ...]]:
-    """All parts and nets of the design whose top view is `top`.
+@dataclass(frozen=True, slots=True)
+class Flat:
+    """The flattened design, and the offsets of the entries that its nets and instances of its parts are from.
+
+    Where sections of a package became one part there are more of these offsets than parts.
+    """
+
+    design: Design
+    part_starts: list[int]
+    net_starts: list[int]
+
+
+def flatten(top: View, name: str, netlists: Mapping[int, Netlist], source: Source) -> Flat:
+    """The design called `name` whose top view is `top`.
 
     A net goes by its name highest up; one that lives inside a block by its plain name where that is unique, else
     by `PATH/NAME`. The other names are its aliases. Raises InputError where a limit bites.
@@ -62,7 +72,11 @@ def flatten(
             locals_.append(part)
         source.check("parts", len(flat), block.netlist.view.cell.start)
     parts = packages(flat, locals_, source)
-    return parts, _connected(nets, parts, source)
+    design = Design(
+        name, source.file, "EDIF 2 0 0", parts, _connected(nets, parts, source), source.problems()
+    )
+    starts = [net.start for net in nets.values() if net.called]
+    return Flat(design, [part.start for part in locals_], starts)
 
 
 def _blocks(

@@ -32,7 +32,9 @@ _LISP_SEEN = re.compile(r"['\\;\[\]]")
 _HIDE = {ord(character): 0xDC00 + ord(character) for character in _LISP}
 _SHOW = {hidden: shown for shown, hidden in _HIDE.items()}
 
-_BATCH = 400_000  # characters handed over at once: the parser has a start-up cost, and the copy should stay small
+_BATCH = (
+    400_000  # characters handed over at once: the parser has a start-up cost, and the copy should stay small
+)
 
 
 class _Parser(sexpdata.Parser):  # type: ignore[misc]
@@ -72,15 +74,30 @@ def pruned(text: str) -> str:
 class FormMemory:
     """What forms declared, remembered by their text from one reading of an export to the next.
 
-    It keeps at least the last `size` characters' worth of forms that were asked for, at most twice that. Not for
-    use by two threads at once.
+    It keeps at least the last `size` characters' worth of forms that were asked for, at most twice that, and what
+    `keep` was given for the last few files. Not for use by two threads at once.
     """
+
+    _FILES = 16
 
     def __init__(self, size: int = 64_000_000) -> None:
         self._size = size
         self._filled = 0
         self._recent: dict[str, object] = {}
         self._older: dict[str, object] = {}
+        self._kept: dict[str, object] = {}
+
+    def keep(self, file: str, reading: object | None) -> None:
+        """Keep the last reading of that file, or forget it."""
+        self._kept.pop(file, None)
+        if reading is not None:
+            self._kept[file] = reading
+            while len(self._kept) > self._FILES:
+                del self._kept[next(iter(self._kept))]
+
+    def kept(self, file: str) -> object | None:
+        """The last reading of that file."""
+        return self._kept.get(file)
 
     def __len__(self) -> int:
         return len(self._recent) + len(self._older)

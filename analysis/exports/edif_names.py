@@ -142,7 +142,9 @@ def member_names(declared: Name) -> list[str]:
     stem = declared.text
     if len(declared.size) == 1:
         return [f"{stem}[{index}]" for index in range(declared.width)]
-    return [f"{stem}[{','.join(map(str, _unflattened(flat, declared.size)))}]" for flat in range(declared.width)]
+    return [
+        f"{stem}[{','.join(map(str, _unflattened(flat, declared.size)))}]" for flat in range(declared.width)
+    ]
 
 
 def _unflattened(flat: int, size: tuple[int, ...]) -> list[int]:

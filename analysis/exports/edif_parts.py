@@ -17,7 +17,9 @@ REFDES_PROPERTIES = ("refdes", "ref", "designator", "reference")
 """Properties that carry a refdes where no designator does (formats in use; common practice)."""
 
 # Words before a number that editors give to instances by themselves, so that `I12` is no refdes. From memory.
-_AUTOMATIC = frozenset(("i", "inst", "instance", "comp", "component", "sym", "symbol", "part", "id", "n", "uid", "xi"))
+_AUTOMATIC = frozenset(
+    ("i", "inst", "instance", "comp", "component", "sym", "symbol", "part", "id", "n", "uid", "xi")
+)
 _REFDES_LIKE = re.compile(r"([A-Za-z]+)[_-]?\d+[A-Za-z]?", re.ASCII)
 
 
@@ -103,7 +105,9 @@ class PartMaker:
         target = self._target(ref)
         if target.cell is None:
             library = f" of library {ref.library}" if ref.library else ""
-            message = f"instance {shown}: there is no cell {ref.cell}{library}; its pins are taken from the nets"
+            message = (
+                f"instance {shown}: there is no cell {ref.cell}{library}; its pins are taken from the nets"
+            )
             self._source.problem("caution", start, message)
         inside = target.inside
         if inside is not None and instance.designator and not inside.holds_instances:
@@ -161,7 +165,9 @@ class PartMaker:
             return merged
         for key, text in merged.items():
             if len(text) > limits.text:
-                message = f"property {key[:40]}: {len(text):,} characters, cut to {limits.text:,} (limit `text`)"
+                message = (
+                    f"property {key[:40]}: {len(text):,} characters, cut to {limits.text:,} (limit `text`)"
+                )
                 self._source.problem("caution", start, message)
             self._source.check("name", len(key), start)
         return MappingProxyType({key: text[: limits.text] for key, text in merged.items()})

@@ -50,7 +50,9 @@ class _Rule:
 
 def _rule(inner: str, entries: str, others: str = "") -> _Rule:
     common = "comment userdata status"
-    return _Rule(frozenset(inner.split()), frozenset(entries.split()), frozenset(f"{common} {others}".split()))
+    return _Rule(
+        frozenset(inner.split()), frozenset(entries.split()), frozenset(f"{common} {others}".split())
+    )
 
 
 # From the grammar of EDIF 2 0 0; entries that real exports put one level off are taken where they stand.
@@ -85,13 +87,13 @@ _HEAD = re.compile(r"\(\s*+([^\s()\"]*+)", re.ASCII)
 _GAP = re.compile(r"[^()\"]*+")
 _STRING = re.compile(r"\"[^\"]*+\"")
 _FORM = re.compile(BALANCED)
-_USUAL = re.compile(rf"\s*+(\(\s*+((?i:instance|net|port|property))(?=[\s()\"]){BALANCED_CONTENTS}\))", re.ASCII)
+_USUAL = re.compile(
+    rf"\s*+(\(\s*+((?i:instance|net|port|property))(?=[\s()\"]){BALANCED_CONTENTS}\))", re.ASCII
+)
 _TOKEN = re.compile(r"[()]|\"[^\"]*+\"?")
 
 
-def outline(
-    source: Source
-) -> tuple[Container, Mapping[str, str]]:
+def outline(source: Source) -> tuple[Container, Mapping[str, str]]:
     """The file's containers and entries, and its keyword aliases (new word to the standard's, lower case).
 
     Raises InputError, with the place, where brackets or quotes do not match, or the file is no EDIF 2 0 0.
@@ -182,7 +184,9 @@ class _Scan:
                 self._keyword_map(start, end)
         elif keyword not in rule.others:
             shown = f"({visible(head.group(1)[:40])} …)" if head.group(1) else "a form without keyword"
-            self.source.problem("caution", start, f"{shown} has no meaning in ({within.keyword} …); passed over")
+            self.source.problem(
+                "caution", start, f"{shown} has no meaning in ({within.keyword} …); passed over"
+            )
         return end
 
     def _deep_end(self, start: int) -> int:
@@ -210,7 +214,9 @@ class _Scan:
                 return
             word = word.split()[1]
         shown = visible(word[:40])
-        self.source.problem("caution", offset, f"the word {shown} has no meaning in ({within.keyword} …); passed over")
+        self.source.problem(
+            "caution", offset, f"the word {shown} has no meaning in ({within.keyword} …); passed over"
+        )
 
     def _stray_string(self, start: int) -> int:
         string = _STRING.match(self.text, start)
@@ -233,7 +239,9 @@ class _Scan:
             if keyword == "keywordalias" and len(words) == 2:
                 new, old = words[0].lower(), words[1].lower()
                 self.aliases[new] = self.aliases.get(old, old)
-            elif keyword == "keyworddefine" or (keyword == "keywordlevel" and words[:1] not in (["0"], ["1"])):
+            elif keyword == "keyworddefine" or (
+                keyword == "keywordlevel" and words[:1] not in (["0"], ["1"])
+            ):
                 raise InputError(
                     "keyword macros (keyword level 2 and 3) are not read; expected keyword level 0 or 1",
                     self.source.place(start),
@@ -250,7 +258,9 @@ class _Scan:
         message = "the string that begins here never ends; expected '\"'"
         return self._broken(message, start, "a quotation mark is missing here or before")
 
-    def _broken(self, message: str, offset: int, remedy: str = "a bracket too many, or a file cut off") -> InputError:
+    def _broken(
+        self, message: str, offset: int, remedy: str = "a bracket too many, or a file cut off"
+    ) -> InputError:
         return InputError(message, self.source.place(offset), remedy)
 
 

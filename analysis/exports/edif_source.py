@@ -32,8 +32,14 @@ class Source:
 
     def place(self, offset: int) -> Place:
         """Line and column, both from 1, of the character at `offset`."""
-        line = bisect_right(self._line_starts, offset)
-        return Place(self.file, line, offset - self._line_starts[line - 1] + 1)
+        line, column = self.line_and_column(offset)
+        return Place(self.file, line, column)
+
+    def line_and_column(self, offset: int) -> tuple[int, int]:
+        """Both from 1."""
+        starts = self._line_starts
+        line = bisect_right(starts, offset)
+        return line, offset - starts[line - 1] + 1
 
     def check(self, what: str, count: int, offset: int) -> None:
         """Raise InputError where `count` is beyond the limit `what`."""
@@ -59,11 +65,15 @@ class Source:
 
 def _decoded(data: bytes, file: str) -> str:
     if not data.strip():
-        raise InputError("the file is empty; expected (edif …)", Place(file, 1, 1), "export the schematic again")
+        raise InputError(
+            "the file is empty; expected (edif …)", Place(file, 1, 1), "export the schematic again"
+        )
     nul = data.find(b"\0")
     if nul >= 0:
         place = Place(file, data.count(b"\n", 0, nul) + 1, nul - data.rfind(b"\n", 0, nul))
-        raise InputError("a zero byte: this is no text; expected (edif …)", place, "export as EDIF 2 0 0 text")
+        raise InputError(
+            "a zero byte: this is no text; expected (edif …)", place, "export as EDIF 2 0 0 text"
+        )
     try:
         return data.decode("utf-8-sig")
     except UnicodeDecodeError:

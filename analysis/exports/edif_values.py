@@ -87,7 +87,9 @@ def _spread(value: list[Sexp]) -> Iterator[tuple[str, str, bool]]:
         if keyword(shown) != "mnm":
             yield "", _number(shown), True
             continue
-        texts = ["" if keyword(bound) in ("undefined", "unconstrained") else _number(bound) for bound in shown[1:]]
+        texts = [
+            "" if keyword(bound) in ("undefined", "unconstrained") else _number(bound) for bound in shown[1:]
+        ]
         for suffix, text in zip((" minimum", "", " maximum"), texts, strict=False):
             if text:
                 yield suffix, text, True
