@@ -12,7 +12,6 @@ from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-
 from reactance.analysis.circuit.network import (
     Amplifier,
     Bead,

@@ -11,7 +11,6 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-
 from reactance.analysis.circuit.network import FloatArray
 
 

@@ -13,7 +13,6 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike
-
 from reactance.analysis.circuit.modal import residues_at
 from reactance.analysis.circuit.network import (
     Bead,

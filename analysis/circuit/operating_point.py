@@ -11,7 +11,6 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-
 from reactance.analysis.circuit.network import (
     Amplifier,
     Bead,
@@ -23,7 +22,6 @@ from reactance.analysis.circuit.network import (
     Inductor,
     Measured,
     Network,
-    Resistor,
     VoltageSource,
     terminals,
 )

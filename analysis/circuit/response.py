@@ -11,9 +11,9 @@ from typing import Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-
 from reactance.analysis.circuit.network import CircuitError, ComplexArray, FloatArray, Network, Parameter
 from reactance.analysis.circuit.roots import Question, find_roots
+from reactance.analysis.circuit.search import polish
 from reactance.analysis.circuit.system import NEAR_INFINITY, NEAR_ZERO, System
 
 _PER_DECADE = 24
@@ -173,19 +173,7 @@ class Response:
     def _polish(
         self, f: FloatArray, size: FloatArray, choice: NDArray[np.intp], sign: float
     ) -> tuple[FloatArray, FloatArray]:
-        """Extremes of |H| near grid points `choice` (V, c): where (V, c) and how great, by successive parabolas."""
-        last = f.shape[1] - 1
-        x = [np.take_along_axis(f, np.clip(choice + k, 0, last), 1) for k in (-1, 0, 1)]
-        y = [sign * np.take_along_axis(size, np.clip(choice + k, 0, last), 1) for k in (-1, 0, 1)]
-        for step in range(60):
-            a, b, c = x
-            if ((c - a) <= 3e-8 * b).all():
-                break
-            fresh = _next_point(x, y, step)
-            value = sign * np.abs(self._at(fresh))
-            left, better = fresh < b, value > y[1]
-            x, y = _replace(x, y, fresh, value, left, better)
-        return x[1], sign * y[1]
+        return polish(lambda x: np.abs(self._at(x)), f, size, choice, sign, 3e-8)
 
     def _cross(self, a: FloatArray, b: FloatArray, level: FloatArray) -> FloatArray:
         """Where |H| passes `level` between a (above) and b (below), (V,), in log frequency."""
@@ -229,42 +217,6 @@ def _inside_peaks(size: FloatArray) -> NDArray[np.bool_]:
     rise = size[:, 1:-1] > size[:, :-2] * (1.0 + 1e-12 * np.sign(size[:, :-2]))
     peak[:, 1:-1] = rise & (size[:, 1:-1] >= size[:, 2:])
     return peak
-
-
-def _next_point(x: list[FloatArray], y: list[FloatArray], step: int) -> FloatArray:
-    """The vertex of the parabola through three points, or (in turn, or if it leaves the bracket) a golden section."""
-    a, b, c = x
-    ya, yb, yc = y
-    with np.errstate(divide="ignore", invalid="ignore"):
-        p = (b - a) ** 2 * (yb - yc) - (b - c) ** 2 * (yb - ya)
-        q = (b - a) * (yb - yc) - (b - c) * (yb - ya)
-        vertex = b - 0.5 * p / q
-    least = 1e-8 * b
-    close = np.abs(vertex - b) < least
-    wider = np.where(c - b > b - a, b + least, b - least)
-    vertex = np.where(close, wider, vertex)
-    golden = np.where(c - b > b - a, b + 0.381966 * (c - b), b - 0.381966 * (b - a))
-    usable = np.isfinite(vertex) & (vertex > a) & (vertex < c) & (step % 4 != 3)
-    return np.where(usable, vertex, golden)
-
-
-def _replace(
-    x: list[FloatArray],
-    y: list[FloatArray],
-    fresh: FloatArray,
-    value: FloatArray,
-    left: NDArray[np.bool_],
-    better: NDArray[np.bool_],
-) -> tuple[list[FloatArray], list[FloatArray]]:
-    """The bracket after one more point."""
-    a, b, c = x
-    ya, yb, yc = y
-    new_b, new_yb = np.where(better, fresh, b), np.where(better, value, yb)
-    new_a = np.where(better, np.where(left, a, b), np.where(left, fresh, a))
-    new_ya = np.where(better, np.where(left, ya, yb), np.where(left, value, ya))
-    new_c = np.where(better, np.where(left, b, c), np.where(left, c, fresh))
-    new_yc = np.where(better, np.where(left, yb, yc), np.where(left, yc, value))
-    return [new_a, new_b, new_c], [new_ya, new_yb, new_yc]
 
 
 def evaluate(system: System, source: str, probe: tuple[str, str], frequencies: FloatArray) -> ComplexArray:

@@ -12,7 +12,6 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-
 from reactance.analysis.circuit.network import FloatArray, Parameter
 
 Measure = Callable[[FloatArray], FloatArray]

@@ -17,7 +17,6 @@ from typing import TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
-
 from reactance.analysis.circuit.branches import Parts, coefficients, take_apart
 from reactance.analysis.circuit.forest import Edge, Forest, span
 from reactance.analysis.circuit.network import (

@@ -11,15 +11,17 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike
-
 from reactance.analysis.circuit import features
 from reactance.analysis.circuit.modal import PoleResidue, expand, first
 from reactance.analysis.circuit.motion import Pieces, settle_pieces
 from reactance.analysis.circuit.network import ComplexArray, FloatArray, Network, Parameter
 from reactance.analysis.circuit.phi import phi
+from reactance.analysis.circuit.search import polish
 from reactance.analysis.circuit.system import System
 
 Number = float | FloatArray
+
+_RIVALS = 2  # local maxima over the repetition rate that are followed to their top
 
 
 @dataclass(frozen=True, slots=True)
@@ -244,52 +246,39 @@ def _search_rate(
 ) -> tuple[FloatArray, FloatArray]:
     count = len(modes[0])
 
-    def excursion(f: FloatArray) -> FloatArray:
+    def excursion(f: FloatArray, rough: bool = False) -> FloatArray:
         """(V, F) at rates f (V, F)."""
         repeat = f.shape[1]
         spread = tuple(np.repeat(x, repeat, axis=0) for x in modes)
         pieces = _steady(spread, amplitude, rise, f.ravel(), halves=1)  # type: ignore[arg-type]
-        found = features.greatest(pieces, np.zeros(pieces.count), 0.0)[1]
+        found = features.greatest(pieces, np.zeros(pieces.count), 0.0, rough=rough)[1]
         return np.asarray(found.reshape(count, repeat))
 
     f = np.sort(np.clip(_rates(modes[0], low, high), low, high), axis=1)
-    size = excursion(f)
+    size = excursion(f, rough=True)
     rows = np.arange(count)
-    number = min(3, f.shape[1])
-    inner = np.pad(size, ((0, 0), (1, 1)), constant_values=-np.inf)
-    peaks = np.where((size >= inner[:, :-2]) & (size >= inner[:, 2:]), size, -np.inf)
-    choice = np.argsort(-peaks, axis=1)[:, :number]
-    a = np.take_along_axis(f, np.maximum(choice - 1, 0), 1)
-    b = np.take_along_axis(f, np.minimum(choice + 1, f.shape[1] - 1), 1)
-    ratio = 0.5 * (np.sqrt(5.0) - 1.0)
-    x1, x2 = b - ratio * (b - a), a + ratio * (b - a)
-    y1, y2 = excursion(x1), excursion(x2)
-    for _ in range(40):
-        if ((b - a) <= 1e-9 * b).all():
-            break
-        left = y1 >= y2
-        a, b = np.where(left, a, x1), np.where(left, x2, b)
-        fresh = np.where(left, b - ratio * (b - a), a + ratio * (b - a))
-        y = excursion(fresh)
-        x1, x2 = np.where(left, fresh, x2), np.where(left, x1, fresh)
-        y1, y2 = np.where(left, y, y2), np.where(left, y1, y)
-    every_f = np.concatenate([f, x1, x2], axis=1)
-    every = np.concatenate([size, y1, y2], axis=1)
-    top = every.argmax(axis=1)
-    return every_f[rows, top], every[rows, top]
+    padded = np.pad(size, ((0, 0), (1, 1)), constant_values=-np.inf)
+    peaks = np.where((size >= padded[:, :-2]) & (size >= padded[:, 2:]), size, -np.inf)
+    choice = np.argsort(-peaks, axis=1)[:, : min(_RIVALS, f.shape[1])]
+    at, top = polish(excursion, f, size, choice, 1.0, 1e-6)
+    best = top.argmax(axis=1)
+    return at[rows, best], top[rows, best]
 
 
 def _rates(poles: ComplexArray, low: float, high: float) -> FloatArray:
     """Rates to look at: an even grid, and the odd subharmonics of each ringing pole, closer the less it is damped."""
-    found = [np.broadcast_to(np.geomspace(low, high, max(9, int(8 * np.log10(high / low)))), (len(poles), 0 or max(9, int(8 * np.log10(high / low)))))]
-    offsets = np.array([-8.0, -4.0, -2.0, -1.0, -0.5, 0.0, 0.5, 1.0, 2.0, 4.0, 8.0])
+    number = max(9, int(3 * np.log10(high / low)))
+    found = [np.broadcast_to(np.geomspace(low, high, number), (len(poles), number))]
+    offsets = np.array([-1.5, -0.5, 0.0, 0.5, 1.5])
     for i in range(poles.shape[1]):
         turning, damping = np.abs(poles[:, i].imag), np.abs(poles[:, i].real)
-        if (turning > 0.3 * damping).any():
-            for odd in (1, 3, 5):
-                centre = turning / (2.0 * np.pi * odd)
-                if ((centre > low / 2) & (centre < high * 2)).any():
-                    found.append((turning[:, None] + offsets * np.minimum(damping, 0.1 * turning)[:, None]) / (2 * np.pi * odd))
+        centre = float(np.median(turning)) / (2.0 * np.pi)
+        if not (turning > 0.3 * damping).any() or centre < 0.5 * low:
+            continue
+        first = 2 * int(np.ceil(max(centre / high - 1.0, 0.0) / 2.0)) + 1
+        for odd in (first, first + 2):
+            width = np.minimum(damping, 0.1 * turning)
+            found.append((turning[:, None] + offsets * width[:, None]) / (2.0 * np.pi * odd))
     return np.asarray(np.concatenate(found, axis=1))
 
 
