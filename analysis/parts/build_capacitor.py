@@ -67,6 +67,8 @@ def build_capacitor(part: Part, claims: Claims, knowledge: Knowledge, conditions
     if measured is not None:
         because = "a Touchstone file states no bias, temperature or age, so none is applied to its data"
         claims.assume("measured data", "as measured", because)
+        claims.forget("esr", "esl", "loss_tangent")
+        loss_tangent = 0.0
     return CapacitorModel(
         refdes=part.refdes,
         fitted=common.fitted,

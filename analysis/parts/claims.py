@@ -91,6 +91,10 @@ class Claims:
         """Note that something is used that nobody stated."""
         self.assumptions.append(Assumption(self.refdes, attribute, value, because))
 
+    def forget(self, *attributes: str) -> None:
+        """Take back what was assumed about attributes that turn out not to be used."""
+        self.assumptions[:] = [entry for entry in self.assumptions if entry.attribute not in attributes]
+
     def closing(self, used: bool = True) -> Closing:
         """What reading the claims left behind, as the last fields of a model; no assumptions if it is not `used`."""
         return {

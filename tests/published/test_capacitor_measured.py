@@ -161,6 +161,9 @@ def test_a_part_is_measured_by_its_table(tmp_path: Path) -> None:
         assert abs(model.measured.impedance(1e6) / rlc(np.array([1e6]))[0] - 1) < 1e-3
         assert model.stated["touchstone"].source == "parts.toml [[part]] 1"
         assert any("c.s2p, 1 kHz to 1 GHz" in line and "rms" in line for line in model.explain(0.0))
+        assumed = {assumption.attribute for assumption in model.assumptions}
+        assert "measured data" in assumed
+        assert not {"esr", "esl", "loss_tangent"} & assumed
         elements = model.measured.fit_elements("C1", "A", "B")
         assert elements is not None
         assert [type(element) for element in elements] == [Capacitor]
