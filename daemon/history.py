@@ -190,6 +190,18 @@ class History:
         cells = {name: found for name, found in cells.items() if found}
         return MappingProxyType({check: tuple(found) for check, found in self._ordered(board_id, cells)})
 
+    def cells(self, board_id: int, check_id: str, most: int = 60) -> tuple[StripCell, ...]:
+        """The last `most` usable revisions of one check, oldest first; as `strip`, without reading the others."""
+        rows = self._database.rows(
+            "SELECT figure.revision, ?2, figure.nominal, figure.low, figure.high, figure.margin, figure.status, "
+            "figure.verdict FROM figure WHERE figure.measured = "
+            "(SELECT id FROM measured WHERE board = ?1 AND check_id = ?2) AND figure.revision IN "
+            "(SELECT id FROM revision WHERE board = ?1 AND error IS NULL ORDER BY id DESC LIMIT ?3) "
+            "ORDER BY figure.revision",
+            (board_id, check_id, most),
+        )
+        return tuple(StripCell(*row) for row in rows)
+
     def _ordered(self, board_id: int, cells: Mapping[str, list[StripCell]]) -> list[tuple[str, list[StripCell]]]:
         newest = self.latest(board_id)
         report = self.report(newest.id) if newest else None

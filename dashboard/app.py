@@ -19,13 +19,14 @@ from reactance.dashboard.check_page import check_page
 from reactance.dashboard.events import RETRY_MS, Streams, state
 from reactance.dashboard.guard import protect
 from reactance.dashboard.rows import numbered
+from reactance.dashboard.strip import svg
 from werkzeug.exceptions import HTTPException
 
 if TYPE_CHECKING:
     from reactance.analysis.study import Study
 
 PART = "X-Page-Part"  # a page that updates itself asks for its main part only
-_IN_GROUP = 60
+_IN_GROUP = 40
 
 views = Blueprint("views", __name__)
 
@@ -38,6 +39,7 @@ def create_app(history: History, *, hosts: tuple[str, ...], analyse: Analyse | N
     here = str(Path(__file__).parent)  # stated, because Flask looks for packages where their names say
     app = Flask("reactance.dashboard", root_path=here, instance_path=here)
     app.jinja_env.trim_blocks = app.jinja_env.lstrip_blocks = True
+    app.jinja_env.filters["strip"] = svg
     app.extensions["reactance.archive"] = Archive(history, analyse)
     app.extensions["reactance.streams"] = Streams(history)
     app.extensions["reactance.script"] = plots.PlotScript()
@@ -131,7 +133,7 @@ def revision(board: int, revision: int) -> Response:
     found = pages.shown(_archive(), board, revision)
     if not isinstance(found, pages.Shown):
         return _page("unusable.html", _events(board), seen, board=row, save=listed)
-    change = pages.change(found, found.strips, most=len(found.comparison.movements) if found.comparison else 0)
+    change = pages.change(found, found.strips(), most=len(found.comparison.movements) if found.comparison else 0)
     return _page("revision.html", _events(board), seen, head=pages.head(found), change=change, save=listed)
 
 

@@ -15,7 +15,7 @@ from reactance.analysis.report import Check, Movement, ProblemEntry
 from reactance.dashboard import words
 from reactance.dashboard.origins import Provenance, provenance
 from reactance.dashboard.pages import Head, Shown, head, movement_text
-from reactance.dashboard.rows import TONES, Tone, check_href, numbered, revision_href
+from reactance.dashboard.rows import TONES, Strips, Tone, check_href, numbered, revision_href
 from reactance.dashboard.strip import Strip
 
 SINES = (("slow", 0.1), ("at the corner", 1.0), ("fast", 10.0))
@@ -81,8 +81,8 @@ def check_page(found: Shown, check_id: str) -> CheckPage | None:
     """The page of a check, or None where neither the revision nor its history knows it."""
     report = found.report
     check = next((check for check in report.checks if check.id == check_id), None)
-    cells = found.archive.history.strip(found.board.id).get(check_id, ())
-    if check is None and not cells:
+    strips = found.strips()
+    if check is None and not strips.cells(check_id):
         return None
     before = _earlier(found, check_id)
     known = check or before
@@ -103,14 +103,14 @@ def check_page(found: Shown, check_id: str) -> CheckPage | None:
         tone=TONES.get(move.verdict if move else (check.status if check else "fail"), "watched"),
         explain=check.explain if check else "",
         sides=_sides(found, before, check),
-        strip=found.strips.strip(check_id),
+        strip=strips.strip(check_id),
         curve_href=data_href("curve", found, check_id),
         sine_href=data_href("sine", found, check_id) if about else "",
         sine_at=format_quantity(about, "Hz") if about else "",
         sine_choices=tuple((text, format_quantity(about * factor, "Hz")) for text, factor in SINES) if about else (),
         origin=origin,
         cautions=_cautions(report.problems, origin),
-        moments=_moments(found, known, check_id),
+        moments=_moments(found, strips, known, check_id),
         older_href=older,
         newer_href=newer,
     )
@@ -191,13 +191,12 @@ def _cautions(problems: Sequence[ProblemEntry], origin: Provenance) -> tuple[Pro
     return tuple(problem for problem in problems if problem.severity != "note" and problem.where in origin.about)
 
 
-def _moments(found: Shown, known: Check | None, check_id: str) -> tuple[Moment, ...]:
-    strip = found.strips.strip(check_id)
-    cells = {cell.revision: cell for cell in found.archive.history.strip(found.board.id).get(check_id, ())}
+def _moments(found: Shown, strips: Strips, known: Check | None, check_id: str) -> tuple[Moment, ...]:
+    cells = {cell.revision: cell for cell in strips.cells(check_id)}
     rows = {row.id: row for row in found.revisions}
     unit, measure = (known.unit, known.measure) if known else ("", "")
     moments = []
-    for drawn in reversed(strip.cells):
+    for drawn in reversed(strips.strip(check_id).cells):
         cell, row = cells.get(drawn.column.revision), rows[drawn.column.revision]
         if cell is None and not drawn.column.unjudged:
             continue

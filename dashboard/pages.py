@@ -134,13 +134,12 @@ class Shown:
         """The results of the baseline."""
         return self.archive.report(self.baseline.id) if self.baseline else None
 
-    @property
     def strips(self) -> Strips:
         """Draws strips over this board's last saves, the shown one marked."""
         older = self.older
         return Strips(
+            self.archive,
             self.board.id,
-            self.archive.history.strip(self.board.id),
             columns(self.archive, self.revisions, self.revision.id),
             (older, self.report) if older else (self.report,),
             self.baseline.id if self.baseline else None,
@@ -205,7 +204,7 @@ def _comparison(archive: Archive, revision: RevisionRow, baseline: RevisionRow |
 
 def board_page(found: Shown) -> BoardPage:
     """Everything on the page of one board."""
-    strips, report, board = found.strips, found.report, found.board.id
+    strips, report, board = found.strips(), found.report, found.board.id
     failing = by_weight((check for check in report.checks if check.status == "fail"), found.comparison)
     capacitors = capacitor_rows(board, report)
     few = columns(found.archive, found.revisions, None)
@@ -308,7 +307,7 @@ def page_of_group(found: Shown, scope: str, start: int, most: int) -> Group | No
     """One kind's checks from `start`, at most `most`, the most pressing first; None where there are none."""
     checks = [check for check in found.report.checks if kind_of(check) == scope]
     ordered = by_weight(checks, found.comparison)[start : start + most]
-    return _group(found, found.strips, checks, ordered) if ordered else None
+    return _group(found, found.strips(), checks, ordered) if ordered else None
 
 
 def _group(

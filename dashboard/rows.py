@@ -108,22 +108,29 @@ class Strips:
 
     def __init__(
         self,
+        archive: Archive,
         board: int,
-        cells: Mapping[str, tuple[StripCell, ...]],
         columns: Sequence[Column],
         reports: Sequence[Report],
         baseline: int | None,
     ) -> None:
         """`reports` are the baseline's, if there is one, and the shown revision's; the later one speaks."""
+        self._archive = archive
         self._board = board
-        self._cells = cells
         self._columns = columns
         self._baseline = baseline
+        self._known: dict[str, tuple[StripCell, ...]] = {}
         self._checks = {check.id: check for report in reports for check in report.checks}
+
+    def cells(self, check_id: str) -> tuple[StripCell, ...]:
+        """The cells of one check, read once."""
+        if check_id not in self._known:
+            self._known[check_id] = self._archive.history.cells(self._board, check_id, MOST_COLUMNS)
+        return self._known[check_id]
 
     def strip(self, check_id: str) -> Strip:
         """The strip of one check."""
-        cells = self._cells.get(check_id, ())
+        cells = self.cells(check_id)
         check = self._checks.get(check_id)
         unit = check.unit if check else ""
         before = next((cell.nominal for cell in cells if cell.revision == self._baseline), None)

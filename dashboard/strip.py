@@ -11,6 +11,7 @@ import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
+from markupsafe import Markup, escape
 from reactance.analysis.report import Limit, Status
 from reactance.daemon.history import StripCell
 
@@ -223,3 +224,39 @@ def _summary(name: str, drawn: Sequence[Drawn]) -> str:
     if failing:
         parts.append(f"fails in {failing}")
     return ", ".join(parts)
+
+
+def svg(strip: Strip) -> Markup:
+    """The strip as a drawing in the page. Shapes carry the meaning: hatching, tick, notch; colour repeats it."""
+    last = len(strip.cells) - 1
+    cells = "".join(_cell_svg(cell, strip.pitch, 0 if place == last else -1) for place, cell in enumerate(strip.cells))
+    unlimited = "" if strip.judged else " unlimited"
+    return Markup(
+        f'<svg class="strip{unlimited}" width="{strip.width}" height="{HEIGHT}" viewBox="0 0 {strip.width} {HEIGHT}" '
+        f'preserveAspectRatio="none" role="group" aria-label="{escape(strip.label)}">'
+        f'{cells}<path class="limit" d="M0 {LINE:g}H{strip.width}"/></svg>'
+    )
+
+
+def _cell_svg(cell: Drawn, pitch: int, tab: int) -> str:
+    left = cell.x - (pitch - cell.width) / 2
+    day = f'<path class="day" d="M{left:g} {BASE:g}V{HEIGHT}"/>' if cell.column.new_day else ""
+    if cell.top is None:
+        drawn = f'<path class="none" d="M{cell.middle:g} {BASE:g}v-6"/>'
+    else:
+        drawn = "" if cell.tick is None else _tick_svg(cell, cell.tick, cell.top)
+        # The fill stands here because a style sheet would look for the pattern in itself.
+        hatch = ' fill="url(#hatch)"' if cell.status == "fail" else ""
+        high = max(cell.height, 1.0)
+        drawn += f'<path class="bar" d="M{cell.x:g} {BASE:g}v-{high:g}h{cell.width:g}v{high:g}z"{hatch}/>'
+    notch = f'<path class="notch" d="M{cell.middle:g} {BASE + 2:g}l4 6h-8z"/>' if cell.worse else ""
+    shown = " shown" if cell.column.shown else ""
+    return (
+        f'<a class="cell {cell.status}{shown}" href="{escape(cell.href)}" tabindex="{tab}">'
+        f"<title>{escape(cell.label)}</title>"
+        f'<path class="ground" d="M{left:g} 0h{pitch}v{HEIGHT}h-{pitch}z"/>{day}{drawn}{notch}</a>'
+    )
+
+
+def _tick_svg(cell: Drawn, tick: float, top: float) -> str:
+    return f'<path class="tick" d="M{cell.x:g} {tick:g}h{cell.width:g}M{cell.middle:g} {tick:g}V{top:g}"/>'

@@ -202,9 +202,9 @@ def test_a_large_board_shows_what_presses_and_links_the_rest(history: History, c
     assert ">C1499 voltage stress<" in page
     assert "All 1500" in page
     first = client.get("/board/1/checks/part").get_data(as_text=True)
-    assert first.count('data-key="part:') == 60
-    assert "?from=60" in first
-    assert "C1439 voltage stress" in client.get("/board/1/checks/part?from=60").get_data(as_text=True)
+    assert first.count('data-key="part:') == 40
+    assert "?from=40" in first
+    assert "C1459 voltage stress" in client.get("/board/1/checks/part?from=40").get_data(as_text=True)
 
 
 def test_a_part_of_a_page_is_its_main_element(client: FlaskClient) -> None:
@@ -224,3 +224,11 @@ def test_pages_have_landmarks_captions_and_a_way_past_the_head(client: FlaskClie
         assert page.count("<h1") == 1
         ids = re.findall(r'\sid="([^"]+)"', page)
         assert len(ids) == len(set(ids))
+
+
+def test_the_cells_of_one_check_are_those_of_its_strip(keeper: Keeper) -> None:
+    Keeper(keeper.history, "/home/ana/other.edn", number=60).save(figures(0.5))
+    for check_id, cells in keeper.history.strip(1).items():
+        assert keeper.history.cells(1, check_id) == cells
+    assert [cell.revision for cell in keeper.history.cells(1, DROOP, 2)] == keeper.seen[-2:]
+    assert keeper.history.cells(1, "rail:none:droop") == ()
