@@ -85,7 +85,7 @@ def chip_size(code: str, height: float | None = None) -> ChipSize:
 def parse_size(text: str) -> ChipSize | None:
     """The chip size that a package or footprint name contains, or None.
 
-    `0603`, `C0603`, `SMD_0603`, `1608M`, `1608`, `CAPC1608X90N`, `C_0603_1608Metric`. 0402 and 0603 without a
+    `0603`, `C0603`, `SMD_0603`, `1608M`, `1608`, `CAPC1608X90N`, `0603 (1608 metric)`. 0402 and 0603 without a
     mark for metric are inch codes (common practice).
     """
     name = text.strip().upper()

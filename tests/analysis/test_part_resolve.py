@@ -349,7 +349,7 @@ def test_bead_stated_in_full_with_bias() -> None:
         ("VOLTAGE", "25WV", "rated_voltage", 25.0),
         ("VOLTAGE", "50V max", "rated_voltage", 50.0),
         ("PACKAGE", "0603 (1608 Metric)", "package", "0603"),
-        ("FOOTPRINT", "lib:C_0805_2012Metric", "package", "0805"),
+        ("FOOTPRINT", "chips:C0805-2012M", "package", "0805"),
         ("DIELECTRIC", "Ceramic X7R", "dielectric", "X7R"),
         ("DIELECTRIC", "x5r", "dielectric", "X5R"),
         ("TYPE", "Tantalum, moulded", "technology", "tantalum"),

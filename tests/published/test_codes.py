@@ -308,7 +308,7 @@ def test_sizes(inch: str, metric: str, length: float, width: float) -> None:
         f"SMD_{inch}",
         f"{metric}M",
         f"CAPC{metric}X50N",
-        f"X_{inch}_{metric}Metric",
+        f"{inch} ({metric} metric)",
     ):
         size = parse_size(text)
         assert size is not None, text
