@@ -160,16 +160,16 @@ def coefficients(element: Element, values: Values, count: int, *, lossy: bool) -
     elif isinstance(element, VoltageSource):
         terms = ((one, zero, zero), (get("resistance"), get("inductance"), zero))
     elif isinstance(element, Inductor):
-        r, l, c = get("dcr"), get("inductance"), get("parallel_capacitance")
-        terms = ((one, c * r, l * c), (r, l, zero))
+        r, ind, c = get("dcr"), get("inductance"), get("parallel_capacitance")
+        terms = ((one, c * r, ind * c), (r, ind, zero))
     elif isinstance(element, Bead):
-        dcr, l, c = get("dcr"), get("inductance"), get("capacitance")
+        dcr, ind, c = get("dcr"), get("inductance"), get("capacitance")
         g = 1.0 / get("resistance")
-        terms = ((one, l * g, l * c), (dcr, dcr * l * g + l, dcr * l * c))
+        terms = ((one, ind * g, ind * c), (dcr, dcr * ind * g + ind, dcr * ind * c))
     elif isinstance(element, Capacitor):
-        r, l, g = get("esr"), get("esl"), 1.0 / get("leakage")
+        r, ind, g = get("esr"), get("esl"), 1.0 / get("leakage")
         c = get("capacitance") * (1.0 - 1j * get("loss_tangent")) if lossy else get("capacitance")
-        terms = ((g, c, zero), (1.0 + r * g, r * c + l * g, l * c))
+        terms = ((g, c, zero), (1.0 + r * g, r * c + ind * g, ind * c))
     else:
         raise TypeError(f"{type(element).__name__} has no admittance of its own")
     numerator, denominator = terms

@@ -130,9 +130,7 @@ def _fall(amplitude: FloatArray, p: ComplexArray, room: FloatArray) -> FloatArra
     return np.asarray(high)
 
 
-def greatest(
-    pieces: Pieces, about: FloatArray, sign: float, *, rough: bool = False
-) -> tuple[FloatArray, FloatArray]:
+def greatest(pieces: Pieces, about: FloatArray, sign: float, *, rough: bool = False) -> tuple[FloatArray, FloatArray]:
     """Time and size of the greatest sign·(v − about) over t > 0: each (V,). `sign` 0 takes the greatest |v − about|.
 
     The time is infinite where the greatest is only approached. `rough` leaves extremes between samples at what the
@@ -143,7 +141,7 @@ def greatest(
     best = _score(final, about, sign)
     best = np.where(np.isnan(best), -np.inf, best)
     for k in range(pieces.start.shape[1]):
-        found = sample(pieces, k)
+        found: Samples | None = sample(pieces, k)
         while found is not None:
             times, scores = _best_of(pieces, found, about, sign, rough)
             better = scores > best * (1.0 + 1e-13 * np.sign(best))
@@ -230,7 +228,9 @@ def polish_turn(pieces: Pieces, found: Samples, choice: NDArray[np.intp]) -> Flo
     return _narrow(low, high, beyond, 1e-8)
 
 
-def polish_crossing(pieces: Pieces, k: NDArray[np.intp], low: FloatArray, high: FloatArray, level: FloatArray) -> FloatArray:
+def polish_crossing(
+    pieces: Pieces, k: NDArray[np.intp], low: FloatArray, high: FloatArray, level: FloatArray
+) -> FloatArray:
     """Where v passes `level` (V,) between times `low` and `high` (V,) of pieces k (V,)."""
     start, _ = pieces.gathered(k[:, None], low[:, None])
     above = start[:, 0] > level

@@ -13,7 +13,7 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 from reactance.analysis.circuit.network import CircuitError, ComplexArray, FloatArray, Network, Parameter
 from reactance.analysis.circuit.roots import Question, find_roots
 from reactance.analysis.circuit.system import NEAR_INFINITY, NEAR_ZERO, Drive, System
@@ -155,13 +155,13 @@ def _share_conjugates(poles: ComplexArray, residues: ComplexArray) -> ComplexArr
     return np.asarray(np.where(poles.imag == 0, residues.real, residues))
 
 
-def _clearance(poles: ComplexArray, missing: FloatArray) -> FloatArray:
+def _clearance(poles: ComplexArray, missing: NDArray[np.bool_]) -> FloatArray:
     """Distance from each pole to the nearest other one, or to 0."""
     distance = np.abs(poles[:, :, None] - poles[:, None, :])
     n = poles.shape[1]
     distance[:, np.arange(n), np.arange(n)] = np.inf
     distance = np.where(missing[:, None, :], np.inf, distance)
-    return np.maximum(np.minimum(distance.min(axis=2), np.abs(poles)), 1e-13 * np.abs(poles))
+    return np.asarray(np.maximum(np.minimum(distance.min(axis=2), np.abs(poles)), 1e-13 * np.abs(poles)))
 
 
 @dataclass(frozen=True, slots=True)
@@ -171,7 +171,7 @@ class _Group:
     radius: float
 
 
-def _groups(poles: ComplexArray, missing: FloatArray) -> list[_Group]:
+def _groups(poles: ComplexArray, missing: NDArray[np.bool_]) -> list[_Group]:
     """Groups of poles too close together to be taken one by one."""
     usable = np.flatnonzero(~missing)
     p = poles[usable]

@@ -177,9 +177,8 @@ class Network:
         changes: dict[str, dict[str, float]] = {}
         for (name, attribute), value in values.items():
             changes.setdefault(name, {})[attribute] = value
-        for name in changes:
-            known = {field.name for field in fields(self.element(name))}
-            wrong = set(changes[name]) - known
+        for name, change in changes.items():
+            wrong = set(change) - {field.name for field in fields(self.element(name))}
             if wrong:
                 raise CircuitError(f"{name} has no attribute {', '.join(sorted(wrong))}", elements=(name,))
         return Network(

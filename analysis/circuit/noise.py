@@ -129,8 +129,8 @@ def _of_element(index: int, element: Element, get: Values) -> list[_Origin]:
             found.append(_Origin(index, get("leakage")[:, 0], lambda s, y: y * g / (g + s * c)))
         return found
     if isinstance(element, Inductor):
-        r, l = get("dcr"), get("inductance")
-        return [_Origin(index, r[:, 0], lambda s, y: 1.0 / (r + s * l))] if element.dcr else []
+        r, ind = get("dcr"), get("inductance")
+        return [_Origin(index, r[:, 0], lambda s, y: 1.0 / (r + s * ind))] if element.dcr else []
     if isinstance(element, Bead):
         gb, lb, cb = 1.0 / get("resistance"), get("inductance"), get("capacitance")
         tank = _Origin(

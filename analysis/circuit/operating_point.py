@@ -186,19 +186,14 @@ class _Solver:
         self.found = found
         return found
 
-    def _components(self, gains: Sequence[_Gain]) -> Iterable[_Component]:
+    def _tied(self, gains: Sequence[_Gain]) -> Potentials:
         """Unknown groups that conductors and gains tie together, apart from the ground's group."""
-        for gain in gains:
-            if self.where[gain.out][0] == self.home:
-                raise CircuitError(
-                    f"the output of {gain.name} has no resistance and is held by another source", elements=(gain.name,)
-                )
         tied = Potentials(self.home)
         for root in self.found:
             tied.add(root)
 
         def tie(a: str, b: str) -> None:
-            if a != self.home and b != self.home and a in self.found and b in self.found:
+            if self.home not in (a, b) and a in self.found and b in self.found:
                 tied.unite(a, b)
 
         for c in self.taken.conductors:
@@ -206,6 +201,16 @@ class _Solver:
         for gain in gains:
             tie(self.where[gain.out][0], self.where[gain.plus][0])
             tie(self.where[gain.out][0], self.where[gain.minus][0])
+        return tied
+
+    def _components(self, gains: Sequence[_Gain]) -> Iterable[_Component]:
+        """The networks that can be solved on their own."""
+        for gain in gains:
+            if self.where[gain.out][0] == self.home:
+                raise CircuitError(
+                    f"the output of {gain.name} has no resistance and is held by another source", elements=(gain.name,)
+                )
+        tied = self._tied(gains)
         parts: dict[str, _Component] = {}
 
         def part(*nodes: str) -> _Component | None:
@@ -275,9 +280,7 @@ class _Solver:
 
     def node_voltages(self) -> dict[str, float]:
         """The voltage of every node that has one."""
-        return {
-            node: self.level[root] + offset for node, (root, offset) in self.where.items() if root in self.level
-        }
+        return {node: self.level[root] + offset for node, (root, offset) in self.where.items() if root in self.level}
 
     def currents(self) -> dict[str, float]:
         """Currents by element name, as `OperatingPoint` states them."""

@@ -16,9 +16,9 @@ _SERIES = [1.0 / math.factorial(k + 2) for k in range(17)]
 
 def phi(x: ComplexArray, second: bool) -> tuple[ComplexArray, ComplexArray, ComplexArray | None]:
     """eˣ, φ1(x) and, where `second`, φ2(x) at complex x of any shape with real part not far above 0."""
-    minus_one = np.expm1(x)
+    minus_one: ComplexArray = np.expm1(x)
     safe = np.where(x == 0, 1.0, x)
-    one = np.where(x == 0, 1.0, minus_one / safe)
+    one: ComplexArray = np.where(x == 0, 1.0, minus_one / safe)
     if not second:
         return minus_one + 1.0, one, None
     small = np.abs(x) < 1.0

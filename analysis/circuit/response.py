@@ -222,7 +222,7 @@ def _inside_peaks(size: FloatArray) -> NDArray[np.bool_]:
 def evaluate(system: System, source: str, probe: tuple[str, str], frequencies: FloatArray) -> ComplexArray:
     """The response (V, F) at `frequencies` (V or 1, F) in Hz, with the limits at 0 and inf."""
     rates = np.clip(2.0 * np.pi * frequencies, NEAR_ZERO, NEAR_INFINITY)
-    answer = system.respond(1j * rates, system.drive(source), probe)
+    answer = system.respond(np.asarray(1j * rates), system.drive(source), probe)
     at_limit = np.broadcast_to((rates == NEAR_ZERO) | (rates == NEAR_INFINITY), answer.shape)
     return np.where(at_limit, _limit(answer), answer) if at_limit.any() else answer
 

@@ -51,7 +51,7 @@ class Question:
 
     def _inverse(self, forest: Forest, s: ComplexArray) -> tuple[Equations, ComplexArray]:
         eq = self.system.equations(forest, s, self.drive, self.probe, slopes=True)
-        return eq, np.linalg.inv(eq.matrix)
+        return eq, np.asarray(np.linalg.inv(eq.matrix))
 
     def only(self, rows: NDArray[np.intp]) -> Question:
         """The same question of some of the sets of values."""

@@ -152,11 +152,11 @@ def large_signal_start(
     scale = np.array([state.size for state in states]) * max(_greatest_level(network), 1e-3)
 
     def rate(t: float, y: FloatArray) -> FloatArray:
-        return matrix @ levels(y[:, None])[:, 0] + constant
+        return np.asarray(matrix @ levels(y[:, None])[:, 0] + constant)
 
     def slope(t: float, y: FloatArray) -> FloatArray:
         h = 1e-6 * scale
-        return matrix * ((levels((y + h)[:, None]) - levels((y - h)[:, None]))[:, 0] / (2.0 * h))
+        return np.asarray(matrix * ((levels((y + h)[:, None]) - levels((y - h)[:, None]))[:, 0] / (2.0 * h)))
 
     end = _horizon(network, seen)
     solution = _integrate(rate, slope, end, np.zeros(len(states)), tolerance, tolerance * 1e-2 * scale)
@@ -267,9 +267,7 @@ class _Builder:
         source = f"{name} current"
         self.made.append(CurrentSource(source, a, b, 0.0))
         self.made.append(Resistor(f"{name} shunt", a, b, self.most))
-        self.states.append(
-            _State(source, a, b, 1.0 / inductance, dcr / inductance, lambda y: y, 1.0 / max(dcr, 1.0))
-        )
+        self.states.append(_State(source, a, b, 1.0 / inductance, dcr / inductance, lambda y: y, 1.0 / max(dcr, 1.0)))
 
     def _amplifier(self, e: Amplifier) -> None:
         rate = 2.0 * math.pi * e.gain_bandwidth

@@ -131,10 +131,11 @@ class System:
         self.measured = tuple(i for i, branch in enumerate(self.branches) if branch.impedance is not None)
         lossy = not self.over_time
         blank = np.zeros((1, 3), complex)
-        fixed, varied = [], []
+        fixed: list[tuple[ComplexArray, ComplexArray]] = []
+        varied: list[tuple[ComplexArray, ComplexArray]] = []
         for i, branch in enumerate(self.branches):
             if branch.impedance is not None:
-                fixed.append((blank, blank + 1.0))
+                fixed.append((blank, np.asarray(blank + 1.0)))
             elif i < self.fixed:
                 fixed.append(coefficients(branch.element, {}, 1, lossy=lossy))
             else:
@@ -154,6 +155,7 @@ class System:
 
     def drive(self, source: str | None = None) -> Drive:
         """Unit excitation of one source, or (None) every source at its DC level."""
+
         def level(element: object) -> float:
             if source is not None:
                 return float(isinstance(element, VoltageSource) and element.name == source)
@@ -253,9 +255,7 @@ class System:
             return Equations(matrix, rhs, layout.observe, layout.known)
         fixed, varied = self.admittance_slopes(s, True), self.admittance_slopes(s, False)
         matrix_slope, rhs_slope = layout.assemble([fixed[0], varied[0]], None)
-        return Equations(
-            matrix, rhs, layout.observe, layout.known, matrix_slope, rhs_slope, fixed[1] + varied[1]
-        )
+        return Equations(matrix, rhs, layout.observe, layout.known, matrix_slope, rhs_slope, fixed[1] + varied[1])
 
     def probe(self, probe: str | tuple[str, str]) -> tuple[str, str]:
         """The pair of nodes of a probe. Raises `CircuitError` for an unknown node."""
@@ -356,9 +356,7 @@ class _Layout:
         component = self.forest.component
         if component[self.at[a]] != component[self.at[b]]:
             nodes = tuple(node for node in (a, b) if component[self.at[node]] != 0)
-            raise CircuitError(
-                f"{what} {a} and {b}, but no path joins them: {', '.join(nodes)} floats", nodes=nodes
-            )
+            raise CircuitError(f"{what} {a} and {b}, but no path joins them: {', '.join(nodes)} floats", nodes=nodes)
         return self.forest.path(self.at[a], self.at[b])
 
     def assemble(self, y: Sequence[ComplexArray], s: ComplexArray | None) -> tuple[ComplexArray, ComplexArray]:

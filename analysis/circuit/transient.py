@@ -284,7 +284,7 @@ def _rates(poles: ComplexArray, low: float, high: float) -> FloatArray:
 
 @dataclass(frozen=True, slots=True)
 class SineResponse:
-    """The response to amplitude·sin(2πft) from rest: `ratio` and `lag` (radians, positive = output late) once settled."""
+    """The response to amplitude·sin(2πft) from rest; `ratio` and `lag` (radians, positive = late) once settled."""
 
     response: PoleResidue
     frequency: float
