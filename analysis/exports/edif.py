@@ -9,12 +9,14 @@ from contextlib import contextmanager
 from reactance.analysis.design import Design, InputError
 from reactance.analysis.exports import edif_entries as says
 from reactance.analysis.exports.edif_again import LastReading, last_reading, same_but_attributes
-from reactance.analysis.exports.edif_cells import Catalogue, top_cell
-from reactance.analysis.exports.edif_connect import netlists
+from reactance.analysis.exports.edif_build import declaration
+from reactance.analysis.exports.edif_cells import Catalogue
 from reactance.analysis.exports.edif_flatten import Flat, flatten
 from reactance.analysis.exports.edif_forms import FormMemory, Sexp, declared
+from reactance.analysis.exports.edif_hierarchy import netlists
 from reactance.analysis.exports.edif_scan import Container, Entry, outline
 from reactance.analysis.exports.edif_source import Source
+from reactance.analysis.exports.edif_top import top_cell
 from reactance.analysis.exports.limits import DEFAULT_LIMITS, Limits
 
 __all__ = ["FormMemory", "read_edif"]
@@ -91,9 +93,9 @@ def _declare(
     texts = [text[entry.start : entry.end] for entry in entries]
     if aliases:
         # The text of a form says what it does only together with the aliases: nothing is remembered.
-        values = declared(texts, lambda form: says.declaration(_standard(form, aliases)), None, prune=False)
+        values = declared(texts, lambda form: declaration(_standard(form, aliases)), None, prune=False)
     else:
-        values = declared(texts, says.declaration, memory)
+        values = declared(texts, declaration, memory)
     for entry, value in zip(entries, values, strict=True):
         entry.value = value
         if isinstance(value, says.Bad):

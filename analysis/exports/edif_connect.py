@@ -2,11 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from dataclasses import dataclass, field
-from types import MappingProxyType
 
-from reactance.analysis.design import InputError
 from reactance.analysis.exports import edif_entries as says
 from reactance.analysis.exports.edif_cells import Catalogue, Interface, PortGroup, Scope, View
 from reactance.analysis.exports.edif_names import Name, flattened, member_names
@@ -196,31 +193,35 @@ class Connector:
     def _attach(
         self, nodes: list[int], reached: list[_End], net: says.Net, ref: says.Ref, entry: Entry
     ) -> None:
-        if len(nodes) == len(reached):
-            for node, end in zip(nodes, reached, strict=True):
-                self._tie(node, end, net, entry)
-        elif len(nodes) == 1:
-            if not isinstance(ref, says.PortList) and reached:
+        if len(nodes) == 1 and len(reached) > 1:
+            if not isinstance(ref, says.PortList):
                 message = f"net {net.name.text} joins a bus of {len(reached)} to single ports; all are taken as one net"
                 self._source.problem("caution", entry.start, message)
-            for end in reached:
-                self._tie(nodes[0], end, net, entry)
-        elif reached:
+            nodes = nodes * len(reached)
+        elif reached and len(nodes) != len(reached):
             message = f"net {net.name.text} has {len(nodes)} members but joins {len(reached)}; not connected"
             self._source.problem("error", entry.start, message)
+            return
+        shorts = [end for node, end in zip(nodes, reached, strict=False) if self._tie(node, end)]
+        if shorts:
+            part = self._parts[shorts[0].part]
+            pin = f"{part.name}.{part.interface.bits[shorts[0].bit].name}"
+            pins = f"pin {pin} stands" if len(shorts) == 1 else f"{len(shorts)} pins ({pin} and others) stand"
+            message = f"{pins} in net {net.name.text} and in another; they are taken as one net"
+            self._source.problem("caution", entry.start, message)
 
-    def _tie(self, node: int, end: _End, net: says.Net, entry: Entry) -> None:
+    def _tie(self, node: int, end: _End) -> bool:
+        """Put the end on the node; whether it was on another net before, which is now one net with this."""
         if end.node >= 0:
             self._nodes.join(node, end.node)
-            return
-        part = self._parts[end.part]
-        before = part.nodes.get(end.bit)
-        part.nodes[end.bit] = node
-        if before is not None and self._nodes.root(before) != self._nodes.root(node):
-            pin = part.interface.bits[end.bit].name
-            message = f"pin {part.name}.{pin} stands in net {net.name.text} and in another; they are taken as one net"
-            self._source.problem("caution", entry.start, message)
-            self._nodes.join(before, node)
+            return False
+        on = self._parts[end.part].nodes
+        before = on.get(end.bit)
+        on[end.bit] = node
+        if before is None or self._nodes.root(before) == self._nodes.root(node):
+            return False
+        self._nodes.join(before, node)
+        return True
 
     def _nest(self, nodes: list[int], net: says.Net, inner: says.Net, scope: int, entry: Entry) -> None:
         """A net within a net is a stretch of it: of the whole, or of the member that it names."""
@@ -362,39 +363,3 @@ class Connector:
         result.ports = {bit: renumbered[node] for bit, node in self._ports.items()}
         result.globals = {key: (name, renumbered[node]) for key, (name, node) in self._globals.items()}
         return result
-
-
-def netlists(top: View, catalogue: Catalogue, source: Source) -> Mapping[int, Netlist]:
-    """The netlist of `top` and of every view below it, by the view's id.
-
-    Raises InputError where a cell contains itself, naming the cells on the way.
-    """
-    done: dict[int, Netlist] = {}
-    path: list[tuple[View, list[View]]] = []
-    entering: View | None = top
-    while entering is not None or path:
-        if entering is not None:
-            netlist = Connector(entering, catalogue, source).netlist()
-            done[id(entering)] = netlist
-            below = {id(part.inside): part.inside for part in netlist.parts if part.inside is not None}
-            path.append((entering, list(below.values())))
-            source.check("levels", len(path), entering.cell.start)
-            entering = None
-            continue
-        below_it = path[-1][1]
-        if not below_it:
-            path.pop()
-            continue
-        following = below_it.pop()
-        chain = [each for each, _ in path]
-        if following in chain:
-            loop = [*chain[chain.index(following) :], following]
-            names = " → ".join(each.cell.name.text for each in loop)
-            raise InputError(
-                f"the hierarchy contains itself: {names}",
-                source.place(following.cell.start),
-                "take one of these instances out of its cell",
-            )
-        if id(following) not in done:
-            entering = following
-    return MappingProxyType(done)

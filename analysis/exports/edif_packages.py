@@ -43,16 +43,33 @@ def flat_part(
     return Part(refdes, pins, attributes, local.target.name, path, source.place(local.start))
 
 
-_MOST_SECTIONS = 100  # of equal parts, the first so many are asked whether another is a section of them
+_MOST_ASKED = (
+    8  # of several parts with one refdes, the first so many are asked whether another is a section of them
+)
 
 
 @dataclass(slots=True)
 class _Candidate:
-    """A part whose refdes is also another's; `named` where it is more than the name of an instance."""
+    """A part whose refdes is also another's; `named` where it is more than the name of an instance.
+
+    `pins` are its pins by number and `sections` the instances that were found to be one package with it.
+    """
 
     part: Part
     local: LocalPart
     named: bool
+    pins: dict[str, Pin]
+    sections: list[Part]
+
+    def whole(self) -> Part:
+        """The part with the pins and attributes of all its sections; the first one's word counts."""
+        if not self.sections:
+            return self.part
+        attributes: dict[str, str] = {}
+        for section in (self.part, *self.sections):
+            for name, text in section.attributes.items():
+                attributes.setdefault(name, text)
+        return replace(self.part, pins=tuple(self.pins.values()), attributes=MappingProxyType(attributes))
 
 
 def packages(parts: list[Part], locals_: list[LocalPart], source: Source) -> tuple[Part, ...]:
@@ -66,7 +83,13 @@ def packages(parts: list[Part], locals_: list[LocalPart], source: Source) -> tup
     if len(counts) == len(parts):
         return tuple(parts)
     candidates = [
-        _Candidate(part, local, bool(local.refdes) or part.refdes != local.name)
+        _Candidate(
+            part,
+            local,
+            bool(local.refdes) or part.refdes != local.name,
+            {pin.number: pin for pin in part.pins},
+            [],
+        )
         for part, local in zip(parts, locals_, strict=True)
     ]
     return _own_names(_sections(candidates, counts), source)
@@ -109,30 +132,26 @@ def _sections(candidates: list[_Candidate], counts: Mapping[str, int]) -> list[_
     for each in candidates:
         if each.named and counts[each.part.refdes] > 1:
             same = by_refdes.setdefault(each.part.refdes, [])
-            whole = next((other for other in same[:_MOST_SECTIONS] if _one_package(other, each)), None)
-            if whole is not None:
-                whole.part = _merged(whole.part, each.part)
+            package = next((other for other in same if _one_package(other, each)), None)
+            if package is not None:
+                package.sections.append(each.part)
+                for number, pin in each.pins.items():
+                    if number not in package.pins or package.pins[number].net is None:
+                        package.pins[number] = pin
                 continue
-            same.append(each)
+            if len(same) < _MOST_ASKED:
+                same.append(each)
         kept.append(each)
+    for each in kept:
+        each.part = each.whole()
     return kept
 
 
 def _one_package(one: _Candidate, other: _Candidate) -> bool:
     """Whether two instances of equal designator are sections: they share no pin, or only some, each on one net."""
-    if one.local is other.local or not one.part.pins or not other.part.pins:
+    if one.local is other.local or not one.pins or not other.pins:
         return False
-    pins = {pin.number: pin.net for pin in one.part.pins}
-    common = [(pins[pin.number], pin.net) for pin in other.part.pins if pin.number in pins]
-    if len(common) == len(other.part.pins) == len(one.part.pins):
+    common = [(one.pins[number].net, pin.net) for number, pin in other.pins.items() if number in one.pins]
+    if len(common) == len(other.pins) == len(one.pins):
         return False
     return all(before == after or before is None or after is None for before, after in common)
-
-
-def _merged(whole: Part, section: Part) -> Part:
-    nets = {pin.number: pin.net for pin in section.pins}
-    known = {pin.number for pin in whole.pins}
-    filled = [pin if pin.net is not None else replace(pin, net=nets.get(pin.number)) for pin in whole.pins]
-    more = [pin for pin in section.pins if pin.number not in known]
-    attributes = MappingProxyType({**section.attributes, **whole.attributes})
-    return replace(whole, pins=(*filled, *more), attributes=attributes)

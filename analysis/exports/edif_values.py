@@ -43,7 +43,7 @@ class Attribute(NamedTuple):
     unit: str = ""
 
 
-def attributes(form: list[Sexp]) -> Iterator[Attribute]:
+def attributes(form: Sexp) -> Iterator[Attribute]:
     """The attributes that `(property …)`, `(parameter …)` or `(parameterAssign …)` gives.
 
     A `miNoMax` gives its nominal value under the property's name and the others as `NAME minimum`, `NAME maximum`.

@@ -20,12 +20,12 @@ class Limits:
     bytes: int = 100_000_000
     depth: int = 100
     forms: int = 1_000_000
-    parts: int = 200_000
-    pins: int = 2_000_000
+    parts: int = 250_000
+    pins: int = 1_000_000
     blocks: int = 100_000
     levels: int = 1_000
     paths: int = 50_000_000
-    array: int = 65_536
+    array: int = 16_384
     name: int = 1_000
     text: int = 100_000
     columns: int = 1_000

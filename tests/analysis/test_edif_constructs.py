@@ -17,7 +17,8 @@ LEAVES = """
    (interface (port (array (rename D "D[3:0]") 4) (direction OUTPUT)) (port EN (designator "9") (direction INPUT))
     (designator "U?"))))
   (cell PLUG (cellType GENERIC) (view V (viewType NETLIST)
-   (interface (portBundle PAIR (listOfPorts (port P (designator "1")) (port N (designator "2")))) (port SH (designator "3"))
+   (interface (portBundle PAIR (listOfPorts (port P (designator "1")) (port N (designator "2"))))
+    (port SH (designator "3"))
     (designator "J?")))))
 """
 
@@ -43,7 +44,8 @@ def board(
 ) -> Design:
     return read(
         f"{HEAD} {LEAVES} (library MAIN (edifLevel 0) (technology (numberDefinition)) {cells}"
-        f" (cell TOP (cellType GENERIC) (view V (viewType {view}) (interface {interface}) (contents {contents})) {more}))"
+        f" (cell TOP (cellType GENERIC) (view V (viewType {view}) (interface {interface}) (contents {contents}))"
+        f" {more}))"
         " (design board (cellRef TOP (libraryRef MAIN))))"
     )
 
@@ -345,7 +347,8 @@ def test_sections_of_one_package_are_one_part() -> None:
     design = board(
         '(instance I1 (viewRef V (cellRef G1)) (designator "U1") (property VALUE (string "gate")))'
         '(instance I2 (viewRef V (cellRef G2)) (designator "U1"))'
-        "(net A (joined (portRef A (instanceRef I1)))) (net M (joined (portRef Y (instanceRef I1)) (portRef A (instanceRef I2))))"
+        "(net A (joined (portRef A (instanceRef I1))))"
+        "(net M (joined (portRef Y (instanceRef I1)) (portRef A (instanceRef I2))))"
         "(net P (joined (portRef VCC (instanceRef I1)) (portRef VCC (instanceRef I2))))",
         cells=cells,
     )

@@ -231,6 +231,30 @@ def test_bombs_are_refused_before_they_grow() -> None:
     assert any("expected a number" in problem.message for problem in read(digits).problems)
 
 
+def test_many_parts_of_one_refdes_do_not_hang() -> None:
+    again = " ".join(f'(instance I{n} (viewRef V (cellRef CAP)) (designator "C7"))' for n in range(500))
+    design = read(changed("(net N (joined", f"{again} (net N (joined"))
+    assert len(design.parts_by_refdes) == 502
+    assert {"C7", "C7#2", "C7#500"} <= set(design.parts_by_refdes)
+
+
+def test_a_package_of_many_sections_is_one_part() -> None:
+    cells = " ".join(f"(cell S{n} (view V (viewType NETLIST) (interface (port P{n}))))" for n in range(500))
+    sections = " ".join(f'(instance I{n} (viewRef V (cellRef S{n})) (designator "J1"))' for n in range(500))
+    design = read(changed("  (cell TOP", f"  {cells} (cell TOP").replace("(net N (", f"{sections} (net N ("))
+    part = design.part("J1")
+    assert part is not None
+    assert [pin.number for pin in part.pins] == [f"P{n}" for n in range(500)]
+    assert len(design.parts) == 3
+
+
+def test_arrays_that_multiply_are_refused() -> None:
+    many = "(instance (array R 16000) (viewRef V (cellRef BIG)))"
+    cell = "(cell BIG (view V (viewType NETLIST) (interface (port (array D 16000)))))"
+    error = fault(changed("  (cell TOP", f"  {cell} (cell TOP").replace("(net N (", f"{many} (net N ("))
+    assert "256,000,002 pins" in error.message or "256,000,000 pins" in error.message
+
+
 def test_names_are_shown_as_text_and_cannot_act() -> None:
     design = read(changed("(net N (", '(net (rename N "<script>%27%[2J%10%") ('))
     assert design.nets[0].name == "<script>%27%[2J%10%"

@@ -10,9 +10,13 @@ TWO_PIN = """(cell {name} (cellType GENERIC) (view V (viewType NETLIST) (interfa
   (port A (designator "1") (direction INOUT)) (port B (designator "2") (direction INOUT)) (designator "{prefix}?"))))"""
 
 
-def file_of(cells: str, *, design: str = '(design board (cellRef TOP (libraryRef L)))', head: str = "") -> bytes:
+def file_of(
+    cells: str, *, design: str = "(design board (cellRef TOP (libraryRef L)))", head: str = ""
+) -> bytes:
     """A whole EDIF file with a capacitor and a resistor in library L."""
-    parts = "\n".join(TWO_PIN.format(name=name, prefix=prefix) for name, prefix in (("CAP", "C"), ("RES", "R")))
+    parts = "\n".join(
+        TWO_PIN.format(name=name, prefix=prefix) for name, prefix in (("CAP", "C"), ("RES", "R"))
+    )
     return f"""(edif made (edifVersion 2 0 0) (edifLevel 0) (keywordMap (keywordLevel 0)) {head}
 (library L (edifLevel 0) (technology (numberDefinition))
 {parts}

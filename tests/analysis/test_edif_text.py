@@ -65,6 +65,7 @@ STRINGS = st.text(st.characters(codec="utf-8", exclude_characters='"'))
         max_leaves=20,
     )
 )
+@settings(max_examples=60, deadline=None)
 def test_forms_come_out_as_they_stand(form: object) -> None:
     def written(item: object) -> str:
         return f"({' '.join(map(written, item))})" if isinstance(item, list) else str(item)
@@ -113,7 +114,7 @@ def test_code_of_a_character_in_a_name() -> None:
 
 
 @given(STRINGS)
-@settings(max_examples=200)
+@settings(max_examples=100, deadline=None)
 def test_no_name_can_act_on_a_terminal(text: str) -> None:
     assert not any(ord(character) < 32 or 127 <= ord(character) < 160 for character in visible(text))
 
