@@ -94,6 +94,10 @@ class Archive:
         files = self.history.files(key[1])
         if self._analyse is not None:
             return self._analyse(files)
-        from reactance.analysis.study import analyse
+        from reactance.analysis.study import Memory, analyse
 
-        return analyse(files)
+        memory = Memory()
+        revision = self.history.revision(key[1])
+        for blocks in self.history.blocks(revision.board) if revision else ():
+            memory.import_blocks(blocks)  # solved when the revision was stored, and not to be solved again
+        return analyse(files, memory=memory)
