@@ -62,8 +62,9 @@ def _read(source: Source, memory: FormMemory | None) -> Design:
     if reading is not None:
         memory.keep(source.file, reading)
         return reading.design
+    scanned = source.problems()
     made = _design(source, top)
-    memory.keep(source.file, last_reading(source, top, entries, made))
+    memory.keep(source.file, last_reading(source, top, entries, made, scanned))
     return made.design
 
 

@@ -21,6 +21,7 @@ class Save:
     named_by: str
     block_value: str
     default: str
+    mishap: str = ""
 
     def text(self) -> bytes:
         def instance(number: int, value: str) -> str:
@@ -45,6 +46,7 @@ class Save:
 (cell TOP (view V (viewType NETLIST) (interface) (contents
 {self.remark.join(instance(number, value) for number, value in enumerate(self.values))}
 (instance B1 (viewRef V (cellRef BLOCK))) (instance B2 (viewRef V (cellRef BLOCK)))
+{self.mishap}
 (net GND (joined {net}))))))
 (design board (cellRef TOP)))""".encode()
 
@@ -62,6 +64,7 @@ SAVES = st.builds(
     st.sampled_from(["designator", "designator", "name", "property", "value", "nothing"]),
     st.sampled_from(["1k", "2k"]),
     st.sampled_from(["", "", "16V", "25V"]),
+    st.sampled_from(["", "", "(instance)", "(oops X)", "(net LOST (joined (portRef A (instanceRef I77))))"]),
 )
 
 
@@ -90,6 +93,7 @@ def test_one_value_after_another(save: Save, data: st.DataObject) -> None:
             save.named_by,
             data.draw(st.sampled_from(["1k", "2k"])),
             save.default,
+            save.mishap,
         )
         fresh = read_edif(save.text(), "board.edn")
         assert everything(read_edif(save.text(), "board.edn", memory=memory)) == everything(fresh)
