@@ -131,9 +131,18 @@ class Design:
                 table.setdefault(alias, net)
         return MappingProxyType(table)
 
+    @cached_property
+    def _parts_by_path(self) -> Mapping[str, Part]:
+        """Parts inside blocks by `PATH/REFDES`."""
+        table: dict[str, Part] = {}
+        for part in self.parts:
+            if part.path:
+                table.setdefault("/".join((*part.path, part.refdes)), part)
+        return MappingProxyType(table)
+
     def part(self, refdes: str) -> Part | None:
-        """The part of that reference designator, or None."""
-        return self.parts_by_refdes.get(refdes)
+        """The part of that reference designator, also as `PATH/REFDES` with the blocks it stands in, or None."""
+        return self.parts_by_refdes.get(refdes) or self._parts_by_path.get(refdes)
 
     def net(self, name: str) -> Net | None:
         """The net that answers to `name` (its name or an alias), or None."""

@@ -157,3 +157,6 @@ def test_a_block_used_once_keeps_plain_names_and_answers_to_the_path() -> None:
     net = design.net("B1/MID")
     assert net is not None
     assert net.name == "MID"
+    found = design.pin("B1/C1.B")
+    assert found is not None
+    assert (found[0].refdes, found[1].net) == ("C1", "OUT")
