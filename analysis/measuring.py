@@ -13,8 +13,9 @@ import numpy as np
 from reactance.analysis.blocks import Block
 from reactance.analysis.circuit.modal import PoleResidue, pole_residue
 from reactance.analysis.circuit.network import ComplexArray, FloatArray, Parameter
-from reactance.analysis.circuit.spread import sensitivities, spread
-from reactance.analysis.circuit.sweep import Response, frequency_response
+from reactance.analysis.circuit.response import Response
+from reactance.analysis.circuit.spread import spread
+from reactance.analysis.circuit.sweep import frequency_response
 from reactance.analysis.circuit.transient import TimeResponse, step
 from reactance.analysis.values import Value, banded
 
@@ -35,7 +36,7 @@ def band(
         return banded(nominal, nominal, nominal, unit, note, missing)
     found = spread(measure, parameters)
     value = banded(found.nominal, found.low, found.high, unit, note, missing)
-    return value if not value.known else _with_shares(value, sensitivities(measure, parameters), parameters)
+    return value if not value.known else _with_shares(value, found.shares, parameters)
 
 
 def _with_shares(value: Value, shares: FloatArray, parameters: Sequence[Parameter]) -> Value:

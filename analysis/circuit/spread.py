@@ -19,50 +19,101 @@ Measure = Callable[[FloatArray], FloatArray]
 EXHAUSTIVE = 8  # up to this many parameters every vertex is looked at
 _ROWS = 512  # most rows handed to a measure at once
 _INTERIOR = 24
-_STARTS = 8
+_STARTS = 6
 _FINER = 1e-5  # an improvement below this share of the figure is no improvement: bands are promised to 0.1 %
-_FINEST_STEP = 4e-3  # of a range; the figure is flat about an inside extreme, so its error is far smaller
+_FINEST_STEP = 2e-3  # of a range; the figure is flat about an inside extreme, so its error is far smaller
+_IDLE = 3e-3  # beyond `EXHAUSTIVE` parameters: those that together move less than this share are not flipped
 _NORMAL_975 = 1.959963984540054
 
 
 @dataclass(frozen=True, slots=True)
 class Spread:
-    """A measure's nominal and extremes, and the values (P,) at which the extremes occur."""
+    """A measure's nominal and extremes, the values (P,) where these occur, and each parameter's share (P,).
+
+    A share is the swing over one parameter's range with the others at nominal; shares add to 1, and are all 0 where
+    nothing moves the measure.
+    """
 
     nominal: float
     low: float
     high: float
     at_low: FloatArray
     at_high: FloatArray
+    shares: FloatArray
 
 
 def spread(measure: Measure, parameters: Sequence[Parameter]) -> Spread:
     """The extremes of `measure` over all parameters independently in [low, high].
 
-    Every vertex is tried for up to 8 parameters; beyond, vertices are climbed by single and joint flips from several
-    starts. Interior points are then tried, and where one beats the vertices (a resonance) the extreme is followed
-    inside. NaN anywhere makes both extremes NaN.
+    The first call of `measure` has the same rows for every measure over equal parameters, so that a caller can solve
+    them once: nominal, one parameter at a time, vertices, points inside. Every vertex is tried for up to 8
+    parameters; beyond, vertices are climbed from where the slopes point and from the best known. Where a point inside
+    beats the vertices (a resonance) the extreme is followed inside. NaN anywhere makes both extremes NaN.
     """
     box = _Box.of(parameters)
-    nominal = float(_run(measure, box.nominal[None, :])[0])
-    if not parameters or math.isnan(nominal):
-        return Spread(nominal, nominal, nominal, box.nominal, box.nominal)
-    points = box.vertices() if len(parameters) <= EXHAUSTIVE else box.starts()
-    shares = np.concatenate([points, box.interior()])
-    values = _run(measure, box.at(shares))
+    count = len(parameters)
+    singles, corners, inner = box.singles(), box.vertices() if count <= EXHAUSTIVE else box.starts(), box.interior()
+    rows = np.concatenate([box.nominal[None, :], singles, box.at(corners), box.at(inner)])
+    values = _run(measure, rows if count else rows[:1])
+    nominal = float(values[0])
+    if not count or math.isnan(nominal):
+        return Spread(nominal, nominal, nominal, box.nominal, box.nominal, np.zeros(count))
+    slopes = values[1 + count : 1 + 2 * count] - values[1 : 1 + count]
+    shares = _shares(nominal, values[1 : 1 + 2 * count].reshape(2, count))
     if np.isnan(values).any():
-        return Spread(nominal, math.nan, math.nan, box.nominal, box.nominal)
+        return Spread(nominal, math.nan, math.nan, box.nominal, box.nominal, shares)
+    known = _Known(measure, box, np.concatenate([corners, inner]), values[1 + 2 * count :])
+    three = np.stack([values[1 : 1 + count], np.full(count, nominal), values[1 + count : 1 + 2 * count]])
+    even = _rises_evenly(three, corners, values[1 + 2 * count : 1 + 2 * count + len(corners)])
     ends = []
     for sign in (-1.0, 1.0):
-        climber = _Climber(measure, box, sign, shares, sign * values)
-        if len(parameters) > EXHAUSTIVE:
-            climber.flip()
-        climber.look_inside()
+        climber = _Climber(known, sign)
+        if count > EXHAUSTIVE:
+            climber.climb((sign * slopes > 0).astype(float), shares)
+        if not even:
+            climber.look_inside()
         ends.append((sign * climber.best, box.at(climber.where[None, :])[0]))
-    (low, at_low), (high, at_high) = ends
-    low, at_low = (nominal, box.nominal) if nominal < low else (low, at_low)
-    high, at_high = (nominal, box.nominal) if nominal > high else (high, at_high)
-    return Spread(nominal, low, high, at_low, at_high)
+    for row, value in zip(np.concatenate([box.nominal[None, :], singles]), values[: 1 + 2 * count], strict=True):
+        ends[0] = (float(value), row) if value < ends[0][0] else ends[0]
+        ends[1] = (float(value), row) if value > ends[1][0] else ends[1]
+    return Spread(nominal, ends[0][0], ends[1][0], ends[0][1], ends[1][1], shares)
+
+
+def _rises_evenly(three: FloatArray, corners: FloatArray, values: FloatArray) -> bool:
+    """Whether each parameter moves the measure one way only, as far as the known points tell.
+
+    `three` (3, P): one parameter at low, nominal and high. `corners` (V, P) as shares with their `values` (V,); where
+    all vertices are there, every edge of the box is looked at.
+    """
+    size = max(float(np.abs(values).max(initial=0.0)), float(np.abs(three).max(initial=0.0)))
+    steps = np.diff(three, axis=0)
+    steps = np.where(np.abs(steps) > _FINER * size, np.sign(steps), 0.0)
+    if (steps[0] * steps[1] < 0).any():
+        return False
+    way = np.where(steps[0] != 0, steps[0], steps[1])
+    count = three.shape[1]
+    if len(corners) != 2**count:
+        return True
+    for i in range(count):
+        pairs = values.reshape(-1, 2, 2**i)  # vertices count in binary, the first parameter fastest
+        rise = pairs[:, 1] - pairs[:, 0]
+        ways = np.sign(rise[np.abs(rise) > _FINER * size])
+        if len(ways) and ((ways != ways[0]).any() or way[i] * ways[0] < 0):
+            return False
+    return True
+
+
+def sensitivities(measure: Measure, parameters: Sequence[Parameter]) -> FloatArray:
+    """The share (P,) of each parameter in the measure's spread, as in `Spread`; NaN where it cannot be computed."""
+    box = _Box.of(parameters)
+    values = _run(measure, np.concatenate([box.nominal[None, :], box.singles()]))
+    return _shares(float(values[0]), values[1:].reshape(2, len(parameters)))
+
+
+def _shares(nominal: float, ends: FloatArray) -> FloatArray:
+    swing = np.maximum(ends.max(axis=0), nominal) - np.minimum(ends.min(axis=0), nominal)
+    total = swing.sum()
+    return np.asarray(swing / total if total != 0 else np.zeros(len(swing)))
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,6 +133,14 @@ class _Box:
         """Values (V, P) at shares (V, P); the ends exactly."""
         inside = self.low + shares * (self.high - self.low)
         return np.asarray(np.where(shares >= 1.0, self.high, np.where(shares <= 0.0, self.low, inside)))
+
+    def singles(self) -> FloatArray:
+        """One parameter at its low end, the others at nominal, for each; then the same at the high ends: (2P, P)."""
+        count = len(self.low)
+        rows = np.repeat(self.nominal[None, :], 2 * count, axis=0)
+        rows[np.arange(count), np.arange(count)] = self.low
+        rows[count + np.arange(count), np.arange(count)] = self.high
+        return rows
 
     def vertices(self) -> FloatArray:
         """All 2^P corners."""
@@ -109,51 +168,61 @@ def _run(measure: Measure, values: FloatArray) -> FloatArray:
     return np.concatenate(found)
 
 
+class _Known:
+    """A measure over a box with every point remembered."""
+
+    def __init__(self, measure: Measure, box: _Box, shares: FloatArray, values: FloatArray) -> None:
+        self.measure, self.box, self.count = measure, box, shares.shape[1]
+        self.seen = {row.tobytes(): float(value) for row, value in zip(shares, values, strict=True)}
+
+    def at(self, shares: FloatArray) -> FloatArray:
+        """The measure at shares (V, P); a point seen before is not measured again."""
+        fresh = [i for i, row in enumerate(shares) if row.tobytes() not in self.seen]
+        if fresh:
+            for i, value in zip(fresh, _run(self.measure, self.box.at(shares[fresh])), strict=True):
+                self.seen[shares[i].tobytes()] = float(value)
+        return np.array([self.seen[row.tobytes()] for row in shares])
+
+
 class _Climber:
     """Follows sign·measure upward through the box."""
 
-    def __init__(self, measure: Measure, box: _Box, sign: float, shares: FloatArray, values: FloatArray) -> None:
-        self.measure, self.box, self.sign = measure, box, sign
-        self.shares, self.values = shares, values
-        best = int(values.argmax())
-        self.where, self.best = shares[best].copy(), float(values[best])
-        self.seen = {row.tobytes(): float(value) for row, value in zip(shares, values, strict=True)}
+    def __init__(self, known: _Known, sign: float) -> None:
+        self.known, self.sign = known, sign
+        self.where, self.best = self._top(corners=False)
+
+    def _top(self, *, corners: bool) -> tuple[FloatArray, float]:
+        keys = (key for key in self.known.seen if not corners or _is_corner(np.frombuffer(key)))
+        best = max(keys, key=lambda key: self._score(self.known.seen[key]))
+        return np.frombuffer(best).copy(), self._score(self.known.seen[best])
+
+    def _score(self, value: float) -> float:
+        return -math.inf if math.isnan(value) else self.sign * value
 
     def _try(self, shares: FloatArray) -> FloatArray:
-        """sign·measure at shares (V, P), the best of which is kept; a point seen before is not measured again."""
-        keys = [row.tobytes() for row in shares]
-        fresh = list(dict.fromkeys(i for i, key in enumerate(keys) if key not in self.seen))
-        if fresh:
-            found = self.sign * _run(self.measure, self.box.at(shares[fresh]))
-            for i, value in zip(fresh, found, strict=True):
-                self.seen[keys[i]] = -math.inf if math.isnan(value) else float(value)
-        values = np.array([self.seen[key] for key in keys])
-        best = int(values.argmax())
-        if values[best] > self.best:
+        """sign·measure at shares (V, P), the best of which is kept."""
+        values = np.array([self._score(value) for value in self.known.at(shares)])
+        if len(values) and values.max() > self.best:
+            best = int(values.argmax())
             self.where, self.best = shares[best].copy(), float(values[best])
         return values
 
-    def flip(self) -> None:
-        """Climb over vertices from where the slopes at the middle point, and from the best corner met so far."""
-        count = len(self.where)
-        middle = np.full(count, 0.5)
-        up, down = self._try(middle + 0.5 * np.eye(count)), self._try(middle - 0.5 * np.eye(count))
-        with np.errstate(invalid="ignore"):
-            slope = np.nan_to_num(up - down)
-        moving = np.flatnonzero(np.abs(slope) > _FINER * np.abs(slope).max(initial=0.0))
-        first = (slope > 0).astype(float)
-        best = max((key for key in self.seen if _is_corner(np.frombuffer(key))), key=self.seen.__getitem__)
-        for start in (first, np.frombuffer(best).copy()):
+    def climb(self, first: FloatArray, swings: FloatArray) -> None:
+        """Climb over vertices from `first`, where the slopes point, and from the best corner met so far."""
+        order = np.argsort(swings)
+        idle = order[np.cumsum(swings[order]) <= _IDLE]
+        moving = np.setdiff1d(np.arange(len(first)), idle)
+        for start in (first, self._top(corners=True)[0]):
             self._climb(start, moving)
 
     def _climb(self, start: FloatArray, moving: NDArray[np.intp]) -> None:
-        """Flip what gains, first all together, then fewer; `moving` are the parameters that move the measure at all."""
+        """Flip what gains: of all flips that gain alone, as many at once as gain most together."""
         here = start.copy()
         value = float(self._try(here[None, :])[0])
         for _ in range(len(moving) + 10):
             flips = np.repeat(here[None, :], len(moving), axis=0)
             flips[np.arange(len(moving)), moving] = 1.0 - here[moving]
-            values = self._try(flips) if len(moving) else np.zeros(0)
+            values = self._try(flips)
             good = np.flatnonzero(values > value + _FINER * abs(value))
             if not len(good):
                 return
@@ -166,13 +235,14 @@ class _Climber:
             here, value = joint[top].copy(), float(together[top])
 
     def look_inside(self) -> None:
-        """If an interior point beats its neighbours on the boundary, follow it; else the vertex stands."""
+        """If a point inside, or inside an edge from the best corner, beats the corners, follow it inside."""
         count = len(self.where)
-        lines = np.repeat(self.where[None, :], 3 * count, axis=0)
-        for k, share in enumerate((0.04, 0.5, 0.96)):
-            lines[k * count + np.arange(count), np.arange(count)] = share
+        corner_at, corner = self._top(corners=True)
+        lines = np.repeat(corner_at[None, :], 2 * count, axis=0)
+        for k, share in enumerate((0.06, 0.5)):
+            rows = k * count + np.arange(count)
+            lines[rows, np.arange(count)] = np.abs(corner_at - share)
         self._try(lines)
-        corner = max(value for key, value in self.seen.items() if _is_corner(np.frombuffer(key)))
         if self.best > corner + _FINER * abs(corner):
             self._search()
 
@@ -196,25 +266,6 @@ class _Climber:
 
 def _is_corner(shares: FloatArray) -> bool:
     return bool(((shares == 0) | (shares == 1)).all())
-
-
-def sensitivities(measure: Measure, parameters: Sequence[Parameter]) -> FloatArray:
-    """The share (P,) of each parameter in the measure's spread: its own swing over its range, the others at nominal.
-
-    Shares add to 1; all are 0 where nothing moves the measure, NaN where it cannot be computed.
-    """
-    count = len(parameters)
-    if not count:
-        return np.zeros(0)
-    box = _Box.of(parameters)
-    low, high = (np.repeat(box.nominal[None, :], count, axis=0) for _ in range(2))
-    low[np.arange(count), np.arange(count)] = box.low
-    high[np.arange(count), np.arange(count)] = box.high
-    values = _run(measure, np.concatenate([box.nominal[None, :], low, high]))
-    three = np.stack([np.full(count, values[0]), values[1 : count + 1], values[count + 1 :]])
-    swing = three.max(axis=0) - three.min(axis=0)
-    total = swing.sum()
-    return swing / total if total != 0 else np.zeros(count)
 
 
 def monte_carlo(measure: Measure, parameters: Sequence[Parameter], samples: int, seed: int) -> FloatArray:
