@@ -7,7 +7,7 @@ voltage and driving pins are sources, pins that nobody described are open.
 from __future__ import annotations
 
 from collections import deque
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from types import MappingProxyType
 
@@ -121,40 +121,43 @@ def _solve(board: Board, *, upper: bool) -> tuple[dict[str, float | None], dict[
 def _returns(board: Board) -> dict[str, str | None]:
     """Why each net that a capacitor touches has a DC path to a defined potential; None where it has none."""
     reason: dict[str, str] = {}
-    queue: deque[str] = deque()
+    for net, why in _defined(board):
+        reason.setdefault(net, why)
+    ends: dict[str, list[tuple[str, str]]] = {}
+    for pin in board.pins:
+        if pin.toward is not None and pin.table.drives is None and pin.table.resistance is not None:
+            what = f"the input resistance of {pin.at}"
+            ends.setdefault(pin.toward, []).append((pin.net, what))
+            ends.setdefault(pin.net, []).append((pin.toward, what))
+    queue = deque(reason)
+    while queue:
+        net = queue.popleft()
+        onward = [
+            (section.b if section.a == net else section.a, section.refdes)
+            for section in board.sections_by_net.get(net, ())
+            if not isinstance(section.model, CapacitorModel)
+        ]
+        for other, what in (*onward, *ends.get(net, ())):
+            if other not in reason:
+                reason[other] = f"through {what} to {net}"
+                queue.append(other)
+    touched = {net for section in board.capacitors() for net in (section.a, section.b)}
+    return {net: reason.get(net) for net in board.nets if net in touched}
 
-    def reach(net: str, why: str) -> None:
-        if net not in reason:
-            reason[net] = why
-            queue.append(net)
 
+def _defined(board: Board) -> Iterator[tuple[str, str]]:
+    """Nets whose potential something defines directly, and what does."""
     for net, entry in board.nets.items():
         if entry.kind != "signal":
-            reach(net, f"is {'a ground' if entry.kind == 'ground' else 'a supply rail'}")
+            yield net, f"is {'a ground' if entry.kind == 'ground' else 'a supply rail'}"
     for pin in board.pins:
         if pin.table.drives is not None:
-            reach(pin.net, f"driven by {pin.at}")
+            yield pin.net, f"driven by {pin.at}"
+        elif pin.table.resistance is not None and pin.toward is None:
+            yield pin.net, f"through the input resistance of {pin.at}"
     for amplifier in board.amplifiers:
-        reach(amplifier.out, f"driven by {amplifier.name}")
+        yield amplifier.out, f"driven by {amplifier.name}"
     for net, terminals in board.terminals_by_net.items():
         for part, terminal in terminals:
             if terminal.direction == "output":
-                reach(net, f"driven by the output {part.refdes}.{terminal.number}")
-    ends: dict[str, list[tuple[str, str]]] = {}
-    for pin in board.pins:
-        if pin.table.drives is None and pin.table.resistance is not None:
-            toward = pin.toward
-            if toward is None:
-                reach(pin.net, f"through the input resistance of {pin.at}")
-            else:
-                ends.setdefault(toward, []).append((pin.net, f"the input resistance of {pin.at}"))
-                ends.setdefault(pin.net, []).append((toward, f"the input resistance of {pin.at}"))
-    while queue:
-        net = queue.popleft()
-        for section in board.sections_by_net.get(net, ()):
-            if not isinstance(section.model, CapacitorModel):
-                reach(section.b if section.a == net else section.a, f"through {section.refdes} to {net}")
-        for other, what in ends.get(net, ()):
-            reach(other, f"through {what} to {net}")
-    touched = {net for section in board.capacitors() for net in (section.a, section.b)}
-    return {net: reason.get(net) for net in board.nets if net in touched}
+                yield net, f"driven by the output {part.refdes}.{terminal.number}"

@@ -146,25 +146,25 @@ def _table_name(table: str, index: int | None) -> str:
 
 def _line_of(text: str, table: str, index: int | None, key: str) -> int | None:
     """Line (from 1) of `key` in the index-th `table`, else of the table's head, else None."""
-    head = re.compile(rf"^\s*\[{{1,2}}\s*{re.escape(table)}\s*(?:[.\].].*)?$")
+    head = re.compile(rf"^\s*(\[{{1,2}})\s*{re.escape(table)}\s*(?:[.\]].*)?$")
     any_head = re.compile(r"^\s*\[{1,2}[^\[\]]+\]{1,2}\s*(?:#.*)?$")
-    last = key.rsplit(".", 1)[-1]
-    wanted = re.compile(r"(?:^|[\s{,.\"'])" + re.escape(last) + r"[\"']?\s*=")
+    last = re.escape(key.rsplit(".", 1)[-1])
+    wanted = re.compile(rf"(?:^|[\s{{,.\"'])(?:{last})[\"']?\s*=") if last else None
+    bare = re.compile(rf"\s*{re.escape(table)}\s*[=.]")
     count, at, inside = -1, None, False
     for number, line in enumerate(text.split("\n"), 1):
         if any_head.match(line):
-            inside = bool(head.match(line)) and (index is None or _counts(line, table))
+            found = head.match(line)
+            inside = found is not None and (index is None or found[1] == "[[")
             if inside:
                 count += 1
                 inside = index is None or count == index
                 at = number if inside and at is None else at
-        elif (inside and last and wanted.search(line)) or (index is None and not last and re.match(rf"\s*{re.escape(table)}\s*[=.]", line)):
+        elif inside and wanted and wanted.search(line):
+            return number
+        elif index is None and wanted is None and bare.match(line):
             return number
     return at
-
-
-def _counts(line: str, table: str) -> bool:
-    return bool(re.match(rf"^\s*\[\[\s*{re.escape(table)}\s*\]\]", line))
 
 
 def _consistent(brief: Brief) -> None:

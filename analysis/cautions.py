@@ -15,8 +15,8 @@ from reactance.analysis.quantity import format_quantity
 from reactance.analysis.report import Check
 
 DANGEROUS_VOLTS = 60.0  # DC; above it IEC 62368-1 no longer counts a source among the harmless ones
-MAINS = re.compile(r"(?:^|[_/\s-])(?:MAINS|AC_?L(?:INE|IVE)?|AC_?N(?:EUTRAL)?|LINE_?AC|LIVE|NEUTRAL|L1|L2|L3|2[23]0VAC|1[12]0VAC)"
-                   r"(?:$|[_/\s-])", re.IGNORECASE)  # fmt: skip
+_MAINS_NAMES = "MAINS|AC_?L(?:INE|IVE)?|AC_?N(?:EUTRAL)?|LINE_?AC|LIVE|NEUTRAL|2[23]0VAC|1[12]0VAC"
+MAINS = re.compile(rf"(?:^|[_/\s-])(?:{_MAINS_NAMES})(?:$|[_/\s-])", re.IGNORECASE)
 ADVICE = (
     "safety-rated parts, spacing and discharge are for the applicable local code (IEC 62368-1, IEC 60384-14 and "
     "their national forms) and a qualified person to decide"

@@ -7,9 +7,9 @@ from reactance.analysis.board import Board
 from reactance.analysis.brief_tables import CouplingTable
 from reactance.analysis.circuit.modal import PoleResidue
 from reactance.analysis.circuit.network import FloatArray
-from reactance.analysis.circuit.sweep import Response
+from reactance.analysis.circuit.response import Response
 from reactance.analysis.circuit.transient import step
-from reactance.analysis.gains import corner_low, decibels, greatest_gain, top_of_band
+from reactance.analysis.gains import corner_low, decibels, greatest_gain, size_at, top_of_band
 from reactance.analysis.measuring import Measuring
 from reactance.analysis.paths import SignalNetworks
 from reactance.analysis.quantity import format_quantity
@@ -84,7 +84,7 @@ def _in_frequency(seen: Measuring, top: float, lowest: float | None) -> Results:
     if lowest is not None:
 
         def loss(response: Response) -> FloatArray:
-            return decibels(greatest_gain(response, top).gain / response.size_at(lowest))
+            return decibels(greatest_gain(response, top).gain / size_at(response, lowest))
 
         found["loss"] = seen.swept(loss, "dB", f"at {format_quantity(lowest, 'Hz')}", "nothing passes there")
     return found

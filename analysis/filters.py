@@ -8,7 +8,7 @@ import numpy as np
 from reactance.analysis.brief_tables import FilterTable
 from reactance.analysis.circuit.network import FloatArray
 from reactance.analysis.circuit.noise import integrated_noise
-from reactance.analysis.circuit.sweep import Response
+from reactance.analysis.circuit.response import Response
 from reactance.analysis.circuit.transient import TimeResponse
 from reactance.analysis.gains import (
     Reference,
@@ -18,6 +18,7 @@ from reactance.analysis.gains import (
     decibels,
     filter_reference,
     greatest_gain,
+    size_at,
     top_of_band,
 )
 from reactance.analysis.measuring import Measuring, band
@@ -137,7 +138,7 @@ def _in_frequency(seen: Measuring, top: float, nominal: Reference, table: Filter
         at = float(entry.at)
 
         def attenuation(response: Response, at: float = at) -> FloatArray:
-            return decibels(reference(response).gain / response.size_at(at))
+            return decibels(reference(response).gain / size_at(response, at))
 
         found[f"attenuation@{frequency_label(at)}"] = seen.swept(attenuation, "dB", "", "nothing passes there")
     if table and table.passband:
@@ -160,7 +161,7 @@ def _ripple(seen: Measuring, table: FilterTable, reference: Reference) -> Value:
     low, high = edges
 
     def ripple(response: Response) -> FloatArray:
-        return decibels(response.greatest(low, high)[1] / response.least(low, high)[1])
+        return decibels(np.asarray(response.greatest(low, high)[1]) / np.asarray(response.least(low, high)[1]))
 
     note = f"{format_quantity(low, 'Hz')} to {format_quantity(high, 'Hz')}"
     return seen.swept(ripple, "dB", note, "nothing passes in a part of the passband")

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from reactance.analysis.circuit.network import FloatArray
-from reactance.analysis.circuit.sweep import Response
+from reactance.analysis.circuit.response import Response
 
 LOWEST = 1e-4  # Hz: below this nothing on a board is asked about
 LEAST_TOP = 1e6  # Hz: the band reaches at least so far
@@ -33,6 +33,11 @@ class Reference:
         return bool(self.frequency[0] == 0.0)
 
 
+def size_at(response: Response, frequency: float) -> FloatArray:
+    """|H| at one frequency in Hz: (V,)."""
+    return np.abs(np.atleast_2d(response.at([frequency])))[:, 0]
+
+
 def top_of_band(nominal: Response, asked: float | None) -> float:
     """The upper end in Hz of the band in which the greatest gain is sought.
 
@@ -40,8 +45,7 @@ def top_of_band(nominal: Response, asked: float | None) -> float:
     """
     top = max(LEAST_TOP, BEYOND * (asked or 0.0))
     if asked is None:
-        at, gain = nominal.greatest(LOWEST, top)
-        corner = float(nominal.falls_through(gain * HALF_POWER, at, "down", LOWEST)[0])
+        corner = float(corner_low(nominal, greatest_gain(nominal, top))[0])
         top = max(top, BEYOND * corner) if math.isfinite(corner) else top
     return top
 
@@ -49,12 +53,12 @@ def top_of_band(nominal: Response, asked: float | None) -> float:
 def greatest_gain(response: Response, top: float) -> Reference:
     """The greatest |H| from 0.1 mHz to `top` (Hz)."""
     at, gain = response.greatest(LOWEST, top)
-    return Reference(gain, at)
+    return Reference(np.asarray(gain), np.asarray(at))
 
 
 def dc_reference(response: Response) -> Reference:
     """The gain at DC."""
-    gain = response.size_at(0.0)
+    gain = size_at(response, 0.0)
     return Reference(gain, np.zeros_like(gain))
 
 
@@ -69,14 +73,16 @@ def filter_reference(nominal: Response, top: float) -> Reference:
 
 def corner_high(response: Response, reference: Reference, top: float) -> FloatArray:
     """Upper corners in Hz (V,), NaN where there is none below `top`."""
-    return response.falls_through(reference.gain * HALF_POWER, reference.frequency, "up", top)
+    found = response.falls_through(reference.gain * HALF_POWER, reference.frequency, "up", top)
+    return np.asarray(found, float)
 
 
 def corner_low(response: Response, reference: Reference) -> FloatArray:
     """Lower corners in Hz (V,), NaN where there is none."""
     if reference.at_dc:
         return np.full_like(reference.gain, math.nan)
-    return response.falls_through(reference.gain * HALF_POWER, reference.frequency, "down", LOWEST)
+    found = response.falls_through(reference.gain * HALF_POWER, reference.frequency, "down", LOWEST)
+    return np.asarray(found, float)
 
 
 def decibels(ratio: FloatArray) -> FloatArray:

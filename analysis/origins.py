@@ -47,8 +47,9 @@ def origin_of(study: Study, check_id: str) -> Origin:
     scope = check_id.partition(":")[0]
     words = next((m.words for m in MEASURES if (m.scope, m.name) == (scope, check.measure)), check.measure)
     names = parts_of(study, check_id)
-    lines = tuple(part_line(study.board, study.bias, section) for section in study.board.sections if section.name in names)
-    refdes = {section.refdes for section in study.board.sections if section.name in names}
+    sections = [section for section in study.board.sections if section.name in names]
+    lines = tuple(part_line(study.board, study.bias, section) for section in sections)
+    refdes = {section.refdes for section in sections}
     assumptions = tuple(
         AssumptionEntry(a.about, a.attribute, a.value, a.because)
         for name in sorted(refdes)

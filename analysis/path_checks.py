@@ -15,7 +15,7 @@ from reactance.analysis.dc import dc_band
 from reactance.analysis.filters import filter_limits, solve_filter
 from reactance.analysis.measures import find_measure
 from reactance.analysis.paths import PathError, SignalNetworks, SignalPath
-from reactance.analysis.region import TooLarge
+from reactance.analysis.region import TooLargeError
 from reactance.analysis.rejection import solve_rejections
 from reactance.analysis.report import Check
 from reactance.analysis.reuse import Results, Solved
@@ -39,7 +39,7 @@ def study_paths(board: Board, bias: Bias, solved: Solved, paths: Iterable[Signal
         failure = ""
         try:
             results = _solve(networks, solved)
-        except (PathError, TooLarge, CircuitError) as problem:
+        except (PathError, TooLargeError, CircuitError) as problem:
             failure = str(problem)
             results = _unsolved(path, failure)
         yield PathStudy(path, networks, tuple(_judged(board, networks, results)), failure)

@@ -13,7 +13,7 @@ from reactance.analysis.measures import find_measure
 from reactance.analysis.parts.models import CapacitorModel
 from reactance.analysis.rail_network import RailNetwork, rail_network
 from reactance.analysis.rails import Demand, bypass, demand, limits, measured, rail_capacitance, solve_rail
-from reactance.analysis.region import TooLarge
+from reactance.analysis.region import TooLargeError
 from reactance.analysis.report import Check, Limit
 from reactance.analysis.reuse import Results, Solved
 from reactance.analysis.values import unknown
@@ -50,7 +50,7 @@ def _study_rail(board: Board, bias: Bias, solved: Solved, net: str) -> RailStudy
             cut = network = rail_network(board, bias, net)
             key = cut.block.key("rail", net, cut.fed, asked)
             results = solved.get(key, lambda: solve_rail(board, net, cut, asked))
-        except (TooLarge, CircuitError) as problem:
+        except (TooLargeError, CircuitError) as problem:
             results = {name: unknown(find_measure("rail", name).unit, str(problem)) for name in measured(asked)}
     bounds = limits(asked)
     checks = [

@@ -12,7 +12,7 @@ from reactance.analysis.circuit.network import Capacitor, CurrentSource, Element
 from reactance.analysis.elements import GROUND, node, rail_source
 from reactance.analysis.parts.models import BeadModel, CapacitorModel, InductorModel, ResistorModel
 from reactance.analysis.quantity import format_quantity
-from reactance.analysis.region import Region, TooLarge, grow, is_supply
+from reactance.analysis.region import Region, TooLargeError, grow, is_supply
 
 JOINING_RESISTANCE = 10.0  # ohm: up to this a resistor between rails makes them one supply (common practice)
 CUTOFFS = (float("inf"), 1e4, 1e3, 1e2)  # ohm: what hangs on the rail behind more is left out of a large network
@@ -59,7 +59,7 @@ def _joins(section: Section) -> bool:
 def rail_network(board: Board, bias: Bias, net: str) -> RailNetwork:
     """The network seen from `net` with a load current source named `load` from it to ground.
 
-    Raises `TooLarge` where even the coarsest cutoff leaves too many parts.
+    Raises `TooLargeError` where even the coarsest cutoff leaves too many parts.
     """
     rails = joined_rails(board, net)
     sources = {rail: table.source for rail in rails if (table := board.rail_tables.get(rail)) and table.source}
@@ -91,7 +91,7 @@ def _region(board: Board, net: str, free: set[str], notes: list[str]) -> Region:
 
         try:
             region = grow(board, (net,), held, through)
-        except TooLarge:
+        except TooLargeError:
             if cutoff == CUTOFFS[-1]:
                 raise
             continue

@@ -11,7 +11,7 @@ from reactance.analysis.board import Board
 from reactance.analysis.brief_tables import RailTable
 from reactance.analysis.circuit.modal import PoleResidue
 from reactance.analysis.circuit.network import FloatArray
-from reactance.analysis.circuit.sweep import Response
+from reactance.analysis.circuit.response import Response
 from reactance.analysis.circuit.transient import ramp, resonant
 from reactance.analysis.elements import node
 from reactance.analysis.measuring import Measuring
@@ -120,17 +120,17 @@ def _in_frequency(seen: Measuring, asked: Demand, band: tuple[float, float]) -> 
         target = asked.allowed / asked.current
 
         def impedance(response: Response) -> FloatArray:
-            return response.greatest(low, high)[1] / target
+            return np.asarray(response.greatest(low, high)[1]) / target
 
-        at = format_quantity(float(nominal.greatest(low, high)[0][0]), "Hz")
+        place = format_quantity(float(np.asarray(nominal.greatest(low, high)[0])[0]), "Hz")
         where = f"{format_quantity(low, 'Hz')} to {format_quantity(high, 'Hz')}"
-        note = f"greatest at {at}; target {format_quantity(target, 'ohm')}, {where}"
+        note = f"greatest at {place}; target {format_quantity(target, 'ohm')}, {where}"
         found["impedance"] = seen.swept(impedance, "1", note, "the impedance is not finite in the band")
 
     def antiresonance(response: Response) -> FloatArray:
-        return response.greatest_local_maximum(low, high)[1]
+        return np.asarray(response.greatest_local_maximum(low, high)[1])
 
-    at, size = nominal.greatest_local_maximum(low, high)
+    at, size = (np.asarray(found) for found in nominal.greatest_local_maximum(low, high))
     if math.isfinite(float(size[0])):
         note = f"at {format_quantity(float(at[0]), 'Hz')}"
         found["antiresonance"] = seen.swept(antiresonance, "Ω", note, "no local maximum in the band")
@@ -146,9 +146,8 @@ def rail_capacitance(board: Board, bias: Bias, net: str) -> Value:
             bands.append(section.model.effective(bias.across(section) or 0.0))
     count = len(bands)
     note = f"{count} capacitor{'' if count == 1 else 's'}"
-    return Value(
-        sum(band.nominal for band in bands), sum(band.low for band in bands), sum(band.high for band in bands), "F", note
-    )
+    nominal, low, high = (sum(getattr(band, end) for band in bands) for end in ("nominal", "low", "high"))
+    return Value(nominal, low, high, "F", note)
 
 
 def bypass(board: Board, net: str) -> Value | None:

@@ -15,7 +15,7 @@ from reactance.analysis.board import Board, DescribedPin, PlacedAmplifier, Secti
 MOST_SECTIONS = 600
 
 
-class TooLarge(Exception):
+class TooLargeError(Exception):
     """A region that grew past what one network may hold; the message says through which net."""
 
 
@@ -56,62 +56,80 @@ def grow(
     """Everything that `seeds` reach through sections, described pins and amplifiers before held nets.
 
     `through` says which sections are followed at all; the others are left out. A held seed is an edge.
-    Raises `TooLarge` beyond `MOST_SECTIONS`.
+    Raises `TooLargeError` beyond `MOST_SECTIONS`.
     """
-    nets: dict[str, None] = {}
-    edges: dict[str, None] = {}
-    sections: dict[str, Section] = {}
-    pins: dict[str, DescribedPin] = {}
-    amplifiers: dict[str, PlacedAmplifier] = {}
-    queue: deque[str] = deque()
-
-    def reach(net: str) -> None:
-        if net in nets or net in edges:
-            return
-        if held(net):
-            edges[net] = None
-        else:
-            nets[net] = None
-            queue.append(net)
-
-    outs: dict[str, list[PlacedAmplifier]] = {}
-    for amplifier in board.amplifiers:
-        outs.setdefault(amplifier.out, []).append(amplifier)
-    toward: dict[str, list[DescribedPin]] = {}
-    for pin in board.pins:
-        if pin.toward is not None and pin.table.drives is None and pin.table.resistance is not None:
-            toward.setdefault(pin.toward, []).append(pin)
+    growth = _Growth(board, held, through)
     for seed in seeds:
-        reach(seed)
-    while queue:
-        net = queue.popleft()
-        for section in board.sections_by_net.get(net, ()):
-            if section.name in sections or section.a == section.b or not through(section):
-                continue
-            sections[section.name] = section
-            if len(sections) > MOST_SECTIONS:
-                raise TooLarge(f"more than {MOST_SECTIONS} parts reach each other through {_widest(board, nets)}")
-            reach(section.a)
-            reach(section.b)
-        for pin in (*board.pins_by_net.get(net, ()), *toward.get(net, ())):
-            pins[f"{pin.at}@{pin.net}"] = pin
-            if pin.table.drives is None and pin.table.resistance is not None:
-                reach(pin.net)
-                if pin.toward is not None:
-                    reach(pin.toward)
-        for amplifier in outs.get(net, ()):
-            amplifiers[amplifier.name] = amplifier
-            reach(amplifier.plus)
-            reach(amplifier.minus)
-    for net in edges:
-        for pin in board.pins_by_net.get(net, ()):
-            if pin.table.drives is not None and not is_supply(board, net):
-                pins[f"{pin.at}@{pin.net}"] = pin
-        for amplifier in outs.get(net, ()):
-            amplifiers.setdefault(amplifier.name, amplifier)
+        growth.reach(seed)
+    while growth.queue:
+        growth.visit(growth.queue.popleft())
+    for net in growth.edges:
+        growth.take_drivers(net)
     return Region(
-        tuple(nets), tuple(edges), tuple(sections.values()), tuple(pins.values()), tuple(amplifiers.values())
+        tuple(growth.nets),
+        tuple(growth.edges),
+        tuple(growth.sections.values()),
+        tuple(growth.pins.values()),
+        tuple(growth.amplifiers.values()),
     )
+
+
+class _Growth:
+    """A region while it grows, breadth first."""
+
+    def __init__(self, board: Board, held: Callable[[str], bool], through: Callable[[Section], bool]) -> None:
+        self.board, self.held, self.through = board, held, through
+        self.nets: dict[str, None] = {}
+        self.edges: dict[str, None] = {}
+        self.sections: dict[str, Section] = {}
+        self.pins: dict[str, DescribedPin] = {}
+        self.amplifiers: dict[str, PlacedAmplifier] = {}
+        self.queue: deque[str] = deque()
+        self._outs: dict[str, list[PlacedAmplifier]] = {}
+        for amplifier in board.amplifiers:
+            self._outs.setdefault(amplifier.out, []).append(amplifier)
+        self._toward: dict[str, list[DescribedPin]] = {}
+        for pin in board.pins:
+            if pin.toward is not None and pin.table.drives is None and pin.table.resistance is not None:
+                self._toward.setdefault(pin.toward, []).append(pin)
+
+    def reach(self, net: str) -> None:
+        """Take in a net: as an edge if it is held, else to be visited."""
+        if net in self.nets or net in self.edges:
+            return
+        if self.held(net):
+            self.edges[net] = None
+        else:
+            self.nets[net] = None
+            self.queue.append(net)
+
+    def visit(self, net: str) -> None:
+        """Follow what is on a free net."""
+        for section in self.board.sections_by_net.get(net, ()):
+            if section.name in self.sections or section.a == section.b or not self.through(section):
+                continue
+            self.sections[section.name] = section
+            if len(self.sections) > MOST_SECTIONS:
+                widest = _widest(self.board, self.nets)
+                raise TooLargeError(f"more than {MOST_SECTIONS} parts reach each other through {widest}")
+            self.reach(section.a)
+            self.reach(section.b)
+        for pin in (*self.board.pins_by_net.get(net, ()), *self._toward.get(net, ())):
+            self.pins[f"{pin.at}@{pin.net}"] = pin
+            if pin.table.drives is None and pin.table.resistance is not None:
+                self.reach(pin.net)
+                if pin.toward is not None:
+                    self.reach(pin.toward)
+        for amplifier in self._outs.get(net, ()):
+            self.amplifiers[amplifier.name] = amplifier
+            self.reach(amplifier.plus)
+            self.reach(amplifier.minus)
+
+    def take_drivers(self, net: str) -> None:
+        """What drives an edge that is no supply belongs to the region too."""
+        for pin in self.board.pins_by_net.get(net, ()):
+            if pin.table.drives is not None and not is_supply(self.board, net):
+                self.pins[f"{pin.at}@{pin.net}"] = pin
 
 
 def _widest(board: Board, nets: Iterable[str]) -> str:

@@ -4,11 +4,13 @@ from __future__ import annotations
 
 import math
 
+import numpy as np
+
 from reactance.analysis.brief_tables import CouplingTable, FilterTable
 from reactance.analysis.circuit.network import FloatArray
-from reactance.analysis.circuit.sweep import Response
+from reactance.analysis.circuit.response import Response
 from reactance.analysis.filters import HIGHEST_AUDIBLE, LOWEST_AUDIBLE, asked_frequency
-from reactance.analysis.gains import corner_high, decibels, filter_reference, top_of_band
+from reactance.analysis.gains import corner_high, decibels, filter_reference, size_at, top_of_band
 from reactance.analysis.measuring import Measuring
 from reactance.analysis.paths import SignalNetworks
 from reactance.analysis.quantity import format_quantity
@@ -43,7 +45,7 @@ def solve_rejections(networks: SignalNetworks) -> Results:
     for net, source in rails:
 
         def rejection(response: Response) -> FloatArray:
-            greatest = response.greatest(low, high)[1] if low < high else response.size_at(low)
+            greatest = np.asarray(response.greatest(low, high)[1]) if low < high else size_at(response, low)
             return -decibels(greatest)
 
         seen = Measuring(networks.ac, source, networks.probe)
