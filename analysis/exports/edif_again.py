@@ -14,7 +14,7 @@ from typing import TypeVar
 from reactance.analysis.design import Design, Net, Part, Problem
 from reactance.analysis.exports import edif_entries as says
 from reactance.analysis.exports.edif_flatten import Flat
-from reactance.analysis.exports.edif_parts import REFDES_PROPERTIES
+from reactance.analysis.exports.edif_parts import gives_refdes
 from reactance.analysis.exports.edif_scan import Container, Entry
 from reactance.analysis.exports.edif_source import Source
 from reactance.analysis.exports.edif_values import Attribute
@@ -137,7 +137,7 @@ def _same_part(before: says.Instance, after: says.Instance, limits: Limits) -> b
 
 
 def _refdes_properties(instance: says.Instance) -> list[Attribute]:
-    return [each for each in instance.attributes if each.name.lower() in REFDES_PROPERTIES]
+    return [each for each in instance.attributes if gives_refdes(each)]
 
 
 def _placed(

@@ -13,8 +13,9 @@ from reactance.analysis.exports.edif_names import member_names
 from reactance.analysis.exports.edif_source import Source
 from reactance.analysis.exports.edif_values import Attribute, attribute_text
 
-REFDES_PROPERTIES = ("refdes", "ref", "designator", "reference")
-"""Properties that carry a refdes where no designator does (formats in use; common practice)."""
+# Properties that carry a refdes where no designator does, without spaces and signs (in use; common practice).
+_REFDES_PROPERTIES = frozenset(("refdes", "ref", "designator", "reference", "referencedesignator"))
+_SIGNS = re.compile(r"[\W_]+")
 
 # Words before a number that editors give to instances by themselves, so that `I12` is no refdes. From memory.
 _AUTOMATIC = frozenset(
@@ -113,7 +114,8 @@ class PartMaker:
         if inside is not None and instance.designator and not inside.holds_instances:
             inside = None  # a part whose cell holds nothing but wires
         attributes = self._attributes(instance, notes, target, start)
-        refdes = _refdes(designator, notes, shown, attributes, target.prefix)
+        refdes = _refdes(instance, designator, notes, shown, target.prefix)
+        self._source.check("name", len(refdes), start)
         numbers = _NO_NUMBERS
         if instance.numbers or notes:
             given = [*instance.numbers, *(number for note in notes for number in note.numbers)]
@@ -188,7 +190,7 @@ class PartMaker:
 
 
 def _refdes(
-    designator: str, notes: list[says.Annotation], name: str, attributes: Mapping[str, str], prefix: str
+    instance: says.Instance, designator: str, notes: list[says.Annotation], name: str, prefix: str
 ) -> str:
     """The refdes, first that exists; "" where only the name of the instance is left."""
     if designator and not designator.endswith("?"):
@@ -198,10 +200,15 @@ def _refdes(
             return note.designator
     if like_refdes(name, prefix):
         return ""
-    for key, value in attributes.items():
-        if key.lower() in REFDES_PROPERTIES and value and not value.endswith("?"):
-            return value
+    for attribute in (*instance.attributes, *(each for note in notes for each in note.attributes)):
+        if gives_refdes(attribute) and attribute.text and not attribute.text.endswith("?"):
+            return attribute.text
     return ""
+
+
+def gives_refdes(attribute: Attribute) -> bool:
+    """Whether this property carries a refdes."""
+    return any(_SIGNS.sub("", word).lower() in _REFDES_PROPERTIES for word in (attribute.key, attribute.name))
 
 
 def like_refdes(name: str, prefix: str) -> bool:

@@ -186,6 +186,18 @@ def doubling(levels: int) -> str:
         (LINES, Limits(parts=2), Limits(parts=1)),
         (LINES, Limits(pins=4), Limits(pins=3)),
         (changed("(net N ", f"(net {'N' * 40} "), Limits(name=40), Limits(name=39)),
+        (
+            changed("(property VALUE", f'(designator "{"C" * 40}") (property VALUE'),
+            Limits(name=40),
+            Limits(name=39),
+        ),
+        (
+            changed("(property VALUE", f'(property REFDES (string "{"C" * 40}")) (property V')
+            .replace("instance C1", "instance I1")
+            .replace("(instanceRef C1)", "(instanceRef I1)"),
+            Limits(name=40),
+            Limits(name=39),
+        ),
         (changed("(net N (joined", "(net (array N 20) (joined"), Limits(array=20), Limits(array=19)),
         (doubling(4), Limits(blocks=15), Limits(blocks=14)),
         (doubling(4), Limits(parts=16), Limits(parts=15)),

@@ -89,6 +89,8 @@ def test_keywords_and_identifiers_without_regard_to_case() -> None:
         ('(instance I1 (viewRef V (cellRef CAP)) (property REFDES (string "C7")))', "C7"),
         ('(instance I1 (viewRef V (cellRef CAP)) (designator "C?") (property REF (string "C7")))', "C7"),
         ('(instance (rename I1 "C7") (viewRef V (cellRef CAP)) (property REFDES (string "C9")))', "C7"),
+        ('(instance I1 (viewRef V (cellRef CAP)) (property (rename P "Ref. Des.") (string "C7")))', "C7"),
+        ('(instance I1 (viewRef V (cellRef CAP)) (property (rename REFDES "Label") (string "C7")))', "C7"),
         ("(instance I1 (viewRef V (cellRef CAP)))", "I1"),
     ],
 )
