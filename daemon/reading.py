@@ -131,6 +131,8 @@ def _unreadable(path: Path, error: OSError) -> InputError:
 
 
 def _board_files(reader: _Reader, export: Path, brief: Path | None) -> BoardFiles:
+    if export.is_dir():
+        raise InputError("is a folder, not a file", Place(str(export)), "name a file in it")
     folder = export.parent
     # noted before anything can fail, so that mending any of them is noticed
     for name in (*companion_names(export.name), brief_path(export).name):

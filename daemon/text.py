@@ -47,7 +47,7 @@ def share(margin: float | None, check: Check) -> str:
     limits = (check.limit.min, check.limit.max) if check.limit else ()
     if any(limit == 0 for limit in limits if limit is not None):
         return figure(margin, check.unit)
-    return f"{margin * 100:.3g} %"
+    return f"{margin * 100 + 0.0:.3g} %"  # + 0.0: no margin is no negative one
 
 
 def moment(seconds: float) -> str:

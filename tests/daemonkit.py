@@ -47,6 +47,11 @@ from = "SENSE"
 to = "ADC"
 corner = "1.6 kHz"
 tolerance = "10 %"
+
+[[pin]]
+at = "R1.1"
+drives = "1 V"
+resistance = "1 mohm"
 """
 PATIENCE = 15.0
 
@@ -137,6 +142,28 @@ def run(*arguments: str | Path, cwd: Path | None = None, **variables: str) -> su
         timeout=120,
         check=False,
     )
+
+
+@dataclass(frozen=True)
+class Answer:
+    """What a command did."""
+
+    returncode: int
+    stdout: str
+    stderr: str
+
+
+def call(*arguments: str | Path, **variables: str) -> Answer:
+    """Runs a command in this process, which is quicker; a traceback becomes an exception."""
+    from click.testing import CliRunner
+    from reactance.daemon.cli import reactance
+
+    done = CliRunner().invoke(
+        reactance, [str(argument) for argument in arguments], env=variables, prog_name="reactance"
+    )
+    if done.exception is not None and not isinstance(done.exception, SystemExit):
+        raise done.exception
+    return Answer(done.exit_code, done.stdout, done.stderr)
 
 
 class Daemon:

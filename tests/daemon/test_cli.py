@@ -10,7 +10,7 @@ from pathlib import Path
 
 import click
 import pytest
-from daemonkit import BRIEF, run, small_export
+from daemonkit import BRIEF, call, run, small_export
 from reactance.daemon.cli import reactance
 
 
@@ -28,7 +28,7 @@ def desk(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
     )
     for resistance in ("10k", "20k"):
         (place / "board.edn").write_bytes(small_export(resistance))
-        assert run("watch", "--once", "board.edn").returncode == 0
+        assert call("watch", "--once", "board.edn").returncode == 0
     return place
 
 
@@ -55,9 +55,9 @@ def test_every_command_has_an_example_that_names_it() -> None:
 
 
 @pytest.mark.parametrize("line", [line for _, line in examples() if not line.startswith("demo")])
-def test_examples_run(desk: Path, line: str) -> None:
+def test_examples_call(desk: Path, line: str) -> None:
     line = line.replace("filter:anti-alias:gain", "filter:anti-alias:corner_high")
-    done = run(*shlex.split(line))
+    done = call(*shlex.split(line))
     assert done.returncode in (0, 1), done.stderr
     assert done.stderr == "" or "--sine" in line
     assert done.stdout or line.startswith("watch")
@@ -65,17 +65,17 @@ def test_examples_run(desk: Path, line: str) -> None:
 
 @pytest.mark.parametrize("name", commands())
 def test_help_is_printed(name: str) -> None:
-    done = run(*name.split(), "--help")
+    done = call(*name.split(), "--help")
     assert done.returncode == 0
     assert "Usage: reactance" in done.stdout and "$ reactance" in done.stdout
 
 
 def test_version() -> None:
-    assert run("--version").stdout.startswith("reactance, version ")
+    assert call("--version").stdout.startswith("reactance, version ")
 
 
 def test_check_json_has_the_promised_shape(desk: Path) -> None:
-    done = run("check", "board.edn", "--json")
+    done = call("check", "board.edn", "--json")
     found = json.loads(done.stdout)
     assert list(found) == [
         "format", "design", "nets", "parts", "capacitors", "duties", "checks", "assumptions", "problems",
@@ -94,15 +94,17 @@ def test_check_json_has_the_promised_shape(desk: Path) -> None:
 
 def test_check_exit_status_follows_the_checks(desk: Path) -> None:
     (desk / "board.edn").write_bytes(small_export("10k"))
-    assert run("check", "board.edn").returncode == 0
+    assert call("check", "board.edn").returncode == 0
     (desk / "board.edn").write_bytes(small_export("20k"))
-    assert run("check", "board.edn").returncode == 1
+    assert call("check", "board.edn").returncode == 1
 
 
 def test_against_a_revision_and_against_a_file_agree(desk: Path) -> None:
     (desk / "older.edn").write_bytes(small_export("10k"))
     (desk / "older.brief.toml").write_bytes((desk / "board.brief.toml").read_bytes())
-    outputs = [json.loads(run("check", "board.edn", "--json", "--against", name).stdout) for name in ("1", "older.edn")]
+    outputs = [
+        json.loads(call("check", "board.edn", "--json", "--against", name).stdout) for name in ("1", "older.edn")
+    ]
     assert outputs[0]["edits"] == outputs[1]["edits"]
     assert outputs[0]["movements"] == outputs[1]["movements"]
     (edit,) = outputs[0]["edits"]
@@ -113,27 +115,30 @@ def test_against_a_revision_and_against_a_file_agree(desk: Path) -> None:
 
 
 def test_against_decides_the_exit_status_too(desk: Path) -> None:
-    (desk / "board.brief.toml").unlink()
-    (desk / "board.edn").write_bytes(small_export("10k"))
-    (desk / "same.edn").write_bytes(small_export("10k"))
-    assert run("check", "board.edn").returncode == 0
-    assert run("check", "board.edn", "--against", "same.edn").returncode == 0
-    (desk / "better.edn").write_bytes(small_export("20k"))
-    (desk / "better.brief.toml").write_text(BRIEF, encoding="utf-8")
-    (desk / "board.brief.toml").write_text(BRIEF, encoding="utf-8")
-    done = run("check", "board.edn", "--against", "better.edn")
-    assert done.returncode == 0 and "better: " in done.stdout
+    for name, resistance in (("board", "10k"), ("same", "10k"), ("better", "9.9k"), ("worse", "20k")):
+        (desk / f"{name}.edn").write_bytes(small_export(resistance))
+        if name != "board":
+            (desk / f"{name}.brief.toml").write_bytes((desk / "board.brief.toml").read_bytes())
+    assert call("check", "board.edn", "--against", "same.edn").returncode == 0
+    better = call("check", "board.edn", "--against", "worse.edn")
+    assert better.returncode == 0 and "better: " in better.stdout
+    # 10 kohm leaves 3.9 % to the nearer bound and 9.9 kohm 4.9 %: nothing moves by the 5 % that count
+    assert call("check", "board.edn", "--against", "better.edn").returncode == 0
+    (desk / "board.edn").write_bytes(small_export("10.35k"))
+    (desk / "better.edn").write_bytes(small_export("9.7k"))
+    worse = call("check", "board.edn", "--against", "better.edn")
+    assert worse.returncode == 1 and "worse: " in worse.stdout and "fail" not in worse.stdout.split("edits:")[0]
 
 
 def test_curves_come_with_the_json(desk: Path) -> None:
-    found = json.loads(run("check", "board.edn", "--json", "--curves").stdout)
+    found = json.loads(call("check", "board.edn", "--json", "--curves").stdout)
     curve = found["curves"]["filter:anti-alias:corner_high"]
     assert len(curve["x"]) == len(curve["nominal"]) > 10
     assert curve["x_unit"] == "Hz"
 
 
 def test_curve_prints_csv(desk: Path) -> None:
-    done = run("curve", "board.edn", "rail:+3V3:impedance")
+    done = call("curve", "board.edn", "rail:+3V3:impedance")
     rows = list(csv.reader(io.StringIO(done.stdout)))
     assert rows[0] == ["x", "nominal", "low", "high"]
     figures = [[float(cell) for cell in row] for row in rows[1:]]
@@ -143,7 +148,7 @@ def test_curve_prints_csv(desk: Path) -> None:
 
 
 def test_sine_prints_in_and_out(desk: Path) -> None:
-    done = run("curve", "board.edn", "filter:anti-alias:corner_high", "--sine", "10 kHz")
+    done = call("curve", "board.edn", "filter:anti-alias:corner_high", "--sine", "10 kHz")
     rows = list(csv.reader(io.StringIO(done.stdout)))
     assert rows[0] == ["x", "in", "out"]
     assert max(float(row[1]) for row in rows[1:]) == pytest.approx(1.0, rel=1e-3)
@@ -153,7 +158,7 @@ def test_sine_prints_in_and_out(desk: Path) -> None:
 
 
 def test_history_json_has_the_promised_shape(desk: Path) -> None:
-    found = json.loads(run("history", "--json").stdout)
+    found = json.loads(call("history", "--json").stdout)
     assert found["format"] == "reactance.history/1"
     (board,) = found["boards"]
     assert Path(board["file"]) == (desk / "board.edn").resolve()
@@ -165,31 +170,31 @@ def test_history_json_has_the_promised_shape(desk: Path) -> None:
 
 
 def test_compare_json_has_the_promised_shape(desk: Path) -> None:
-    found = json.loads(run("compare", "board.edn", "previous", "latest", "--json").stdout)
+    found = json.loads(call("compare", "board.edn", "previous", "latest", "--json").stdout)
     assert list(found) == ["format", "older", "newer", "edits", "movements"]
     assert (found["format"], found["older"]["id"], found["newer"]["id"]) == ("reactance.compare/1", 1, 2)
     assert [edit["part"] for edit in found["edits"]] == ["R1"]
-    turned = json.loads(run("compare", "board.edn", "2", "1", "--json").stdout)
+    turned = json.loads(call("compare", "board.edn", "2", "1", "--json").stdout)
     assert {move["verdict"] for move in turned["movements"]} <= {"better", "moved"}
 
 
 def test_baseline_is_pinned_and_unpinned(desk: Path) -> None:
-    assert run("baseline", "board.edn", "1").returncode == 0
+    assert call("baseline", "board.edn", "1").returncode == 0
     (desk / "board.edn").write_bytes(small_export("20.1k"))
-    run("watch", "--once", "board.edn")
-    against = json.loads(run("compare", "board.edn", "baseline", "latest", "--json").stdout)
+    call("watch", "--once", "board.edn")
+    against = json.loads(call("compare", "board.edn", "baseline", "latest", "--json").stdout)
     assert (against["older"]["id"], against["newer"]["id"]) == (1, 3)
-    newest = json.loads(run("history", "board.edn", "--json").stdout)["boards"][0]["revisions"][-1]
+    newest = json.loads(call("history", "board.edn", "--json").stdout)["boards"][0]["revisions"][-1]
     assert newest["worse"] >= 1, "compared with the pinned revision when it was stored"
-    assert run("baseline", "board.edn", "--previous").returncode == 0
-    against = json.loads(run("compare", "board.edn", "baseline", "latest", "--json").stdout)
+    assert call("baseline", "board.edn", "--previous").returncode == 0
+    against = json.loads(call("compare", "board.edn", "baseline", "latest", "--json").stdout)
     assert against["older"]["id"] == 2
-    done = run("baseline", "board.edn", "99")
+    done = call("baseline", "board.edn", "99")
     assert done.returncode == 2 and "no revision 99" in done.stderr
 
 
 def test_piped_output_is_plain_and_puts_failures_first(desk: Path) -> None:
-    done = run("check", "board.edn")
+    done = call("check", "board.edn")
     assert "\x1b" not in done.stdout
     lines = done.stdout.splitlines()
     statuses = [line.split()[0] for line in lines if line.split()[:1] and line.split()[0] in ORDER]
@@ -203,7 +208,7 @@ ORDER = ["fail", "marginal", "unknown", "pass", "watched"]
 
 
 def test_sarif_names_the_failures_and_where_they_are(desk: Path) -> None:
-    run("check", "board.edn", "--sarif", "out.sarif")
+    call("check", "board.edn", "--sarif", "out.sarif")
     log = json.loads((desk / "out.sarif").read_text(encoding="utf-8"))
     assert log["version"] == "2.1.0"
     (one_run,) = log["runs"]
