@@ -48,7 +48,9 @@ def _instance(form: list[Sexp]) -> says.Instance:
     plain: Mapping[str, str] | None = None
     if not any(attribute.unit for attribute in texts):
         plain = MappingProxyType(dict({each.key: (each.name, each.text) for each in texts}.values()))
-    longest = max(len(declared.text), len(designator), *(max(len(each.name), len(each.text)) for each in texts), 0)
+    longest = max(
+        len(declared.text), len(designator), *(max(len(each.name), len(each.text)) for each in texts), 0
+    )
     stands = bool(designator) and not designator.endswith("?")
     usual = stands and plain is not None and not (declared.size or numbers or faults)
     return says.Instance(

@@ -11,6 +11,7 @@ from types import MappingProxyType
 from reactance.analysis.design import Direction
 from reactance.analysis.exports import edif_entries as says
 from reactance.analysis.exports.edif_names import Name, flattened, member_names
+from reactance.analysis.exports.edif_names import name as name_of
 from reactance.analysis.exports.edif_scan import Container, Entry
 from reactance.analysis.exports.edif_source import Source
 from reactance.analysis.exports.edif_values import Attribute
@@ -269,7 +270,7 @@ class Catalogue:
                 declared = entry.value.name
                 break
         if declared is None and form.head:
-            declared = Name(form.head.lower(), form.head.removeprefix("&") or form.head)
+            declared = name_of(form.head)
         if declared is None:
             self._source.problem("caution", form.start, f"a {what} without a name")
             declared = Name("", f"({what} without a name)")

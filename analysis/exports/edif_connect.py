@@ -6,7 +6,7 @@ from dataclasses import dataclass, field
 
 from reactance.analysis.exports import edif_entries as says
 from reactance.analysis.exports.edif_cells import Catalogue, Interface, PortGroup, Scope, View
-from reactance.analysis.exports.edif_names import Name, flattened, member_names
+from reactance.analysis.exports.edif_names import Name, flattened, member_names, visible
 from reactance.analysis.exports.edif_parts import LocalPart, PartMaker, is_mark
 from reactance.analysis.exports.edif_scan import Entry
 from reactance.analysis.exports.edif_source import Source
@@ -245,7 +245,10 @@ class Connector:
             return [end for each in ref.refs for end in self._ends(each, scope, net, entry)]
         key = ref.name.lower()
         if key not in self._globals:
-            self._globals[key] = (ref.name.removeprefix("&") or ref.name, self._new_node("", entry.start))
+            self._globals[key] = (
+                visible(ref.name.removeprefix("&") or ref.name),
+                self._new_node("", entry.start),
+            )
         return [_End(node=self._globals[key][1])]
 
     def _pins(self, ref: says.PortRef, scope: int, net: Name, entry: Entry) -> list[_End]:
@@ -288,7 +291,7 @@ class Connector:
         if group is None:
             message = f"net {net.text}: {owner} has no port {shown}; it is given one"
             self._source.problem("caution", entry.start, message)
-            name = ref.port[-1].removeprefix("&") or ref.port[-1]
+            name = visible(ref.port[-1].removeprefix("&") or ref.port[-1])
             if ref.member:
                 name += f"[{','.join(map(str, ref.member))}]"
             group = PortGroup((interface.add("", name),))

@@ -56,8 +56,12 @@ def visible(text: str) -> str:
     if not _NEEDS_WORK.search(text):
         return text
     joined = text.replace("\r", "").replace("\n", "")
-    coded = _CODES.sub(_characters, joined)
-    return _UNSAFE.sub(lambda match: " " if match.group() == "\t" else f"%{ord(match.group())}%", coded)
+    return harmless(_CODES.sub(_characters, joined))
+
+
+def harmless(text: str) -> str:
+    """`text` with the characters that act on a terminal or turn the reading direction written as codes."""
+    return _UNSAFE.sub(lambda match: " " if match.group() == "\t" else f"%{ord(match.group())}%", text)
 
 
 def _characters(match: re.Match[str]) -> str:

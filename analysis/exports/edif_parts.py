@@ -9,7 +9,7 @@ from types import MappingProxyType
 
 from reactance.analysis.exports import edif_entries as says
 from reactance.analysis.exports.edif_cells import Catalogue, Cell, Interface, View, pin_numbers
-from reactance.analysis.exports.edif_names import member_names
+from reactance.analysis.exports.edif_names import member_names, visible
 from reactance.analysis.exports.edif_source import Source
 from reactance.analysis.exports.edif_values import Attribute, attribute_text
 
@@ -128,7 +128,7 @@ class PartMaker:
         target = self._targets.get(ref)
         if target is None:
             cell = self._catalogue.find(ref, self._home.cell.library)
-            target = self._targets[ref] = Target(None, ref.cell, Interface(), None, "", (), False)
+            target = self._targets[ref] = Target(None, visible(ref.cell), Interface(), None, "", (), False)
             if cell is not None:
                 view = cell.views.get(ref.view.lower()) or next(iter(cell.views.values()), None)
                 target.cell, target.name = cell, cell.name.text

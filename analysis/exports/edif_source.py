@@ -7,6 +7,7 @@ from functools import cached_property
 from itertools import accumulate
 
 from reactance.analysis.design import InputError, Place, Problem, Severity
+from reactance.analysis.exports.edif_names import harmless
 from reactance.analysis.exports.limits import Limits
 
 
@@ -51,7 +52,7 @@ class Source:
         if len(self._problems) >= self.limits.problems:
             self._not_kept += 1
             return
-        problem = Problem(severity, str(self.place(offset)), message)
+        problem = Problem(severity, str(self.place(offset)), harmless(message))
         if problem not in self._problems[-1:]:
             self._problems.append(problem)
 

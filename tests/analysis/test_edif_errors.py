@@ -267,9 +267,19 @@ def test_arrays_that_multiply_are_refused() -> None:
     assert "256,000,004 pins" in error.message  # 16,000 × 16,000, and two each of C1 and C2
 
 
-def test_names_are_shown_as_text_and_cannot_act() -> None:
-    design = read(changed("(net N (", '(net (rename N "<script>%27%[2J%10%") ('))
-    assert design.nets[0].name == "<script>%27%[2J%10%"
+def everything_shown(design: Design) -> Iterator[str]:
+    """Every text that a page or a terminal may show."""
+    yield design.name
+    for part in design.parts:
+        yield from (part.refdes, part.cell, *part.path, *part.attributes, *part.attributes.values())
+        yield from (text for pin in part.pins for text in (pin.number, pin.name))
+    for net in design.nets:
+        yield from (net.name, *net.aliases)
+    yield from (problem.message for problem in design.problems)
+
+
+def acts_on_nothing(text: str) -> bool:
+    return bool(text) and not any(ord(each) < 32 or 127 <= ord(each) < 160 for each in text)
 
 
 def mutations(count: int, seed: int) -> Iterator[bytes]:
@@ -312,9 +322,25 @@ def test_mutations_end_in_a_design_or_in_one_message() -> None:
             design = read_edif(data, "board.edn", memory=memory)
         except InputError as error:
             assert error.place.file == "board.edn"
-            assert error.message
+            assert acts_on_nothing(str(error))
         else:
+            assert acts_on_nothing("".join(everything_shown(design)))
             known = {(part.refdes, pin.number) for part in design.parts for pin in part.pins}
             assert all(pin in known for net in design.nets for pin in net.pins)
             assert len(design.parts_by_refdes) == len(design.parts)
             assert len({net.name for net in design.nets}) == len(design.nets)
+
+
+def test_names_are_shown_as_text_and_cannot_act() -> None:
+    design = read(changed("(net N (", '(net (rename N "<script>%27%[2J%10%") ('))
+    assert design.nets[0].name == "<script>%27%[2J%10%"
+    wild = (
+        LINES.replace("CAP", "C\x1b[2JAP")
+        .replace("board", "bo\x9bard")
+        .replace("(instanceRef C2)", "(instanceRef \x07)")
+    )
+    for text in (wild, wild.replace("(cell C", "(cell X"), wild.replace("(port A", "(port X"), wild[:-40]):
+        try:
+            assert acts_on_nothing("".join(everything_shown(read(text))))
+        except InputError as error:
+            assert acts_on_nothing(str(error))
