@@ -163,7 +163,7 @@ class Response:
         f = self._grid(low, high)
         size = sign * np.abs(self._at(f))
         padded = np.pad(size, ((0, 0), (1, 1)), constant_values=-np.inf)
-        peak = (size >= padded[:, :-2]) & (size >= padded[:, 2:])
+        peak = (size >= padded[:, :-2]) & (size >= padded[:, 2:]) & _distinct(f)
         choice = np.argsort(np.where(peak, -size, np.inf), axis=1)[:, :_CANDIDATES]
         at, top = self._polish(f, sign * size, choice, sign)
         rows = np.arange(len(f))
@@ -209,6 +209,11 @@ class Response:
         f, size = np.concatenate([f, at], axis=1), np.concatenate([size, low], axis=1)
         order = np.argsort(f if ascending else -f, axis=1, kind="stable")
         return np.take_along_axis(f, order, 1), np.take_along_axis(size, order, 1)
+
+
+def _distinct(f: FloatArray) -> NDArray[np.bool_]:
+    """The first of equal frequencies: points clipped to an end of the grid are one candidate, not many."""
+    return np.concatenate([np.ones((len(f), 1), bool), f[:, 1:] > f[:, :-1]], axis=1)
 
 
 def _inside_peaks(size: FloatArray) -> NDArray[np.bool_]:
