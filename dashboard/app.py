@@ -130,7 +130,7 @@ def revision(board: int, revision: int) -> Response:
     if row is None or place is None or place.board != board:
         return _missing("There is no such save of this board.")
     listed = next(save for save in pages.save_list(_archive(), history.revisions(board)) if save.revision == revision)
-    found = pages.shown(_archive(), board, revision)
+    found = pages.shown(_archive(), board, revision, alone=True)
     if not isinstance(found, pages.Shown):
         return _page("unusable.html", _events(board), seen, board=row, save=listed)
     change = pages.change(found, found.strips(), most=len(found.comparison.movements) if found.comparison else 0)
@@ -194,7 +194,7 @@ def _two_sides(
         name = f"save {numbers[row.id]}"
         try:
             made = curve(found.archive.study(row))
-        except InputError as error:
+        except (InputError, HistoryError) as error:
             notes.append(f"{name} cannot be analysed again by this version: {error}")
             return None
         return (name, made) if made is not None else None

@@ -5,10 +5,11 @@ from __future__ import annotations
 import threading
 from collections import OrderedDict
 from collections.abc import Callable, Hashable
+from dataclasses import dataclass
 from typing import TYPE_CHECKING, Generic, TypeAlias, TypeVar
 
 from reactance.analysis.files import BoardFiles
-from reactance.analysis.report import Comparison, Report
+from reactance.analysis.report import Comparison, Edit, Report
 from reactance.daemon.history import History, RevisionRow
 
 if TYPE_CHECKING:
@@ -60,6 +61,19 @@ class Shelf(Generic[K, V]):
             return self._kept[key]
 
 
+@dataclass(frozen=True, slots=True)
+class Stored:
+    """A comparison as it was stored, and the revision that it is a comparison with."""
+
+    comparison: Comparison | None
+    baseline: int | None
+
+    @property
+    def edits(self) -> tuple[Edit, ...]:
+        """What was changed since that revision."""
+        return self.comparison.edits if self.comparison else ()
+
+
 class Archive:
     """The history with what is dear to read kept at hand: reports, comparisons, and studies for curves."""
 
@@ -67,7 +81,7 @@ class Archive:
         self.history = history
         self._analyse = analyse
         self._reports: Shelf[int, tuple[Report | None]] = Shelf(_REPORTS, lambda key: (history.report(key),))
-        self._stored: Shelf[int, tuple[Comparison | None]] = Shelf(_COMPARISONS, lambda key: (history.comparison(key),))
+        self._stored: Shelf[int, Stored] = Shelf(_COMPARISONS, self._read_stored)
         self._compared: Shelf[tuple[int, int], Comparison] = Shelf(_REPORTS, lambda pair: history.compare(*pair))
         self._studies: Shelf[tuple[str, int], Study] = Shelf(_STUDIES, self._study)
 
@@ -75,9 +89,13 @@ class Archive:
         """The results of a revision."""
         return self._reports.get(revision)[0]
 
-    def stored_comparison(self, revision: int) -> Comparison | None:
+    def stored(self, revision: int) -> Stored:
         """What a revision changed and did, as judged when it was stored."""
-        return self._stored.get(revision)[0]
+        return self._stored.get(revision)
+
+    def _read_stored(self, revision: int) -> Stored:
+        baseline = self.history.compared_with(revision)
+        return Stored(self.history.comparison(revision), baseline.id if baseline else None)
 
     def compare(self, older: int, newer: int) -> Comparison:
         """What lies between any two revisions."""

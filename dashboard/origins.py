@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 from reactance.analysis.design import InputError
 from reactance.analysis.report import AssumptionEntry, Origin, PartLine
-from reactance.daemon.history import RevisionRow
+from reactance.daemon.history import HistoryError, RevisionRow
 from reactance.dashboard.archive import Archive
 
 
@@ -51,8 +51,10 @@ def provenance(archive: Archive, check_id: str, revision: RevisionRow, baseline:
     """The origin of a check in a revision, compared with its origin in the baseline."""
     try:
         now = archive.study(revision).origin(check_id)
-    except InputError as error:
+    except (InputError, HistoryError) as error:
         return Provenance(missing=f"This version cannot analyse that save again: {error}")
+    except KeyError:
+        return Provenance(missing="An earlier version made this check; this one does not.")
     before = _before(archive, check_id, baseline)
     parts = [_part(line, before.get(line.refdes), bool(before)) for line in now.parts]
     gone = [_gone(line) for refdes, line in before.items() if refdes not in {line.refdes for line in now.parts}]
@@ -65,7 +67,7 @@ def _before(archive: Archive, check_id: str, baseline: RevisionRow | None) -> Ma
         return {}
     try:
         origin: Origin = archive.study(baseline).origin(check_id)
-    except (InputError, KeyError):
+    except (InputError, HistoryError, KeyError):
         return {}  # the check is new, or this version refuses that save: nothing to compare with
     return {line.refdes: line for line in origin.parts}
 

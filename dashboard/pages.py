@@ -6,6 +6,7 @@ from collections import Counter
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+from reactance.analysis.design import InputError
 from reactance.analysis.difference import sentence
 from reactance.analysis.movement_words import edit_words
 from reactance.analysis.report import Check, Comparison, Movement, ProblemEntry, Report
@@ -20,9 +21,9 @@ from reactance.dashboard.rows import (
     Tone,
     by_verdict,
     by_weight,
+    changes,
     check_row,
     columns,
-    edits_words,
     movement_row,
     numbered,
     revision_href,
@@ -174,8 +175,13 @@ def _board_line(history: History, board: BoardRow) -> BoardLine:
     )
 
 
-def shown(archive: Archive, board_id: int, revision_id: int | None = None) -> Shown | BoardRow | None:
-    """The revision to show (the newest usable one); only the board where none is usable; None for no board."""
+def shown(
+    archive: Archive, board_id: int, revision_id: int | None = None, *, alone: bool = False
+) -> Shown | BoardRow | None:
+    """The revision to show (the newest usable one); only the board where none is usable; None for no board.
+
+    It is compared with its baseline, or with `alone` with the save before, whatever is pinned.
+    """
     history = archive.history
     board = history.board(board_id)
     if board is None:
@@ -188,18 +194,28 @@ def shown(archive: Archive, board_id: int, revision_id: int | None = None) -> Sh
     if report is None:
         return board
     revision = usable[-1]
-    baseline = history.baseline(board_id, revision.id)
-    return Shown(archive, board, revisions, revision, report, baseline, _comparison(archive, revision, baseline))
+    wanted = history.previous(revision.id) if alone else history.baseline(board_id, revision.id)
+    baseline, comparison = _comparison(archive, revision, wanted)
+    return Shown(archive, board, revisions, revision, report, baseline, comparison)
 
 
-def _comparison(archive: Archive, revision: RevisionRow, baseline: RevisionRow | None) -> Comparison | None:
-    """As stored, if it was made with today's baseline; another baseline may have been pinned since."""
-    if baseline is None:
-        return None
-    stored = archive.history.compared_with(revision.id)
-    if stored is not None and stored.id == baseline.id:
-        return archive.stored_comparison(revision.id)
-    return archive.compare(baseline.id, revision.id)
+def _comparison(
+    archive: Archive, revision: RevisionRow, wanted: RevisionRow | None
+) -> tuple[RevisionRow | None, Comparison | None]:
+    """The comparison with the wanted baseline, as stored or, where another was pinned since, made now.
+
+    Where this version cannot read one of the two exports any more, the stored comparison and its own baseline.
+    """
+    if wanted is None:
+        return None, None
+    stored = archive.stored(revision.id)
+    if stored.baseline == wanted.id:
+        return wanted, stored.comparison
+    try:
+        return wanted, archive.compare(wanted.id, revision.id)
+    except InputError:
+        then = archive.history.revision(stored.baseline) if stored.baseline is not None else None
+        return then, stored.comparison
 
 
 def board_page(found: Shown) -> BoardPage:
@@ -326,12 +342,15 @@ def _group(
 
 def save_list(archive: Archive, revisions: Sequence[RevisionRow]) -> tuple[Save, ...]:
     """All saves, newest first."""
-    numbers = numbered(revisions)
-    return tuple(_save(archive, revision, numbers[revision.id]) for revision in reversed(revisions))
+    numbers, told = numbered(revisions), changes(archive, revisions)
+    first = next(iter(told), None)
+    return tuple(
+        _save(revision, numbers[revision.id], "first save" if revision.id == first else told.get(revision.id, ""))
+        for revision in reversed(revisions)
+    )
 
 
-def _save(archive: Archive, revision: RevisionRow, number: int) -> Save:
-    comparison = archive.stored_comparison(revision.id) if revision.error is None else None
+def _save(revision: RevisionRow, number: int, edits: str) -> Save:
     failing = revision.status.get("fail", 0)
     outcome = [words.count(revision.worse, "worse", "worse")] if revision.worse else []
     outcome += [words.count(failing, "fails", "fail")] if failing else []
@@ -341,7 +360,7 @@ def _save(archive: Archive, revision: RevisionRow, number: int) -> Save:
         when=words.moment(revision.saved),
         machine=words.machine_moment(revision.saved),
         author=revision.author or "",
-        edits=edits_words(comparison.edits) if comparison else ("" if revision.error else "first save"),
+        edits=edits,
         outcome=", ".join(outcome) or ("not judged" if revision.error else "nothing worse"),
         tone="bad" if revision.worse or revision.error else ("near" if failing else "good"),
         error=revision.error or "",

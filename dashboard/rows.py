@@ -9,7 +9,7 @@ from typing import Literal
 from urllib.parse import urlencode
 
 from reactance.analysis.movement_words import edit_words, name_words
-from reactance.analysis.report import Check, Comparison, Edit, Movement, Report, Status, Verdict
+from reactance.analysis.report import Check, Comparison, Movement, Report, Status, Verdict
 from reactance.daemon.history import RevisionRow, StripCell
 from reactance.dashboard import words
 from reactance.dashboard.archive import Archive
@@ -78,17 +78,17 @@ def numbered(revisions: Sequence[RevisionRow]) -> Mapping[int, int]:
 def columns(archive: Archive, revisions: Sequence[RevisionRow], shown: int | None) -> tuple[Column, ...]:
     """The columns of the strips: the last saves, oldest first, unjudged ones among them."""
     numbers = numbered(revisions)
+    changed = changes(archive, revisions)
     found: list[Column] = []
     day = ""
     for revision in revisions[-MOST_COLUMNS:]:
         today = f"{datetime.fromtimestamp(revision.saved):%Y-%m-%d}"
-        comparison = archive.stored_comparison(revision.id) if revision.error is None else None
         found.append(
             Column(
                 revision=revision.id,
                 number=numbers[revision.id],
                 when=words.short_moment(revision.saved),
-                edits=edits_words(comparison.edits if comparison else ()),
+                edits=changed.get(revision.id, ""),
                 new_day=bool(found) and today != day,
                 unjudged=revision.error is not None,
                 shown=revision.id == shown,
@@ -98,9 +98,20 @@ def columns(archive: Archive, revisions: Sequence[RevisionRow], shown: int | Non
     return tuple(found)
 
 
-def edits_words(edits: Sequence[Edit]) -> str:
-    """Edits in one line."""
-    return words.listed((edit_words(edit, None, None) for edit in edits), _EDITS_NAMED)
+def changes(archive: Archive, revisions: Sequence[RevisionRow]) -> Mapping[int, str]:
+    """What each usable revision changed, in one line; said with since when, where that is not the save before."""
+    numbers = numbered(revisions)
+    told: dict[int, str] = {}
+    before: int | None = None
+    for revision in revisions:
+        if revision.error is not None:
+            continue
+        stored = archive.stored(revision.id)
+        text = words.listed((edit_words(edit, None, None) for edit in stored.edits), _EDITS_NAMED)
+        elsewhere = stored.baseline not in (None, before) and stored.baseline in numbers
+        told[revision.id] = f"since save {numbers[stored.baseline or 0]}: {text}" if elsewhere and text else text
+        before = revision.id
+    return told
 
 
 class Strips:

@@ -115,6 +115,21 @@ def test_a_pinned_baseline_is_named(keeper: Keeper, client_of: Clients) -> None:
     assert "the pinned baseline, save 3" in text
 
 
+def test_a_pinned_baseline_does_not_blur_what_one_save_changed(keeper: Keeper, client_of: Clients) -> None:
+    """Saves stored while another baseline was pinned say since when; one save's page compares with the one before."""
+    first = keeper.seen[0]
+    report = keeper.history.report(first)
+    assert report is not None
+    keeper.history.pin(1, first)
+    keeper.before = (first, report)
+    keeper.save(figures(0.19), (SWAP,), {DROOP: "worse"})
+    client = client_of(keeper.history)
+    assert "since save 1: C14 100 nF → 10 nF" in text_of(client, "/board/1/saves")
+    assert "Compared with the pinned baseline, save 1" in text_of(client, "/board/1")
+    # The exports of these saves are no real ones, so the comparison with the save before cannot be made now.
+    assert "Compared with the pinned baseline, save 1" in text_of(client, "/board/1/revision/5")
+
+
 def test_cautions_stand_out_and_notes_do_not(history: History, client_of: Clients) -> None:
     problems = (ProblemEntry("caution", "C14", "keeps 31 % of it"), ProblemEntry("note", "R9", "no tolerance"))
     Keeper(history).save(figures(0.08), problems=problems)
@@ -211,7 +226,7 @@ def test_a_part_of_a_page_is_its_main_element(client: FlaskClient) -> None:
     part = client.get("/board/1", headers={"X-Page-Part": "main"})
     text = part.get_data(as_text=True).strip()
     assert text.startswith("<main") and text.endswith("</main>")
-    assert 'data-title="greenhouse, reactance"' in text
+    assert 'data-title="greenhouse, 1 worse, reactance"' in text
     assert "X-Page-Part" in part.headers["Vary"]
 
 
