@@ -17,8 +17,10 @@ from reactance.dashboard.archive import Analyse, Archive
 from reactance.dashboard.capacitors import capacitor_rows
 from reactance.dashboard.check_page import check_page
 from reactance.dashboard.events import RETRY_MS, Streams, state
+from reactance.dashboard.groups import page_of_group
 from reactance.dashboard.guard import protect
 from reactance.dashboard.rows import numbered
+from reactance.dashboard.shown import Shown, shown
 from reactance.dashboard.strip import svg
 from werkzeug.exceptions import HTTPException
 
@@ -80,8 +82,8 @@ def boards() -> Response:
 def board(board: int) -> Response:
     """One board: what the last save changed and did, what fails, every check, every capacitor."""
     seen = _state(board)
-    found = pages.shown(_archive(), board)
-    if not isinstance(found, pages.Shown):
+    found = shown(_archive(), board)
+    if not isinstance(found, Shown):
         return _nothing(found, seen)
     return _page("board.html", _events(board), seen, page=pages.board_page(found))
 
@@ -90,11 +92,11 @@ def board(board: int) -> Response:
 def checks(board: int, scope: str) -> Response:
     """All checks of one kind, in pages."""
     seen = _state(board)
-    found = pages.shown(_archive(), board)
-    if not isinstance(found, pages.Shown):
+    found = shown(_archive(), board)
+    if not isinstance(found, Shown):
         return _nothing(found, seen)
     start = max(0, request.args.get("from", 0, type=int))
-    group = pages.page_of_group(found, "" if scope == "other" else scope, start, _IN_GROUP)
+    group = page_of_group(found, "" if scope == "other" else scope, start, _IN_GROUP)
     if group is None:
         return _missing("This board has no such checks.")
     return _page("checks.html", _events(board), seen, head=pages.head(found), group=group, start=start, size=_IN_GROUP)
@@ -104,8 +106,8 @@ def checks(board: int, scope: str) -> Response:
 def capacitors(board: int) -> Response:
     """What each capacitor does, all of them."""
     seen = _state(board)
-    found = pages.shown(_archive(), board)
-    if not isinstance(found, pages.Shown):
+    found = shown(_archive(), board)
+    if not isinstance(found, Shown):
         return _nothing(found, seen)
     rows = capacitor_rows(board, found.report)
     return _page("capacitors.html", _events(board), seen, head=pages.head(found), rows=rows)
@@ -130,8 +132,8 @@ def revision(board: int, revision: int) -> Response:
     if row is None or place is None or place.board != board:
         return _missing("There is no such save of this board.")
     listed = next(save for save in pages.save_list(_archive(), history.revisions(board)) if save.revision == revision)
-    found = pages.shown(_archive(), board, revision, alone=True)
-    if not isinstance(found, pages.Shown):
+    found = shown(_archive(), board, revision, alone=True)
+    if not isinstance(found, Shown):
         return _page("unusable.html", _events(board), seen, board=row, save=listed)
     change = pages.change(found, found.strips(), most=len(found.comparison.movements) if found.comparison else 0)
     return _page("revision.html", _events(board), seen, head=pages.head(found), change=change, save=listed)
@@ -141,8 +143,8 @@ def revision(board: int, revision: int) -> Response:
 def check(board: int) -> Response:
     """One check: what changed, its curves, where its number comes from."""
     seen = _state(board)
-    found = pages.shown(_archive(), board, request.args.get("at", type=int))
-    if not isinstance(found, pages.Shown):
+    found = shown(_archive(), board, request.args.get("at", type=int))
+    if not isinstance(found, Shown):
         return _nothing(found, seen)
     page = check_page(found, request.args.get("id", ""))
     if page is None:
@@ -153,8 +155,8 @@ def check(board: int) -> Response:
 @views.get("/board/<int:board>/curve")
 def curve(board: int) -> Response:
     """The curves of a check before and after, as arrays."""
-    found = pages.shown(_archive(), board, request.args.get("at", type=int))
-    if not isinstance(found, pages.Shown):
+    found = shown(_archive(), board, request.args.get("at", type=int))
+    if not isinstance(found, Shown):
         return _missing("There is no such save of this board.")
     sides, notes = _two_sides(found, lambda study: study.curve(request.args.get("id", "")))
     if not any(sides) and not notes:
@@ -165,8 +167,8 @@ def curve(board: int) -> Response:
 @views.get("/board/<int:board>/sine")
 def sine(board: int) -> Response:
     """In and out over time for a sine of the asked frequency."""
-    found = pages.shown(_archive(), board, request.args.get("at", type=int))
-    if not isinstance(found, pages.Shown):
+    found = shown(_archive(), board, request.args.get("at", type=int))
+    if not isinstance(found, Shown):
         return _missing("There is no such save of this board.")
     try:
         frequency = parse_quantity(request.args.get("f", ""), "Hz")
@@ -182,7 +184,7 @@ def sine(board: int) -> Response:
 
 
 def _two_sides(
-    found: pages.Shown, curve: Callable[[Study], Curve | None]
+    found: Shown, curve: Callable[[Study], Curve | None]
 ) -> tuple[tuple[tuple[str, Curve] | None, tuple[str, Curve] | None], list[str]]:
     """A curve of the baseline and of the shown revision, each under its name, and what hindered."""
     numbers = numbered(found.revisions)

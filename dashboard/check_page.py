@@ -14,8 +14,9 @@ from reactance.analysis.quantity import format_quantity
 from reactance.analysis.report import Check, Movement, ProblemEntry
 from reactance.dashboard import words
 from reactance.dashboard.origins import Provenance, provenance
-from reactance.dashboard.pages import Head, Shown, head, movement_text
+from reactance.dashboard.pages import Head, head
 from reactance.dashboard.rows import TONES, Strips, Tone, check_href, numbered, revision_href
+from reactance.dashboard.shown import Shown, movement_text
 from reactance.dashboard.strip import Strip
 
 SINES = (("slow", 0.1), ("at the corner", 1.0), ("fast", 10.0))
