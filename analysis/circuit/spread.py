@@ -1,6 +1,6 @@
 """The extremes of a measure over uncertain values, its Monte Carlo samples, and which value matters how much.
 
-A measure is a function of values (V, P) that returns (V,): NaN where it cannot be computed. It is called with many
+A measure is a function of values (V, P) that returns (V,): NaN or infinite where it does not exist. It is called with many
 rows at once.
 """
 
@@ -58,10 +58,10 @@ def spread(measure: Measure, parameters: Sequence[Parameter]) -> Spread:
     nominal = float(values[0])
     if not count or math.isnan(nominal):
         return Spread(nominal, nominal, nominal, box.nominal, box.nominal, np.zeros(count))
+    if np.isnan(values).any():
+        return Spread(nominal, math.nan, math.nan, box.nominal, box.nominal, np.zeros(count))
     slopes = values[1 + count : 1 + 2 * count] - values[1 : 1 + count]
     shares = _shares(nominal, values[1 : 1 + 2 * count].reshape(2, count))
-    if np.isnan(values).any():
-        return Spread(nominal, math.nan, math.nan, box.nominal, box.nominal, shares)
     known = _Known(measure, box, np.concatenate([corners, inner]), values[1 + 2 * count :])
     three = np.stack([values[1 : 1 + count], np.full(count, nominal), values[1 + count : 1 + 2 * count]])
     even = _rises_evenly(three, corners, values[1 + 2 * count : 1 + 2 * count + len(corners)])
@@ -165,7 +165,8 @@ class _Box:
 
 def _run(measure: Measure, values: FloatArray) -> FloatArray:
     found = [np.asarray(measure(values[i : i + _ROWS]), float) for i in range(0, len(values), _ROWS)]
-    return np.concatenate(found)
+    every = np.concatenate(found)
+    return np.where(np.isfinite(every), every, np.nan)
 
 
 class _Known:

@@ -39,9 +39,10 @@ match = { refdes = "C3" }
 esr = "25 mohm"
 esl = "2 nH"
 """
-CURRENT, RISE, ALLOWED = mp.mpf("0.8"), mp.mpf("10e-9"), mp.mpf("0.165")
-LOW, HIGH = mp.mpf(1000), mp.mpf("0.35") / RISE
 mp.mp.dps = 40
+UNIT = mp.mpf("1e-8")  # times are counted in units of 10 ns, which keeps the polynomials well scaled
+CURRENT, RISE, ALLOWED = mp.mpf("0.8"), mp.mpf("10e-9") / UNIT, mp.mpf("0.165")
+LOW, HIGH = mp.mpf(1000) * UNIT, mp.mpf("0.35") / RISE
 
 
 def times(a: list[mp.mpf], b: list[mp.mpf]) -> list[mp.mpf]:
@@ -61,13 +62,16 @@ class Rail:
     """Z(s) = N(s)/D(s), lowest power first."""
 
     def __init__(self, c1: mp.mpf, c2: mp.mpf, c3: mp.mpf) -> None:
-        branches = [([mp.mpf("0.02"), mp.mpf("30e-9")], [mp.mpf(1)])]
+        branches = [([mp.mpf("0.02"), mp.mpf("30e-9") / UNIT], [mp.mpf(1)])]
         for c, r, inductance in ((c1, "0.02", "1e-9"), (c2, "0.008", "1.2e-9"), (c3, "0.025", "2.5e-9")):
-            branches.append(([mp.mpf(1), mp.mpf(r) * c, mp.mpf(inductance) * c], [mp.mpf(0), c]))
+            scaled = c / UNIT
+            branches.append(([mp.mpf(1), mp.mpf(r) * scaled, mp.mpf(inductance) / UNIT * scaled], [mp.mpf(0), scaled]))
         self.n, self.d = [mp.mpf(1)], [mp.mpf(0)]
         for above, below in branches:  # Y = Σ below/above
             self.d = plus(times(self.d, above), times(below, self.n))
             self.n = times(self.n, above)
+        while self.d[-1] == 0:
+            self.d.pop()
 
     def z(self, s: mp.mpc) -> mp.mpc:
         return mp.polyval(self.n[::-1], s) / mp.polyval(self.d[::-1], s)
@@ -76,17 +80,17 @@ class Rail:
         return abs(self.z(2j * mp.pi * f))
 
     def extremes(self) -> list[tuple[mp.mpf, mp.mpf]]:
-        grid = [LOW * (HIGH / LOW) ** (mp.mpf(i) / 1500) for i in range(1501)]
+        grid = [LOW * (HIGH / LOW) ** (mp.mpf(i) / 500) for i in range(501)]
         sizes = [self.size(f) for f in grid]
         peaks = []
-        for i in range(1, 1500):
+        for i in range(1, 500):
             if sizes[i] > sizes[i - 1] and sizes[i] > sizes[i + 1]:
                 peaks.append(self._golden(grid[i - 1], grid[i + 1]))
         return peaks
 
     def _golden(self, a: mp.mpf, b: mp.mpf) -> tuple[mp.mpf, mp.mpf]:
         ratio = (mp.sqrt(5) - 1) / 2
-        for _ in range(60):
+        for _ in range(40):
             c, d = b - ratio * (b - a), a + ratio * (b - a)
             if self.size(c) > self.size(d):
                 b = d
@@ -114,14 +118,14 @@ class Rail:
         def v(t: mp.mpf) -> mp.mpf:
             return abs(CURRENT / RISE * (ramp(t) - ramp(t - RISE)))
 
-        grid = [RISE * mp.mpf(i) / 200 for i in range(1, 201)]
+        grid = [RISE * mp.mpf(i) / 60 for i in range(1, 61)]
         slowest = 1 / min(abs(p.real) for p in poles)
-        grid += [RISE * (12 * slowest / RISE) ** (mp.mpf(i) / 1500) for i in range(1, 1501)]
+        grid += [RISE * (12 * slowest / RISE) ** (mp.mpf(i) / 600) for i in range(1, 601)]
         values = [v(t) for t in grid]
         best = max(range(len(grid)), key=values.__getitem__)
         a, b = grid[max(best - 1, 0)], grid[min(best + 1, len(grid) - 1)]
         ratio = (mp.sqrt(5) - 1) / 2
-        for _ in range(60):
+        for _ in range(40):
             c, d = b - ratio * (b - a), a + ratio * (b - a)
             if v(c) > v(d):
                 b = d

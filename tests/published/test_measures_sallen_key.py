@@ -38,7 +38,7 @@ minus = "U1.2"
 out = "U1.1"
 open_loop_gain = "100 dB"
 gain_bandwidth = "10 MHz"
-output_resistance = "50 ohm"
+output_resistance = "0 ohm"
 [[part]]
 match = { refdes = "C*" }
 esr = 0
@@ -57,12 +57,12 @@ def transfer() -> tuple[list[sp.Symbol], dict[str, sp.Expr]]:
     """H from the input, and from a noise EMF in series with each resistor, as rational functions of s."""
     s, r1, r2, c1, c2 = sp.symbols("s r1 r2 c1 c2", positive=True)
     vin, n1, n2, x, p, out = sp.symbols("vin n1 n2 x p out")
-    a0, gbw, ro = sp.Integer(10) ** 5, sp.Integer(10) ** 7, sp.Integer(50)
+    a0, gbw = sp.Integer(10) ** 5, sp.Integer(10) ** 7
     gain = a0 / (1 + s * a0 / (2 * sp.pi * gbw))
     equations = [
         (x - vin - n1) / r1 + (x - p - n2) / r2 + s * c1 * (x - out),
         (p - x + n2) / r2 + s * c2 * p,
-        (out - gain * (p - out)) / ro + s * c1 * (out - x),
+        out - gain * (p - out),
     ]
     solved = sp.solve(equations, [x, p, out], dict=True)[0][out]
     parts = {}
@@ -137,3 +137,12 @@ def test_the_ideal_shape() -> None:
     _, h = signal.freqs(b, a, worN=np.array([2 * math.pi * 100e3]))
     check = checks_of(PARTS, BRIEF)["filter:active:attenuation@100kHz"]
     assert check.nominal == pytest.approx(-20 * math.log10(abs(h[0])), abs=0.1)
+
+
+def test_noise_without_an_upper_frequency_is_said_to_be_unbounded() -> None:
+    """Behind an output resistance R1's noise reaches the output through C1 at any frequency: its integral diverges."""
+    brief = BRIEF.replace('output_resistance = "0 ohm"', 'output_resistance = "50 ohm"')
+    check = checks_of(PARTS, brief)["filter:active:noise"]
+    assert check.nominal is None
+    assert check.status == "unknown"
+    assert "upper frequency" in check.explain
