@@ -303,7 +303,7 @@ class System:
 
     def nudged(self, s: ComplexArray, work: Callable[[ComplexArray], T]) -> T:
         """`work` at s; where that is exactly on a pole, right beside it. Raises `CircuitError` if singular anywhere."""
-        for shift in (0.0, 3e-16, 7e-15):
+        for shift in (0.0, 3e-16, 1.1e-15, 7e-15 + 3e-15j, 5e-14 - 2e-14j, 4e-13 + 1e-13j):
             try:
                 return work(s * (1.0 + shift) if shift else s)
             except np.linalg.LinAlgError:
