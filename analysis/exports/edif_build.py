@@ -173,9 +173,7 @@ def _net(form: Sexp) -> says.Net:
             faults.append(str(error))
     said = tuple(f"net {declared.text}: {fault}" for fault in faults)
     plain = None if inner or instances or faults or declared.size else _plain(refs)
-    return says.Net(
-        declared, tuple(refs), tuple(inner), tuple(instances), said, plain, says.merge_key(declared)
-    )
+    return says.Net(declared, tuple(refs), tuple(inner), tuple(instances), said, plain)
 
 
 def _plain(refs: list[says.Ref]) -> tuple[tuple[str, str], ...] | None:

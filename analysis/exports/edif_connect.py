@@ -46,12 +46,16 @@ class Connector:
         self._starts: list[int] = []
         self._parts: list[LocalPart] = []
         self._scopes: list[dict[str, tuple[int, int, tuple[int, ...]]]] = []  # key -> first part, count, size
-        self._by_name: dict[str, int] = {}
-        self._by_key: list[set[str]] = []
+        self._by_name: dict[str, int] = {}  # nets by visible name
+        self._by_key: dict[
+            str, int
+        ] = {}  # and, where they have no other, by identifier without regard to case
+        self._named_in: dict[int, int] = {}  # the page on which each named node was first declared
         # Pins of instances other than usual ones, and ends of nets other than plain ones, against blow-ups.
         self._pin_count = self._end_count = 0
         self._ports: dict[int, int] = {}
-        self._connectors: dict[str, int] = {}
+        self._connectors: dict[str, int] = {}  # by identifier
+        self._connectors_shown: dict[str, int] = {}  # by visible name
         self._globals: dict[str, tuple[str, int]] = {}
 
     def netlist(self) -> Netlist:
@@ -60,7 +64,6 @@ class Connector:
         for scope in scopes:
             self._declare(scope)
         for position, scope in enumerate(scopes):
-            self._by_key.append(set())
             self._source.check("parts", len(self._parts), self._view.cell.start)
             for entry in scope.entries:
                 if isinstance(entry.value, says.Net):
@@ -84,10 +87,11 @@ class Connector:
                 for instance in value.instances:
                     self._instance(instance, entry, known)
             elif isinstance(value, says.OffPage):
-                node = self._connectors.get(says.merge_key(value.name))
+                key, shown = value.name.key, value.name.text
+                node = self._connectors_shown.get(shown, self._connectors.get(key))
                 if node is None:
-                    node = self._connectors[says.merge_key(value.name)] = self._new_node("", entry.start)
-                self._connectors[value.name.key] = node
+                    node = self._new_node("", entry.start)
+                self._connectors_shown[shown] = self._connectors[key] = node
 
     def _instance(
         self, value: says.Instance, entry: Entry, known: dict[str, tuple[int, int, tuple[int, ...]]]
@@ -123,16 +127,11 @@ class Connector:
         self._source.check("name", len(net.name.text), entry.start)
         if net.name.size:
             self._source.check("array", net.name.width, entry.start)
-        if net.name.key in self._by_key[scope]:
-            self._source.problem(
-                "caution", entry.start, f"net {net.name.text} stands twice; taken as one net"
-            )
-        self._by_key[scope].add(net.name.key)
         ends = [self._ends(ref, scope, net.name, entry) for ref in net.refs]
         self._end_count += sum(map(len, ends))
         self._source.check("pins", self._end_count, entry.start)
         width = net.name.width if net.name.size else self._bus_width(net, ends)
-        nodes = self._net_nodes(net, width, entry.start)
+        nodes = self._net_nodes(net, width, scope, entry.start)
         for ref, reached in zip(net.refs, ends, strict=True):
             self._attach(nodes, reached, net, ref, entry)
         for inner in net.inner:
@@ -142,8 +141,8 @@ class Connector:
     def _plain_net(self, net: says.Net, scope: int, start: int) -> bool:
         """Take in a net that joins nothing but single free pins of single instances: the short way for nearly every
         net. False, and nothing done, where it is not so."""
-        known, parts, keys = self._scopes[scope], self._parts, self._by_key[scope]
-        if net.plain is None or net.name.key in keys or len(net.name.text) > self._source.limits.name:
+        known, parts = self._scopes[scope], self._parts
+        if net.plain is None or len(net.name.text) > self._source.limits.name:
             return False
         pins: list[tuple[dict[int, int], int]] = []
         for port, instance in net.plain:
@@ -155,10 +154,7 @@ class Connector:
             if group is None or len(group.bits) != 1 or group.bits[0] in part.nodes:
                 return False
             pins.append((part.nodes, group.bits[0]))
-        keys.add(net.name.key)
-        node = self._by_name.get(net.merge)
-        if node is None:
-            node = self._by_name[net.merge] = self._new_node(net.name.text, start)
+        node = self._named(net.name.text, "" if net.name.renamed else net.name.key, scope, start)
         for on, bit in pins:
             on[bit] = node
         return True
@@ -175,20 +171,29 @@ class Connector:
         buses = sum(not isinstance(ref, says.PortList) for ref in net.refs)
         return widths.pop() if buses or len(net.refs) > 1 else 1
 
-    def _net_nodes(self, net: says.Net, width: int, start: int) -> list[int]:
+    def _net_nodes(self, net: says.Net, width: int, scope: int, start: int) -> list[int]:
         name = net.name
         if width == 1 and not name.size:
-            names, keys = [name.text], [net.merge]
-        else:
-            names = keys = member_names(Name(name.key, name.text, name.size or (width,)))
-        nodes = []
-        for shown, key in zip(names, keys, strict=True):
-            node = self._by_name.get(key)
-            if node is None:
-                node = self._by_name[key] = self._new_node(shown, start)
-            nodes.append(node)
+            return [self._named(name.text, "" if name.renamed else name.key, scope, start)]
+        members = member_names(Name(name.key, name.text, name.size or (width,)))
+        nodes = [self._named(shown, "", scope, start) for shown in members]
         self._source.check("pins", len(self._nodes), start)
         return nodes
+
+    def _named(self, shown: str, key: str, scope: int, start: int) -> int:
+        """The node of that visible name, or identifier where the net has no other; the same on all pages."""
+        node = self._by_name.get(shown)
+        if node is None and key:
+            node = self._by_key.get(key)
+        if node is None:
+            node = self._new_node(shown, start)
+            self._named_in[node] = scope
+            self._by_name[shown] = node
+            if key:
+                self._by_key[key] = node
+        elif self._named_in[node] == scope:
+            self._source.problem("caution", start, f"net {shown} stands twice; taken as one net")
+        return node
 
     def _attach(
         self, nodes: list[int], reached: list[_End], net: says.Net, ref: says.Ref, entry: Entry

@@ -88,7 +88,6 @@ class Net(NamedTuple):
     """`(net …)`, with what it joins, the nets in it and instances drawn inside it.
 
     `plain` is what it joins as (port, instance), both as keys, where that is all there is to it: the usual case.
-    Nets of equal `merge` key in one cell are one net: visible names exactly, identifiers without regard to case.
     """
 
     name: Name
@@ -97,7 +96,6 @@ class Net(NamedTuple):
     instances: tuple[Instance, ...] = ()
     faults: tuple[str, ...] = ()
     plain: tuple[tuple[str, str], ...] | None = None
-    merge: str = ""
 
 
 class NetBundle(NamedTuple):
@@ -171,8 +169,3 @@ class Bad(NamedTuple):
     """An entry that could not be understood."""
 
     message: str
-
-
-def merge_key(declared: Name) -> str:
-    """What makes nets or off-page connectors of one cell the same."""
-    return declared.text if declared.renamed else declared.key

@@ -389,3 +389,26 @@ def test_contents_in_another_view_than_the_one_referred_to() -> None:
         cells=block,
     )
     assert nets(design) == {"A": {"C1.1"}, "Z": {"C1.2"}}
+
+
+def test_nets_go_on_over_pages_by_visible_name_or_identifier() -> None:
+    def page(number: int, net: str) -> str:
+        inside = cap("I", f'(designator "C{number}")') + f"(net {net} (joined (portRef P1 (instanceRef I))))"
+        return f"(page P{number} {inside})"
+
+    design = board(
+        page(1, "GND")
+        + page(2, '(rename N9 "GND")')
+        + page(3, "gnd")
+        + page(4, '(rename GND "gnd2")')
+        + page(5, '(rename A "+5v")')
+        + page(6, '(rename A "+5V")'),
+        view="SCHEMATIC",
+    )
+    assert nets(design) == {
+        "GND": {"C1.1", "C2.1", "C3.1"},
+        "gnd2": {"C4.1"},
+        "+5v": {"C5.1"},
+        "+5V": {"C6.1"},
+    }
+    assert messages(design) == []

@@ -110,6 +110,7 @@ def test_a_cut_off_file_is_reported_where_the_innermost_open_form_begins() -> No
         ("(net N (joined", "(nett N (joined", "8:4", "(nett …) has no meaning"),
         ("(net N (joined", "(net (array N 0) (joined", "8:4", "size of 1 or more"),
         ("(net N (joined", "(net GND (joined", "9:4", "stands twice"),
+        ("(net N (joined", '(net (rename N "GND") (joined', "9:4", "stands twice"),
         ("(instance C2 (", "(instance C1 (", "7:4", "stands twice"),
         ("(cellRef TOP (libraryRef L))", "(cellRef TOPP (libraryRef L))", "11:2", "is not in the file"),
         ("(cellRef TOP (libraryRef L))", "", "11:2", "names no top cell"),
