@@ -13,7 +13,6 @@ import pytest
 from daemonkit import BRIEF, call, run, small_export
 from reactance.daemon.cli import reactance
 
-
 RAIL = """
 [[rail]]
 net = "+3V3"
@@ -80,7 +79,7 @@ def test_every_command_has_an_example_that_names_it() -> None:
 
 
 @pytest.mark.parametrize("line", [line for _, line in examples() if not line.startswith("demo")])
-def test_examples_call(desk: Path, line: str) -> None:
+def test_examples_run(desk: Path, line: str) -> None:
     line = line.replace("filter:anti-alias:gain", "filter:anti-alias:corner_high")
     done = call(*shlex.split(line))
     assert done.returncode in (0, 1), done.stderr
