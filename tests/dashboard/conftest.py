@@ -6,11 +6,13 @@ from collections.abc import Callable, Iterator
 from pathlib import Path
 
 import pytest
+from browserkit import look, start
 from flask.testing import FlaskClient
 from pagekit import DRIFT, DROOP, HOST, LOSS, SWAP, Keeper, figures, make_study
 from reactance.analysis.report import Edit
 from reactance.daemon.history import History
 from reactance.dashboard.app import create_app
+from selenium import webdriver
 
 
 @pytest.fixture
@@ -46,3 +48,22 @@ def client_of() -> Callable[[History], FlaskClient]:
 def client(keeper: Keeper, client_of: Callable[[History], FlaskClient]) -> FlaskClient:
     """A client over those four saves."""
     return client_of(keeper.history)
+
+
+@pytest.fixture(scope="session")
+def chromium(tmp_path_factory: pytest.TempPathFactory) -> Iterator[webdriver.Chrome]:
+    """One browser for all tests."""
+    driver = start(tmp_path_factory.mktemp("profile"))
+    yield driver
+    driver.quit()
+
+
+@pytest.fixture
+def page(chromium: webdriver.Chrome) -> Iterator[webdriver.Chrome]:
+    """The browser at 1280 × 800 in the light; afterwards it may have complained about nothing."""
+    look(chromium)
+    chromium.get_log("browser")
+    yield chromium
+    complaints = [entry["message"] for entry in chromium.get_log("browser") if entry["level"] == "SEVERE"]
+    chromium.get("about:blank")
+    assert not complaints

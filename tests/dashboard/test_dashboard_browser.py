@@ -2,64 +2,22 @@
 
 from __future__ import annotations
 
-import shutil
 from collections.abc import Iterator
 
 import pytest
+from browserkit import look, wait
 from pagekit import DROOP, LOSS, SWAP, Keeper, figures, make_study
 from reactance.dashboard.rows import check_href
 from reactance.dashboard.serve import Server, serve
 from selenium import webdriver
-from selenium.webdriver.chrome.service import Service
 from selenium.webdriver.common.by import By
 from selenium.webdriver.common.keys import Keys
-from selenium.webdriver.support.wait import WebDriverWait
-
-FLAGS = (
-    "--headless=new", "--no-sandbox", "--disable-gpu", "--disable-quic", "--no-first-run", "--disable-sync",
-    "--disable-background-networking", "--disable-component-update", "--disable-dev-shm-usage",
-)  # fmt: skip
-PATIENCE = 30.0
-
-
-@pytest.fixture(scope="session")
-def chromium(tmp_path_factory: pytest.TempPathFactory) -> Iterator[webdriver.Chrome]:
-    """One browser for all tests, with a profile of its own."""
-    options = webdriver.ChromeOptions()
-    for flag in (*FLAGS, f"--user-data-dir={tmp_path_factory.mktemp('profile')}"):
-        options.add_argument(flag)
-    options.set_capability("goog:loggingPrefs", {"browser": "ALL"})
-    driver = webdriver.Chrome(options=options, service=Service(shutil.which("chromedriver")))
-    yield driver
-    driver.quit()
-
-
-@pytest.fixture
-def page(chromium: webdriver.Chrome) -> Iterator[webdriver.Chrome]:
-    """The browser at 1280 × 800 in the light; afterwards nothing may have been complained about."""
-    look(chromium)
-    chromium.get_log("browser")
-    yield chromium
-    complaints = [entry["message"] for entry in chromium.get_log("browser") if entry["level"] == "SEVERE"]
-    chromium.get("about:blank")
-    assert not complaints
 
 
 @pytest.fixture
 def server(keeper: Keeper) -> Iterator[Server]:
     with serve(keeper.history, port=0, analyse=make_study) as running:
         yield running
-
-
-def look(driver: webdriver.Chrome, width: int = 1280, height: int = 800, scheme: str = "light") -> None:
-    metrics = {"width": width, "height": height, "deviceScaleFactor": 1, "mobile": False}
-    driver.execute_cdp_cmd("Emulation.setDeviceMetricsOverride", metrics)
-    features = [{"name": "prefers-color-scheme", "value": scheme}]
-    driver.execute_cdp_cmd("Emulation.setEmulatedMedia", {"media": "", "features": features})
-
-
-def wait(driver: webdriver.Chrome, script: str) -> None:
-    WebDriverWait(driver, PATIENCE, 0.05).until(lambda one: one.execute_script(f"return {script}"))
 
 
 def open_board(driver: webdriver.Chrome, server: Server) -> None:
