@@ -32,7 +32,7 @@ def id_words(check_id: str) -> str:
     """The name of a check of which only the id is left."""
     _, _, rest = check_id.partition(":")
     anchor, _, measure = rest.rpartition(":")
-    return f"{anchor or rest} {measure.replace('_', ' ')}".replace(">", " → ").strip()
+    return f"{anchor} {measure.replace('_', ' ')}".replace(">", " → ").strip() or check_id
 
 
 def value_words(value: float | None, unit: str, measure: str) -> str:
@@ -47,14 +47,14 @@ def value_words(value: float | None, unit: str, measure: str) -> str:
 
 
 def limit_words(limit: Limit | None, unit: str, measure: str) -> str:
-    """The limit as it follows a figure: `of 165 mV`, `at least 35 dB`, `within 1.44 kHz to 1.76 kHz`."""
+    """The limit as it follows a figure: `of 165 mV`, `of at least 35 dB`, `within 1.44 kHz to 1.76 kHz`."""
     if limit is None or measure == "return":
         return ""
     if limit.min is not None and limit.max is not None:
         return f"within {value_words(limit.min, unit, measure)} to {value_words(limit.max, unit, measure)}"
     if limit.max is not None:
         return f"of {value_words(limit.max, unit, measure)}"
-    return f"at least {value_words(limit.min, unit, measure)}"
+    return f"of at least {value_words(limit.min, unit, measure)}"
 
 
 def check_words(check: Check) -> str:
