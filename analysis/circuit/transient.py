@@ -16,10 +16,10 @@ from reactance.analysis.circuit.modal import PoleResidue, expand, first
 from reactance.analysis.circuit.motion import Pieces, settle_pieces
 from reactance.analysis.circuit.network import ComplexArray, FloatArray, Network, Parameter
 from reactance.analysis.circuit.phi import phi
-from reactance.analysis.circuit.search import polish
 from reactance.analysis.circuit.system import System
 
 Number = float | FloatArray
+Modes = tuple[ComplexArray, ComplexArray, FloatArray, FloatArray]
 
 _RIVALS = 2  # local maxima over the repetition rate that are followed to their top
 
@@ -129,13 +129,14 @@ def pulse(response: PoleResidue, width: float, amplitude: float = 1.0) -> TimeRe
     return _response(response, [0.0, width], [amplitude, 0.0], [0.0, 0.0])
 
 
-def _modes(response: PoleResidue) -> tuple[ComplexArray, ComplexArray, FloatArray, FloatArray]:
+def modes_of(response: PoleResidue) -> Modes:
     """Poles on and above the real axis with doubled residues above it: half the work for the same real part."""
     poles, residues = np.atleast_2d(response.poles), np.atleast_2d(response.residues)
     residues = residues * np.where(poles.imag > 0, 2.0, np.where(poles.imag < 0, 0.0, 1.0))
-    weight = np.abs(residues) / np.where(poles == 0, 1e-300, np.abs(poles))
+    still = poles == 0
+    weight = np.where(still, 0.0, np.abs(residues) / np.where(still, 1.0, np.abs(poles)))
     total = weight.sum(axis=1, keepdims=True) + np.abs(np.atleast_1d(response.direct))[:, None]
-    keep = (weight > 1e-18 * total).any(axis=0) & (residues != 0).any(axis=0)
+    keep = ((weight > 1e-18 * total) | (still & (residues != 0))).any(axis=0)
     return (
         poles[:, keep],
         residues[:, keep],
@@ -147,7 +148,7 @@ def _modes(response: PoleResidue) -> tuple[ComplexArray, ComplexArray, FloatArra
 def _response(
     response: PoleResidue, start: Sequence[float], level: Sequence[float], rate: Sequence[float]
 ) -> TimeResponse:
-    return TimeResponse(settle_pieces(_modes(response), start, level, rate), response.batched)
+    return TimeResponse(settle_pieces(modes_of(response), start, level, rate), response.batched)
 
 
 def start_response(
@@ -170,7 +171,7 @@ def trapezoid(response: PoleResidue, amplitude: float, rise: float, frequency: A
     Half the time each at `frequency` (a number, or (V,) with a batched response). t = 0 is the start of a rise. Where
     the response to a constant input grows without bound, its mean is taken as 0.
     """
-    pieces = _steady(_modes(response), amplitude, rise, np.asarray(frequency, float), halves=2)
+    pieces = steady_state(modes_of(response), amplitude, rise, np.asarray(frequency, float), halves=2)
     dc = np.real(np.atleast_2d(_dc(response)))[:, 0] * amplitude / 2.0
     whole = Pieces(
         pieces.poles, pieces.residues, pieces.direct, pieces.slope, np.where(np.isfinite(dc), dc, 0.0),
@@ -185,8 +186,8 @@ def _dc(response: PoleResidue) -> ComplexArray:
     return np.asarray(terms.sum(axis=1, keepdims=True) + np.atleast_1d(response.direct)[:, None])
 
 
-def _steady(
-    modes: tuple[ComplexArray, ComplexArray, FloatArray, FloatArray],
+def steady_state(
+    modes: Modes,
     amplitude: float,
     rise: float,
     frequency: FloatArray,
@@ -222,64 +223,6 @@ def _steady(
         state=state,
         period=half * halves,
     )
-
-
-def resonant(response: PoleResidue, amplitude: float, rise: float, low: float, high: float) -> tuple[Number, Number]:
-    """The repetition rate in [low, high] Hz at which a trapezoid load moves the voltage most, and by how much.
-
-    The load switches between 0 and `amplitude` with edges of `rise`, half the time each. Returns (frequency, greatest
-    |v − mean| in the steady state there).
-    """
-    modes = _modes(response)
-    best_f, best = _search_rate(modes, amplitude, rise, low, high)
-    if response.batched:
-        return best_f, best
-    return float(best_f[0]), float(best[0])
-
-
-def _search_rate(
-    modes: tuple[ComplexArray, ComplexArray, FloatArray, FloatArray],
-    amplitude: float,
-    rise: float,
-    low: float,
-    high: float,
-) -> tuple[FloatArray, FloatArray]:
-    count = len(modes[0])
-
-    def excursion(f: FloatArray, rough: bool = False) -> FloatArray:
-        """(V, F) at rates f (V, F)."""
-        repeat = f.shape[1]
-        spread = tuple(np.repeat(x, repeat, axis=0) for x in modes)
-        pieces = _steady(spread, amplitude, rise, f.ravel(), halves=1)  # type: ignore[arg-type]
-        found = features.greatest(pieces, np.zeros(pieces.count), 0.0, rough=rough)[1]
-        return np.asarray(found.reshape(count, repeat))
-
-    f = np.sort(np.clip(_rates(modes[0], low, high), low, high), axis=1)
-    size = excursion(f, rough=True)
-    rows = np.arange(count)
-    padded = np.pad(size, ((0, 0), (1, 1)), constant_values=-np.inf)
-    peaks = np.where((size >= padded[:, :-2]) & (size >= padded[:, 2:]), size, -np.inf)
-    choice = np.argsort(-peaks, axis=1)[:, : min(_RIVALS, f.shape[1])]
-    at, top = polish(excursion, f, size, choice, 1.0, 1e-6)
-    best = top.argmax(axis=1)
-    return at[rows, best], top[rows, best]
-
-
-def _rates(poles: ComplexArray, low: float, high: float) -> FloatArray:
-    """Rates to look at: an even grid, and the odd subharmonics of each ringing pole, closer the less it is damped."""
-    number = max(9, int(3 * np.log10(high / low)))
-    found = [np.broadcast_to(np.geomspace(low, high, number), (len(poles), number))]
-    offsets = np.array([-1.5, -0.5, 0.0, 0.5, 1.5])
-    for i in range(poles.shape[1]):
-        turning, damping = np.abs(poles[:, i].imag), np.abs(poles[:, i].real)
-        centre = float(np.median(turning)) / (2.0 * np.pi)
-        if not (turning > 0.3 * damping).any() or centre < 0.5 * low:
-            continue
-        first = 2 * int(np.ceil(max(centre / high - 1.0, 0.0) / 2.0)) + 1
-        for odd in (first, first + 2):
-            width = np.minimum(damping, 0.1 * turning)
-            found.append((turning[:, None] + offsets * width[:, None]) / (2.0 * np.pi * odd))
-    return np.asarray(np.concatenate(found, axis=1))
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,0 +1,100 @@
+"""The repetition rate at which a load that keeps switching moves a voltage most.
+
+For the first set of values the whole band is searched; its best rates, each tied to the ringing mode whose odd
+subharmonic it is, say where to look for the others, whose modes differ by little. Sizes are found as exactly as a
+cubic through value and slope at every sample allows, then once to the last digits at the rate found.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+from reactance.analysis.circuit import features
+from reactance.analysis.circuit.modal import PoleResidue
+from reactance.analysis.circuit.network import FloatArray
+from reactance.analysis.circuit.search import polish
+from reactance.analysis.circuit.transient import Modes, modes_of, steady_state
+
+_RIVALS = 3
+_PER_DECADE = 4
+_TIED = 0.2  # how near an odd subharmonic of a mode a rate has to be to move with that mode
+_AROUND = np.array([-2.0, -0.7, 0.0, 0.7, 2.0])
+
+
+def worst_rate(
+    response: PoleResidue, amplitude: float, rise: float, low: float, high: float
+) -> tuple[FloatArray, FloatArray]:
+    """The rate (V,) in [low, high] Hz and the greatest |v − mean| (V,) in the steady state there.
+
+    The load switches between 0 and `amplitude` with linear edges of `rise` seconds, half the time each. `response` may
+    lack its leading axis; V is then 1.
+    """
+    modes = modes_of(response)
+    first = tuple(x[:1] for x in modes)
+    rates = _whole_band(first, amplitude, rise, low, high)
+    near = _followed(modes, rates, low, high)
+    size = _excursion(modes, amplitude, rise, near, rough=True)
+    rate = _vertex(near, size)
+    exact = _excursion(modes, amplitude, rise, rate[:, None], rough=False)[:, 0]
+    rows, top = np.arange(len(size)), size.argmax(axis=1)
+    better = size[rows, top] > exact
+    return np.where(better, near[rows, top], rate), np.where(better, size[rows, top], exact)
+
+
+def _excursion(modes: Modes, amplitude: float, rise: float, f: FloatArray, *, rough: bool) -> FloatArray:
+    """The greatest |v − mean| (V, F) at rates f (V, F)."""
+    poles, residues, direct, slope = (np.repeat(x, f.shape[1], axis=0) for x in modes)
+    pieces = steady_state((poles, residues, direct, slope), amplitude, rise, f.ravel(), halves=1)
+    return np.asarray(features.greatest(pieces, np.zeros(pieces.count), 0.0, rough=rough)[1].reshape(f.shape))
+
+
+def _whole_band(first: Modes, amplitude: float, rise: float, low: float, high: float) -> FloatArray:
+    """The best few rates (R,) of one set of values, from an even grid and the odd subharmonics of ringing modes."""
+    poles = first[0][0]
+    found = [np.geomspace(low, high, max(9, int(_PER_DECADE * np.log10(high / low))))]
+    for pole in poles[np.abs(poles.imag) > 0.3 * np.abs(poles.real)]:
+        turning = abs(pole.imag) / (2.0 * np.pi)
+        width = min(abs(pole.real / pole.imag), 0.2)
+        start = 2 * int(np.ceil(max(turning / high - 1.0, 0.0) / 2.0)) + 1
+        for odd in (start, start + 2):
+            found.append(turning / odd * (1.0 + width * np.array([-1.0, -0.3, 0.0, 0.3, 1.0])))
+    f = np.concatenate(found)
+    f = np.unique(np.clip(f, low, high))[None, :]
+    size = _excursion(first, amplitude, rise, f, rough=True)
+    padded = np.pad(size, ((0, 0), (1, 1)), constant_values=-np.inf)
+    peaks = np.where((size >= padded[:, :-2]) & (size > padded[:, 2:]), size, -np.inf)
+    choice = np.argsort(-peaks, axis=1)[:, : min(_RIVALS, f.shape[1])]
+    at, _ = polish(lambda x: _excursion(first, amplitude, rise, x, rough=True), f, size, choice, 1.0, 2e-3)
+    return np.asarray(at[0])
+
+
+def _followed(modes: Modes, rates: FloatArray, low: float, high: float) -> FloatArray:
+    """Rates to look at (V, F): about each of `rates`, moved as the mode that it belongs to moves."""
+    turning = np.abs(modes[0].imag) / (2.0 * np.pi)
+    damping = np.abs(modes[0].real) / (2.0 * np.pi)
+    count = len(turning)
+    found = [np.broadcast_to(np.array([low, high]), (count, 2))]
+    for rate in rates:
+        times = turning[0] / rate
+        odd = np.maximum(2.0 * np.round((times - 1.0) / 2.0) + 1.0, 1.0)
+        miss = np.where(turning[0] > 0, np.abs(times / odd - 1.0) * odd, np.inf)
+        mode = int(miss.argmin()) if miss.size else 0
+        if miss.size and miss[mode] < _TIED:
+            scale = turning[:, mode] / turning[0, mode]
+            width = np.clip(damping[:, mode] / np.maximum(turning[:, mode], 1e-300), 1e-4, 0.1)
+        else:
+            scale, width = np.ones(count), np.full(count, 0.1)
+        found.append(rate * scale[:, None] * (1.0 + width[:, None] * _AROUND))
+    return np.asarray(np.sort(np.clip(np.concatenate(found, axis=1), low, high), axis=1))
+
+
+def _vertex(f: FloatArray, size: FloatArray) -> FloatArray:
+    """The top (V,) of the parabola through the greatest point and its neighbours; the point itself at an end."""
+    rows, top = np.arange(len(f)), size.argmax(axis=1)
+    inner = np.clip(top, 1, f.shape[1] - 2)
+    a, b, c = (f[rows, inner + k] for k in (-1, 0, 1))
+    ya, yb, yc = (size[rows, inner + k] for k in (-1, 0, 1))
+    with np.errstate(divide="ignore", invalid="ignore"):
+        p = (b - a) ** 2 * (yb - yc) - (b - c) ** 2 * (yb - ya)
+        vertex = b - 0.5 * p / ((b - a) * (yb - yc) - (b - c) * (yb - ya))
+    usable = np.isfinite(vertex) & (vertex > a) & (vertex < c) & (inner == top)
+    return np.asarray(np.where(usable, vertex, f[rows, top]))
