@@ -21,7 +21,7 @@ LINE = 15.0  # the limit
 _UNIT = BASE - LINE
 _HEADROOM = LINE - 1.0
 _LEAST_EXCESS = 4.0  # a failing bar stands clear of the line, however small the excess
-_PITCHES = ((16, 16), (30, 13), (45, 10))
+_PITCHES = ((8, 24), (16, 18), (30, 13), (45, 10))
 _NARROWEST = 8
 
 
@@ -175,7 +175,7 @@ def _cell(
     figures: Mapping[int, str],
     hrefs: Mapping[int, str],
 ) -> Drawn:
-    gap = 4 if step > 10 else 3 if step > _NARROWEST else 2
+    gap = max(2, round(step / 4))
     href = hrefs.get(column.revision, "")
     place = f"save {column.number}, {column.when}"
     if cell is None:

@@ -1,6 +1,8 @@
 // Draws the curves of a check: the newer over the older, the band as a shade, limits as lines.
 "use strict";
 (() => {
+  // The plotting script reads a little markup in texts; ours are shown as they are.
+  const plain = (text) => text.replace(/&/g, "&amp;").replace(/</g, "&lt;").replace(/>/g, "&gt;");
   const css = (name) => getComputedStyle(document.documentElement).getPropertyValue(name).trim();
 
   function faint(colour, share) {
@@ -50,7 +52,7 @@
 
   function axis(about) {
     return {
-      title: { text: about.label, standoff: 12, font: { size: 14 } },
+      title: { text: plain(about.label), standoff: 12, font: { size: 14 } },
       type: about.log ? "log" : "linear",
       gridcolor: css("--hair"),
       zeroline: !about.log,
@@ -91,7 +93,7 @@
   function traces(plot) {
     const made = [];
     const told = (name, x, y) =>
-      x.map((at, place) => `${name}: ${engineering(y[place], plot.y.unit)} at ${engineering(at, plot.x.unit)}`);
+      x.map((at, place) => `${plain(name)}: ${engineering(y[place], plot.y.unit)} at ${engineering(at, plot.x.unit)}`);
     for (const side of plot.sides) {
       const line = looks[side.role]();
       if (side.low.length) {
@@ -101,14 +103,14 @@
         made.push({ ...edge, x: side.x, y: side.high, fill: "tonexty", fillcolor: shade });
       }
       made.push({
-        type: "scatter", mode: "lines", name: side.name, x: side.x, y: side.y, line,
+        type: "scatter", mode: "lines", name: plain(side.name), x: side.x, y: side.y, line,
         text: told(side.name, side.x, side.y), hoverinfo: "text",
       });
     }
     const named = new Set();
     for (const limit of plot.limits) {
       made.push({
-        type: "scatter", mode: "lines", name: limit.name, x: limit.x, y: limit.y,
+        type: "scatter", mode: "lines", name: plain(limit.name), x: limit.x, y: limit.y,
         line: { color: css("--bad"), width: 1.5 },
         legendgroup: limit.name, showlegend: !named.has(limit.name),
         text: told(limit.name, limit.x, limit.y), hoverinfo: "text",
@@ -158,23 +160,26 @@
     place.dataset.limits = String(plot.limits.length);
   }
 
+  let asked = ""; // the frequency that the viewer chose, which outlives a change of the page
   function curves() {
     const place = document.getElementById("plot");
     if (place) draw(place, document.getElementById("plot-note"), place.dataset.curve);
     const form = document.getElementById("sine-form");
     if (!form) return;
     const target = document.getElementById("sine-plot");
+    if (asked) form.elements.f.value = asked;
     const ask = () => {
       const f = encodeURIComponent(form.elements.f.value);
       draw(target, document.getElementById("sine-note"), `${form.dataset.sine}&f=${f}`);
     };
     form.addEventListener("submit", (event) => {
       event.preventDefault();
+      asked = form.elements.f.value;
       ask();
     });
     for (const button of form.querySelectorAll("[data-frequency]")) {
       button.addEventListener("click", () => {
-        form.elements.f.value = button.dataset.frequency;
+        asked = form.elements.f.value = button.dataset.frequency;
         ask();
       });
     }
