@@ -79,7 +79,7 @@ def test_every_style_of_saving_makes_one_revision(board: Path, daemon: Start) ->
     expected = [1.6]
     until(lambda: corners(started.history, board) == expected)
     for style, (resistance, corner) in zip(
-        STYLES, [("5k", 3.2), ("20k", 0.8), ("8k", 2.0), ("4k", 4.0), ("2k", 8.0)], strict=True
+        STYLES, [("5k", 3.2), ("20k", 0.8), ("8k", 2.0), ("4k", 4.0), ("2.5k", 6.4)], strict=True
     ):
         style(board, small_export(resistance))
         expected = [*expected, corner]
