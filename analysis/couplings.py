@@ -114,4 +114,4 @@ def during(modes: PoleResidue, width: float) -> FloatArray:
     """The value of the step response farthest from 0 for 0 ≤ t ≤ `width`, with its sign: (V,)."""
     t = np.unique(np.concatenate([[0.0], np.geomspace(width * 1e-9, width, 400), np.linspace(0.0, width, 200)]))
     values = np.atleast_2d(step(modes).value(t))
-    return values[np.arange(len(values)), np.abs(values).argmax(axis=1)]
+    return np.asarray(values[np.arange(len(values)), np.abs(values).argmax(axis=1)])

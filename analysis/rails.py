@@ -12,7 +12,8 @@ from reactance.analysis.brief_tables import RailTable
 from reactance.analysis.circuit.modal import PoleResidue
 from reactance.analysis.circuit.network import FloatArray
 from reactance.analysis.circuit.response import Response
-from reactance.analysis.circuit.transient import ramp, resonant
+from reactance.analysis.circuit.rhythm import worst_rate
+from reactance.analysis.circuit.transient import ramp
 from reactance.analysis.elements import node
 from reactance.analysis.measuring import Measuring
 from reactance.analysis.parts.band import Band
@@ -104,9 +105,9 @@ def _in_time(seen: Measuring, net: str, fed: bool, asked: Demand, current: float
     low, high = asked.band
 
     def rhythm(modes: PoleResidue) -> FloatArray:
-        return np.asarray(resonant(modes, current, rise, low, high)[1])
+        return worst_rate(modes, current, rise, low, high)[1]
 
-    worst = np.asarray(resonant(seen.modes(seen.nominal), current, rise, low, high)[0])[0]
+    worst = worst_rate(seen.modes(seen.nominal), current, rise, low, high)[0][0]
     note = f"0 to {amps} and back, worst at {format_quantity(float(worst), 'Hz')}"
     found["resonant_droop"] = seen.modal(rhythm, "V", note, missing)
     return found

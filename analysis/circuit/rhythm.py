@@ -1,8 +1,8 @@
 """The repetition rate at which a load that keeps switching moves a voltage most.
 
 For the first set of values the whole band is searched; its best rates, each tied to the ringing mode whose odd
-subharmonic it is, say where to look for the others, whose modes differ by little. Sizes are found as exactly as a
-cubic through value and slope at every sample allows, then once to the last digits at the rate found.
+subharmonic it is, say where to look for the others, whose modes differ by little. Sizes are as exact as a cubic through
+value and slope at every sample is; for a single set of values the last one is found to the last digits.
 """
 
 from __future__ import annotations
@@ -17,7 +17,8 @@ from reactance.analysis.circuit.transient import Modes, modes_of, steady_state
 _RIVALS = 3
 _PER_DECADE = 4
 _TIED = 0.2  # how near an odd subharmonic of a mode a rate has to be to move with that mode
-_AROUND = np.array([-2.0, -0.7, 0.0, 0.7, 2.0])
+_AROUND = np.array([-0.8, 0.0, 0.8])
+_RIVAL = 0.85  # a rate whose excursion is below this share of the greatest is no rival for near sets of values
 
 
 def worst_rate(
@@ -29,20 +30,22 @@ def worst_rate(
     lack its leading axis; V is then 1.
     """
     modes = modes_of(response)
-    first = tuple(x[:1] for x in modes)
+    first = (modes[0][:1], modes[1][:1], modes[2][:1], modes[3][:1])
     rates = _whole_band(first, amplitude, rise, low, high)
     near = _followed(modes, rates, low, high)
     size = _excursion(modes, amplitude, rise, near, rough=True)
     rate = _vertex(near, size)
-    exact = _excursion(modes, amplitude, rise, rate[:, None], rough=False)[:, 0]
+    at_top = _excursion(modes, amplitude, rise, rate[:, None], rough=len(rate) > 1)[:, 0]
     rows, top = np.arange(len(size)), size.argmax(axis=1)
-    better = size[rows, top] > exact
-    return np.where(better, near[rows, top], rate), np.where(better, size[rows, top], exact)
+    better = size[rows, top] > at_top
+    return np.where(better, near[rows, top], rate), np.where(better, size[rows, top], at_top)
 
 
 def _excursion(modes: Modes, amplitude: float, rise: float, f: FloatArray, *, rough: bool) -> FloatArray:
     """The greatest |v − mean| (V, F) at rates f (V, F)."""
-    poles, residues, direct, slope = (np.repeat(x, f.shape[1], axis=0) for x in modes)
+    times = f.shape[1]
+    poles, residues = np.repeat(modes[0], times, axis=0), np.repeat(modes[1], times, axis=0)
+    direct, slope = np.repeat(modes[2], times), np.repeat(modes[3], times)
     pieces = steady_state((poles, residues, direct, slope), amplitude, rise, f.ravel(), halves=1)
     return np.asarray(features.greatest(pieces, np.zeros(pieces.count), 0.0, rough=rough)[1].reshape(f.shape))
 
@@ -63,8 +66,8 @@ def _whole_band(first: Modes, amplitude: float, rise: float, low: float, high: f
     padded = np.pad(size, ((0, 0), (1, 1)), constant_values=-np.inf)
     peaks = np.where((size >= padded[:, :-2]) & (size > padded[:, 2:]), size, -np.inf)
     choice = np.argsort(-peaks, axis=1)[:, : min(_RIVALS, f.shape[1])]
-    at, _ = polish(lambda x: _excursion(first, amplitude, rise, x, rough=True), f, size, choice, 1.0, 2e-3)
-    return np.asarray(at[0])
+    at, top = polish(lambda x: _excursion(first, amplitude, rise, x, rough=True), f, size, choice, 1.0, 2e-3)
+    return np.asarray(at[0][top[0] >= _RIVAL * top[0].max()])
 
 
 def _followed(modes: Modes, rates: FloatArray, low: float, high: float) -> FloatArray:
@@ -72,7 +75,7 @@ def _followed(modes: Modes, rates: FloatArray, low: float, high: float) -> Float
     turning = np.abs(modes[0].imag) / (2.0 * np.pi)
     damping = np.abs(modes[0].real) / (2.0 * np.pi)
     count = len(turning)
-    found = [np.broadcast_to(np.array([low, high]), (count, 2))]
+    found: list[FloatArray] = []
     for rate in rates:
         times = turning[0] / rate
         odd = np.maximum(2.0 * np.round((times - 1.0) / 2.0) + 1.0, 1.0)
