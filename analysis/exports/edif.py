@@ -18,6 +18,7 @@ from reactance.analysis.exports.edif_scan import Container, Entry, outline
 from reactance.analysis.exports.edif_source import Source
 from reactance.analysis.exports.edif_top import top_cell
 from reactance.analysis.exports.limits import DEFAULT_LIMITS, Limits
+from reactance.analysis.exports.text import visible
 
 __all__ = ["FormMemory", "read_edif"]
 
@@ -113,7 +114,7 @@ def _standard(form: list[Sexp], aliases: Mapping[str, str]) -> list[Sexp]:
 def _check_version(top: Container, source: Source) -> None:
     for entry in top.entries:
         if isinstance(entry.value, says.Version) and entry.value.numbers[:2] != ("2", "0"):
-            written = " ".join(entry.value.numbers)[:40] or "none"
+            written = visible(" ".join(entry.value.numbers)[:40]) or "none"
             raise InputError(
                 f"EDIF version {written}; only EDIF 2 0 0 is read",
                 source.place(entry.start),
