@@ -2,19 +2,31 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+from functools import cached_property
+
 import numpy as np
+from msgspec.structs import replace
+
 from reactance.analysis.brief_tables import CouplingTable, SettleTable
+from reactance.analysis.circuit.charge import ChargeLaw
 from reactance.analysis.circuit.network import CircuitError, FloatArray
+from reactance.analysis.circuit.spread import spread
+from reactance.analysis.circuit.start import StartMotion, large_signal_start
 from reactance.analysis.circuit.transient import TimeResponse, start_response
+from reactance.analysis.elements import across
 from reactance.analysis.measuring import band
+from reactance.analysis.parts.models import CapacitorModel
 from reactance.analysis.paths import SignalNetworks
 from reactance.analysis.quantity import format_quantity
 from reactance.analysis.report import Check, Curve, LimitLine
 from reactance.analysis.reuse import Results
-from reactance.analysis.values import unknown
+from reactance.analysis.values import Value, unknown
 
 POINTS = 400
 ENDLESS = "the output does not settle"
+FOLLOWS = "capacitance follows its voltage, charge conserved"
+TOLERANCE = 1e-8
 
 
 class Start:
@@ -25,15 +37,49 @@ class Start:
         self.block = networks.start
         self.parameters = self.block.parameters
         self._known: dict[bytes, TimeResponse] = {}
+        self._large: dict[bytes, StartMotion] = {}
 
     def response(self, values: FloatArray) -> TimeResponse:
-        """v_to(t) in volts for each row of `values` (V, P)."""
+        """v_to(t) in volts for each row of `values` (V, P), every capacitance as at the operating point."""
         key = values.tobytes()
         if key not in self._known:
             self._known[key] = start_response(
                 self.block.network, self.networks.probe, parameters=self.parameters, values=values
             )
         return self._known[key]
+
+    @cached_property
+    def biased(self) -> dict[str, tuple[CapacitorModel, float]]:
+        """Capacitors of the start that lose capacitance to their DC voltage, with that voltage in volts."""
+        found: dict[str, tuple[CapacitorModel, float]] = {}
+        for section in self.networks.start_region.sections:
+            model = section.model
+            if isinstance(model, CapacitorModel) and model.value is not None and model.measured is None:
+                volts = across(self.networks.local_volts, section) or 0.0
+                if model.bias_matters(abs(volts)):
+                    found[section.name] = (model, abs(volts))
+        return found
+
+    def large(self, values: FloatArray) -> StartMotion:
+        """The start for one row of `values` (P,) with charge conserved and capacitances that follow their voltage."""
+        key = values.tobytes()
+        if key not in self._large:
+            changed = {(p.name, p.attribute): float(v) for p, v in zip(self.parameters, values, strict=True)}
+            network = self.block.network.with_values(changed)
+            laws: dict[str, ChargeLaw] = {}
+            empty: dict[tuple[str, str], float] = {}
+            for name, (model, volts) in self.biased.items():
+                at_rest = float(model.capacitance_at(volts))
+                scale = changed.get((name, "capacitance"), at_rest) / at_rest
+                laws[name] = _law(model, scale, 2.0 * volts)
+                empty[name, "capacitance"] = scale * float(model.capacitance_at(0.0))
+            found = large_signal_start(network.with_values(empty), self.networks.probe, laws, tolerance=TOLERANCE)
+            self._large[key] = found
+        return self._large[key]
+
+
+def _law(model: CapacitorModel, scale: float, greatest: float) -> ChargeLaw:
+    return ChargeLaw.of_capacitance(lambda v: scale * model.capacitance_at(v), greatest)
 
 
 def within_volts(settle: SettleTable, response: TimeResponse) -> FloatArray:
@@ -57,15 +103,45 @@ def start_measures(networks: SignalNetworks, settle: SettleTable | None) -> Resu
         response = start.response(values)
         return np.asarray(response.settling_time(within_volts(settle, response)))
 
+    def large_settling(motion: StartMotion) -> float:
+        assert settle is not None
+        near = float(settle.within) * (motion.peak(motion.final) if settle.within.share else 1.0)
+        return motion.settling_time(near)
+
     try:
         if settle is not None:
             near = f"{float(settle.within):.3g}" if settle.within.share else format_quantity(float(settle.within), "V")
-            found["settling"] = band(settling, start.parameters, "s", f"within {near}", ENDLESS)
-        found["startup_peak"] = band(peak, start.parameters, "V", "", ENDLESS)
+            found["settling"] = _start_band(start, settling, large_settling, "s", f"within {near}")
+        found["startup_peak"] = _start_band(start, peak, StartMotion.farthest, "V", "")
     except CircuitError as problem:
         names = ("settling", "startup_peak") if settle is not None else ("startup_peak",)
         return {name: unknown("s" if name == "settling" else "V", str(problem)) for name in names}
     return found
+
+
+def _start_band(
+    start: Start,
+    linear: Callable[[FloatArray], FloatArray],
+    large: Callable[[StartMotion], float],
+    unit: str,
+    note: str,
+) -> Value:
+    """The band of a measure of the start; with capacitors that lose to bias, solved again where it is extreme.
+
+    Which set of values is extreme is found with every capacitance as at the operating point.
+    """
+    value = band(linear, start.parameters, unit, note, ENDLESS)
+    if not start.biased or not value.known:
+        return value
+    ends = spread(linear, start.parameters) if start.parameters else None
+    nominal = np.array([parameter.nominal for parameter in start.parameters])
+    rows = [nominal] if ends is None else [nominal, ends.at_low, ends.at_high]
+    try:
+        figures = [large(start.large(row)) for row in rows]
+    except CircuitError as problem:
+        return replace(value, note=f"{note}; capacitance as at the operating point, since {problem}".lstrip("; "))
+    note = f"{note}; {FOLLOWS}".lstrip("; ")
+    return Value(figures[0], min(figures), max(figures), unit, note, "", value.matters)
 
 
 def start_curve(networks: SignalNetworks, check: Check) -> Curve:
@@ -73,6 +149,7 @@ def start_curve(networks: SignalNetworks, check: Check) -> Curve:
     start = Start(networks)
     nominal = np.array([[parameter.nominal for parameter in start.parameters]])
     response = start.response(nominal)
+    moving = start.large(nominal[0]) if start.biased else None
     final = float(np.asarray(response.final)[0])
     settled = float(np.asarray(response.settling_time(np.array([1e-3 * max(abs(final), 1e-3)])))[0])
     table = networks.path.table
@@ -98,7 +175,7 @@ def start_curve(networks: SignalNetworks, check: Check) -> Curve:
         y_label="voltage",
         y_unit="V",
         x=tuple(t.tolist()),
-        nominal=tuple(response.value(t)[0].tolist()),
+        nominal=tuple((moving.value(t) if moving else response.value(t)[0]).tolist()),
         limits=tuple(lines),
         log_x=False,
     )
