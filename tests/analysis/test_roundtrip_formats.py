@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Mapping
 
 import pytest
 from hypothesis import HealthCheck, given, settings
@@ -10,23 +10,8 @@ from reactance.analysis.design import Design
 from reactance.analysis.exports import ExportFiles, companion_names, kind_of, read_export, stem
 from writers.designs import content, designs, logger_board, pin_words
 from writers.edif import HABITS, edif
-from writers.flat import TableHabit, ipc356, ipc2581, tables
-
-TABLE_HABITS: Mapping[str, TableHabit] = {
-    "tables": TableHabit(),
-    "tables, semicolons, turned": TableHabit(
-        ";", "utf-8-sig", "\n", refdes="Reference Designator", pin="PIN NO.", net="net_name", turned=True
-    ),
-    "tables, tabs, UTF-16": TableHabit("\t", "utf-16", refdes="Ref", pin="Pin#", net="Signal"),
-}
-
-WRITERS: Mapping[str, Callable[[Design], ExportFiles]] = {
-    "IPC-D-356": ipc356,
-    "IPC-2581": ipc2581,
-    "IPC-2581, prefix, UTF-16": lambda design: ipc2581(design, prefix="ipc", encoding="utf-16"),
-    **{name: lambda design, habit=habit: tables(design, habit) for name, habit in TABLE_HABITS.items()},
-    **{f"EDIF, {name}": lambda design, habit=habit: edif(design, habit) for name, habit in HABITS.items()},
-}
+from writers.flat import ipc356
+from writers.formats import WRITERS
 
 KINDS = {"IPC-D": "IPC-D-356", "IPC-2": "IPC-2581", "table": "tables", "EDIF,": "EDIF"}
 

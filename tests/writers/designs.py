@@ -8,9 +8,12 @@ from types import MappingProxyType
 
 from hypothesis import strategies as st
 from reactance.analysis.design import Design, Net, Part, Pin
-from reactance.analysis.exports.edif_parts import REFDES_PROPERTIES
 from reactance.analysis.exports.tables_columns import COLUMNS, COUNTING
 from reactance.analysis.parts.attributes import folded
+
+
+REFDES_PROPERTIES = ("refdes", "ref", "designator", "reference")
+"""Properties that carry a refdes where no designator does, in lower case."""
 
 
 @dataclass(frozen=True)
