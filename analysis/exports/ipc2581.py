@@ -2,18 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
-
 from reactance.analysis.design import Design, InputError, Pin, Place
 from reactance.analysis.exports.collect import Collector, PartDraft, listed
-from reactance.analysis.exports.ipc2581_items import (
-    LENGTHS,
-    BomItem,
-    characteristic,
-    item_attributes,
-    side_of,
-    text,
-)
+from reactance.analysis.exports.ipc2581_gather import Bom, Component, Gathered, LogicalNet, Step
+from reactance.analysis.exports.ipc2581_items import BomItem, side_of, text
 from reactance.analysis.exports.ipc2581_xml import Element, read_elements
 from reactance.analysis.exports.limits import DEFAULT_LIMITS, Limits
 from reactance.analysis.exports.sniff import stem
@@ -25,37 +17,7 @@ FORMAT = "IPC-2581"
 UNCONNECTED = frozenset(("", "n/c", "no net", "$none$"))
 
 _PACKAGE_NAMES = frozenset(folded(name) for name in ALIASES["package"])
-_CHARACTERISTICS = frozenset(("Textual", "Measured", "Ranged", "Enumerated"))
-
-
-@dataclass(slots=True)
-class _Component:
-    element: Element
-    location: tuple[float, float] | None = None
-    attributes: list[tuple[str, str]] = field(default_factory=list)
-
-
-@dataclass(slots=True)
-class _Net:
-    element: Element
-    pins: list[Element] = field(default_factory=list)
-
-
-@dataclass(slots=True)
-class _Step:
-    """One `Step` of the file: a board, or a panel of boards."""
-
-    name: str
-    components: list[_Component] = field(default_factory=list)
-    packages: dict[str, list[Element]] = field(default_factory=dict)
-    nets: list[_Net] = field(default_factory=list)
-
-
-@dataclass(slots=True)
-class _Bom:
-    name: str
-    steps: list[str] = field(default_factory=list)
-    items: list[BomItem] = field(default_factory=list)
+_NUMBER_NAMES = frozenset(folded(name) for name in ALIASES["number"])
 
 
 def read_ipc2581(data: bytes, file: str, *, limits: Limits = DEFAULT_LIMITS) -> Design:
@@ -64,145 +26,18 @@ def read_ipc2581(data: bytes, file: str, *, limits: Limits = DEFAULT_LIMITS) -> 
     Positions are in metres. Of several steps the one that a bill of materials names, else the first with nets, is
     read. Raises InputError for what is no well-formed IPC-2581, has no components and nets, or is beyond `limits`.
     """
-    gathered = _Gathered(file, limits)
+    gathered = Gathered(file, limits)
     read_elements(data, file, limits, gathered.start, gathered.end)
     return _Build(gathered, Collector(file, limits)).design()
-
-
-class _Gathered:
-    """What the file holds that matters, in its own words."""
-
-    def __init__(self, file: str, limits: Limits) -> None:
-        self.file = file
-        self.steps: list[_Step] = []
-        self.boms: list[_Bom] = []
-        self.sides: dict[str, str] = {}
-        self.unit = 1e-3
-        self._limits = limits
-        self._kept = 0
-        self._path: list[str] = []
-        self._package: list[Element] | None = None
-
-    def start(self, element: Element) -> None:
-        """An element begins."""
-        above = self._path[-1] if self._path else ""
-        self._path.append(element.name)
-        handler = _HANDLERS.get(element.name)
-        if handler is not None:
-            handler(self, element, above)
-
-    def end(self, name: str) -> None:
-        """An element ends."""
-        self._path.pop()
-        if name == "Package":
-            self._package = None
-
-    def place(self, element: Element) -> Place:
-        """Where an element begins."""
-        return Place(self.file, element.line, element.column)
-
-    def _count(self, element: Element) -> None:
-        self._kept += 1
-        # Each pin is one entry of a package or of a net, and each part one of the step and of the bill.
-        if self._kept > self._limits.forms + 2 * self._limits.pins:
-            self._limits.check("forms", self._kept, self.place(element))
-
-    def _unit(self, element: Element, _: str) -> None:
-        self.unit = LENGTHS.get(text(element, "units").upper(), 1e-3)
-
-    def _layer(self, element: Element, _: str) -> None:
-        self.sides.setdefault(text(element, "name"), text(element, "side"))
-
-    def _step(self, element: Element, _: str) -> None:
-        self.steps.append(_Step(text(element, "name")))
-
-    def _package_start(self, element: Element, _: str) -> None:
-        if self.steps:
-            self._package = self.steps[-1].packages.setdefault(text(element, "name"), [])
-
-    def _package_pin(self, element: Element, _: str) -> None:
-        if self._package is not None:
-            self._count(element)
-            self._package.append(element)
-
-    def _component(self, element: Element, _: str) -> None:
-        if self.steps:
-            self._count(element)
-            self.steps[-1].components.append(_Component(element))
-
-    def _location(self, element: Element, above: str) -> None:
-        if above == "Component" and self.steps and self.steps[-1].components:
-            try:
-                x, y = (float(element.attributes[axis]) * self.unit for axis in "xy")
-            except (KeyError, ValueError):
-                return
-            if abs(x) < 1e3 and abs(y) < 1e3:  # and neither infinite nor no number
-                self.steps[-1].components[-1].location = (x, y)
-
-    def _nonstandard(self, element: Element, above: str) -> None:
-        name, value = text(element, "name"), text(element, "value")
-        if above == "Component" and name and value and self.steps and self.steps[-1].components:
-            self.steps[-1].components[-1].attributes.append((name, value))
-
-    def _net(self, element: Element, _: str) -> None:
-        if self.steps:
-            self._count(element)
-            self.steps[-1].nets.append(_Net(element))
-
-    def _pin_ref(self, element: Element, above: str) -> None:
-        if above == "LogicalNet" and self.steps and self.steps[-1].nets:
-            self._count(element)
-            self.steps[-1].nets[-1].pins.append(element)
-
-    def _bom(self, element: Element, _: str) -> None:
-        self.boms.append(_Bom(text(element, "name")))
-
-    def _step_ref(self, element: Element, above: str) -> None:
-        if above == "BomHeader" and self.boms:
-            self.boms[-1].steps.append(text(element, "name"))
-
-    def _bom_item(self, element: Element, _: str) -> None:
-        if self.boms:
-            item = BomItem(text(element, "OEMDesignNumberRef"), element.line)
-            item.attributes.extend(item_attributes(element))
-            self.boms[-1].items.append(item)
-
-    def _bom_refdes(self, element: Element, above: str) -> None:
-        if above == "BomItem" and self.boms and self.boms[-1].items:
-            self._count(element)
-            self.boms[-1].items[-1].refdes.append(element)
-
-    def _characteristic(self, element: Element, above: str) -> None:
-        if above == "Characteristics" and self._path[-3:-2] == ["BomItem"] and self.boms and self.boms[-1].items:
-            self._count(element)
-            self.boms[-1].items[-1].attributes.extend(characteristic(element))
-
-
-_HANDLERS = {
-    "CadHeader": _Gathered._unit,
-    "Layer": _Gathered._layer,
-    "Step": _Gathered._step,
-    "Package": _Gathered._package_start,
-    "Pin": _Gathered._package_pin,
-    "Component": _Gathered._component,
-    "Location": _Gathered._location,
-    "NonstandardAttribute": _Gathered._nonstandard,
-    "LogicalNet": _Gathered._net,
-    "PinRef": _Gathered._pin_ref,
-    "Bom": _Gathered._bom,
-    "StepRef": _Gathered._step_ref,
-    "BomItem": _Gathered._bom_item,
-    "RefDes": _Gathered._bom_refdes,
-    **dict.fromkeys(_CHARACTERISTICS, _Gathered._characteristic),
-}
 
 
 class _Build:
     """One step with its bill, on their way into a design."""
 
-    def __init__(self, gathered: _Gathered, collector: Collector) -> None:
+    def __init__(self, gathered: Gathered, collector: Collector) -> None:
         self._file = gathered
         self._collector = collector
+        self._numbers: dict[str, dict[str, str]] = {}
 
     def design(self) -> Design:
         """The design. Raises InputError where the file has neither components nor nets."""
@@ -223,7 +58,7 @@ class _Build:
         file = self._file.file
         return self._collector.design(step.name or stem(file.replace("\\", "/").rsplit("/", 1)[-1]), FORMAT)
 
-    def _chosen(self) -> tuple[_Bom | None, _Step]:
+    def _chosen(self) -> tuple[Bom | None, Step]:
         boms, steps = self._file.boms, self._file.steps
         told = [step for step in steps if step.components or step.nets]
         if not told:
@@ -239,7 +74,7 @@ class _Build:
                 self._collector.problem("note", Place(self._file.file), message)
         return next(iter(boms), None), step
 
-    def _add_component(self, component: _Component, step: _Step) -> None:
+    def _add_component(self, component: Component, step: Step) -> None:
         element = component.element
         place = self._file.place(element)
         refdes = text(element, "refDes")
@@ -256,10 +91,13 @@ class _Build:
         for name, value in component.attributes:
             self._collector.attribute(draft, name, value, place)
         for pin in step.packages.get(text(element, "packageRef"), ()):
-            if text(pin, "number"):
-                self._collector.pin(refdes, Pin(text(pin, "number"), text(pin, "name")), place)
+            number, name = text(pin, "number"), text(pin, "name")
+            if number:
+                self._collector.pin(refdes, Pin(number, name), place)
+                if name and name != number:
+                    self._numbers.setdefault(refdes, {}).setdefault(name, number)
 
-    def _add_net(self, net: _Net) -> None:
+    def _add_net(self, net: LogicalNet) -> None:
         name = text(net.element, "name")
         connected = None if name.lower() in UNCONNECTED else name
         if connected is not None:
@@ -267,6 +105,8 @@ class _Build:
         for pin in net.pins:
             refdes, number = text(pin, "componentRef"), text(pin, "pin")
             if refdes and number:
+                if refdes in self._numbers and number not in self._collector.parts[refdes].pins:
+                    number = self._numbers[refdes].get(number, number)  # some writers refer to a pin by its name
                 self._collector.pin(refdes, Pin(number, net=connected), self._file.place(pin))
             else:
                 message = f"a PinRef of net {name[:40]} without {'pin' if refdes else 'componentRef'} is left out"
@@ -284,7 +124,14 @@ class _Build:
             draft.cell = draft.cell or item.name
             for name, value in item.attributes:
                 self._collector.attribute(draft, name, value, place)
+            self._add_number(draft, item.name)
             self._add_fitting(draft, element)
+
+    def _add_number(self, draft: PartDraft, item: str) -> None:
+        """The maker's number from the list of sources, where no characteristic tells one."""
+        number = self._file.numbers.get(item, "")
+        if number and not any(folded(name) in _NUMBER_NAMES for name in draft.attributes):
+            draft.attributes["MPN"] = number[: self._collector.limits.text]
 
     def _add_fitting(self, draft: PartDraft, element: Element) -> None:
         """Whether the part is fitted, and its package where no characteristic tells it."""

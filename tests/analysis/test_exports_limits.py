@@ -5,11 +5,12 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 
 import pytest
-from reactance.analysis.design import Design, InputError, Part, Pin
-from reactance.analysis.exports import ExportFiles, Limits, read_export
 from writers.designs import design_of
 from writers.edif import edif
 from writers.flat import ipc356, ipc2581, tables
+
+from reactance.analysis.design import Design, InputError, Part, Pin
+from reactance.analysis.exports import ExportFiles, Limits, read_export
 
 WRITERS: Mapping[str, Callable[..., ExportFiles]] = {"EDIF": edif, "356": ipc356, "2581": ipc2581, "tables": tables}
 

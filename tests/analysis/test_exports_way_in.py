@@ -7,6 +7,7 @@ import subprocess
 import sys
 
 import pytest
+
 from reactance.analysis.design import InputError
 from reactance.analysis.exports import ExportFiles, companion_names, is_export, kind_of, read_export, stem
 

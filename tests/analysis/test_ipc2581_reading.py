@@ -3,7 +3,10 @@
 from __future__ import annotations
 
 import pytest
-from reactance.analysis.design import Design, InputError
+from writers.designs import design_of
+from writers.flat import ipc2581
+
+from reactance.analysis.design import Design, InputError, Part, Pin
 from reactance.analysis.exports import ExportFiles, read_export
 
 BOM = """<Bom name="bill"><BomHeader assembly="logger" revision="1"><StepRef name="main"/></BomHeader>
@@ -92,6 +95,30 @@ def test_pins_on_no_net_and_parts_only_in_a_net() -> None:
     assert connections(design) == {"A": {"J1.1"}}
     assert {pin.number: pin.net for pin in design.parts[0].pins} == {"1": "A", "2": None}
     assert any("no Bom" in problem.message for problem in design.problems)
+
+
+def test_pins_referred_to_by_their_names() -> None:
+    design = read(document(steps=STEP.replace('componentRef="C1" pin="2"', 'componentRef="C1" pin="K"')))
+    assert connections(design)["GND"] == {"C1.2"}
+    assert len(design.parts[0].pins) == 2
+
+
+def test_numbers_from_the_list_of_sources() -> None:
+    sources = """<Avl name="a"><AvlItem OEMDesignNumber="CAP-1"><AvlVmpn chosen="true"><AvlMpn name="GH-0603-100N"/>
+    <AvlMpn name="GH-SECOND"/></AvlVmpn></AvlItem></Avl></IPC-2581>"""
+    design = read(document().replace(b"</IPC-2581>", sources.encode()))
+    assert [part.attributes["MPN"] for part in design.parts] == ["GH-0603-100N"] * 2
+
+
+def test_placement_and_side_survive_writing_and_reading() -> None:
+    placed = [
+        Part("C1", (Pin("1", "A", "N"),), position=(0.0125, -0.003), side="top"),
+        Part("C2", (Pin("1", "A", "N"),), position=(0.0, 0.1), side="bottom"),
+        Part("C3", (Pin("1", "A", "N"),)),
+    ]
+    for part, again in zip(placed, read_export(ipc2581(design_of(placed))).parts, strict=True):
+        assert again.side == part.side
+        assert again.position == (None if part.position is None else pytest.approx(part.position))
 
 
 def test_bad_entries_are_listed_and_the_rest_is_kept() -> None:

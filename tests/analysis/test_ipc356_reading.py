@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from reactance.analysis.design import Design, InputError
 from reactance.analysis.exports import ExportFiles, read_export
 from reactance.analysis.exports.ipc356_names import full_names

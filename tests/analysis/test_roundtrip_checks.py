@@ -5,11 +5,12 @@ from __future__ import annotations
 from functools import cache
 
 import pytest
+from writers.designs import logger_board
+from writers.formats import WRITERS
+
 from reactance.analysis.files import BoardFiles
 from reactance.analysis.report import Check
 from reactance.analysis.study import analyse
-from writers.designs import logger_board
-from writers.formats import WRITERS
 
 BRIEF = b"""
 [board]

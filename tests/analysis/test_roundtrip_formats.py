@@ -6,12 +6,13 @@ from collections.abc import Mapping
 
 import pytest
 from hypothesis import HealthCheck, given, settings
-from reactance.analysis.design import Design
-from reactance.analysis.exports import ExportFiles, companion_names, kind_of, read_export, stem
 from writers.designs import content, designs, logger_board, pin_words
 from writers.edif import HABITS, edif
 from writers.flat import ipc356
 from writers.formats import WRITERS
+
+from reactance.analysis.design import Design
+from reactance.analysis.exports import ExportFiles, companion_names, kind_of, read_export, stem
 
 KINDS = {"IPC-D": "IPC-D-356", "IPC-2": "IPC-2581", "table": "tables", "EDIF,": "EDIF"}
 

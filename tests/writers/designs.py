@@ -7,10 +7,10 @@ from dataclasses import dataclass
 from types import MappingProxyType
 
 from hypothesis import strategies as st
+
 from reactance.analysis.design import Design, Net, Part, Pin
 from reactance.analysis.exports.tables_columns import COLUMNS, COUNTING
 from reactance.analysis.parts.attributes import folded
-
 
 REFDES_PROPERTIES = ("refdes", "ref", "designator", "reference")
 """Properties that carry a refdes where no designator does, in lower case."""

@@ -4,10 +4,11 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 
-from reactance.analysis.design import Design
-from reactance.analysis.exports import ExportFiles
 from writers.edif import HABITS, edif
 from writers.flat import TableHabit, ipc356, ipc2581, tables
+
+from reactance.analysis.design import Design
+from reactance.analysis.exports import ExportFiles
 
 TABLE_HABITS: Mapping[str, TableHabit] = {
     "tables": TableHabit(),

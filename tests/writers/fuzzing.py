@@ -11,11 +11,12 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from types import MappingProxyType
 
-from reactance.analysis.design import Design, InputError, Part, Pin
-from reactance.analysis.exports import ExportFiles, read_export
 from writers.designs import design_of, logger_board
 from writers.edif import HABITS, edif
 from writers.flat import TableHabit, ipc356, ipc2581, tables
+
+from reactance.analysis.design import Design, InputError, Part, Pin
+from reactance.analysis.exports import ExportFiles, read_export
 
 SLOW = 2.0
 """Seconds of processor time that no input may take."""
