@@ -6,6 +6,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import click
+
 from reactance.daemon.cli_common import (
     WORDS,
     Refusal,
@@ -55,7 +56,9 @@ def check(
     """
     with refusing():
         from reactance.analysis.study import analyse
+        from reactance.daemon.engine import limit_threads
 
+        limit_threads()
         study = analyse(read_files(export, brief))
         comparison, older = None, None
         if against is not None:

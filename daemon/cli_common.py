@@ -8,6 +8,7 @@ from pathlib import Path
 from typing import IO, TYPE_CHECKING, Any, TypeVar
 
 import click
+
 from reactance.analysis.design import InputError
 from reactance.daemon.places import board_file, default_history
 from reactance.daemon.rows import BoardRow, HistoryError, RevisionRow

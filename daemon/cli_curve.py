@@ -10,6 +10,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 import click
+
 from reactance.daemon.cli_common import Refusal, read_files, refusing
 from reactance.daemon.text import clean
 
@@ -35,7 +36,9 @@ def curve(export: Path, check_id: str, brief: Path | None, sine: str | None) -> 
     """
     with refusing():
         from reactance.analysis.study import analyse
+        from reactance.daemon.engine import limit_threads
 
+        limit_threads()
         study = analyse(read_files(export, brief))
         _known(study, check_id)
         if sine is None:

@@ -11,6 +11,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 import click
+
 from reactance.daemon.cli_common import Refusal, refusing
 from reactance.daemon.cli_watch import (
     DEFAULT_LISTEN,

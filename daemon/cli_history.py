@@ -6,6 +6,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import click
+
 from reactance.daemon.cli_common import (
     Refusal,
     board_named,

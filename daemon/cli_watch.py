@@ -11,6 +11,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import click
+
 from reactance.daemon.cli_common import Refusal, history_option, history_path, refusing
 from reactance.daemon.sentences import save_line
 from reactance.daemon.text import clean, moment

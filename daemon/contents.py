@@ -11,6 +11,7 @@ from types import MappingProxyType
 from typing import Any, TypeVar
 
 import msgspec
+
 from reactance.analysis.exports import ExportFiles
 from reactance.analysis.files import BoardFiles
 

@@ -56,9 +56,18 @@ def default_engine() -> Engine:
     from reactance.analysis.exports import read_export
     from reactance.analysis.study import Memory, analyse
 
+    limit_threads()
     return Engine(
         analyse=lambda files, memory, understood: analyse(files, memory=memory, understood=understood),
         compare=compare,
         design=lambda files: read_export(files.export),
         memory=Memory,
     )
+
+
+def limit_threads() -> None:
+    """One thread for linear algebra from now on: the networks are many and small, and sharing them out costs more
+    than solving them. Takes effect for what is imported already, so it is called after the analysis is."""
+    from threadpoolctl import threadpool_limits
+
+    threadpool_limits(limits=1, user_api="blas")

@@ -14,6 +14,7 @@ from types import MappingProxyType, TracebackType
 from typing import Any
 
 import msgspec
+
 from reactance.analysis.files import BoardFiles
 from reactance.analysis.report import Comparison, Report, Status, Verdict
 from reactance.daemon import contents

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections import Counter
 
 import click
+
 from reactance.analysis.report import Check, Comparison, Report, Status
 from reactance.daemon.sentences import edit_sentence, movement_sentences
 from reactance.daemon.tables import Column, Row, Tone, show

@@ -8,6 +8,7 @@ from typing import Any
 from urllib.parse import quote
 
 import msgspec
+
 from reactance.analysis.design import Design, Place
 from reactance.analysis.report import Check, Report
 from reactance.daemon.text import bounds, figure

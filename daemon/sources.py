@@ -12,9 +12,6 @@ import os
 from collections.abc import Callable, Iterable
 from pathlib import Path
 
-from reactance.daemon.places import network_file_system
-from reactance.daemon.settle import Hint
-from reactance.daemon.walk import Root
 from watchdog.events import (
     DirCreatedEvent,
     DirDeletedEvent,
@@ -30,6 +27,10 @@ from watchdog.events import (
 )
 from watchdog.observers import Observer
 from watchdog.observers.api import ObservedWatch
+
+from reactance.daemon.places import network_file_system
+from reactance.daemon.settle import Hint
+from reactance.daemon.walk import Root
 
 _WANTED: list[type[FileSystemEvent]] = [
     FileCreatedEvent,

@@ -8,6 +8,7 @@ from dataclasses import dataclass
 from typing import Literal
 
 import click
+
 from reactance.daemon.text import clean
 
 Tone = Literal["", "bad", "near", "good", "quiet"]

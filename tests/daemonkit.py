@@ -156,6 +156,7 @@ class Answer:
 def call(*arguments: str | Path, **variables: str) -> Answer:
     """Runs a command in this process, which is quicker; a traceback becomes an exception."""
     from click.testing import CliRunner
+
     from reactance.daemon.cli import reactance
 
     done = CliRunner().invoke(

@@ -13,6 +13,7 @@ from pathlib import Path
 
 from boardkit import edif
 from pytest_benchmark.fixture import BenchmarkFixture
+
 from reactance.daemon.engine import default_engine
 from reactance.daemon.history import History
 from reactance.daemon.intake import Intake

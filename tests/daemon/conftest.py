@@ -7,6 +7,7 @@ from pathlib import Path
 
 import pytest
 from daemonkit import Daemon
+
 from reactance.daemon.history import History
 
 

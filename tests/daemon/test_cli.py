@@ -11,6 +11,7 @@ from pathlib import Path
 import click
 import pytest
 from daemonkit import BRIEF, call, run, small_export
+
 from reactance.daemon.cli import reactance
 
 RAIL = """

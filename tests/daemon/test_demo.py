@@ -8,6 +8,7 @@ from itertools import pairwise
 
 import pytest
 import sexpdata
+
 from reactance.analysis.brief import read_brief
 from reactance.analysis.exports import ExportFiles
 from reactance.analysis.files import BoardFiles

@@ -13,6 +13,7 @@ from pathlib import Path
 
 import pytest
 from daemonkit import board_files, report
+
 from reactance.analysis.exports import ExportFiles
 from reactance.analysis.files import BoardFiles
 from reactance.analysis.report import Comparison, Edit, Figure, Movement

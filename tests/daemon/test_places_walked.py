@@ -6,6 +6,7 @@ from pathlib import Path
 
 import pytest
 from daemonkit import small_export
+
 from reactance.daemon.ignore import IGNORE_FILE, ignored, is_temporary
 from reactance.daemon.places import network_file_system
 from reactance.daemon.reading import is_export

@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 import pytest
+
 from reactance.daemon.settle import BROKEN_AFTER, GONE_AFTER, Hint, Settler, Signature, Step
 
 

@@ -12,6 +12,7 @@ from pathlib import Path
 import psutil
 import pytest
 from daemonkit import BRIEF, Daemon, run, small_export, until
+
 from reactance.daemon.history import History
 
 Start = Callable[..., Daemon]

@@ -13,6 +13,7 @@ from pathlib import Path
 
 import pytest
 from daemonkit import ENGINE, stand_in, until
+
 from reactance.analysis.files import BoardFiles
 from reactance.daemon import sources
 from reactance.daemon.engine import Engine

@@ -6,6 +6,7 @@ import pytest
 from daemonkit import report
 from hypothesis import given
 from hypothesis import strategies as st
+
 from reactance.analysis.report import Check, Edit, Limit
 from reactance.daemon.outcome import Outcome
 from reactance.daemon.sentences import edit_sentence, save_line
