@@ -10,11 +10,12 @@ from collections.abc import Callable, Sequence
 from functools import cached_property
 
 import numpy as np
+
 from reactance.analysis.blocks import Block
 from reactance.analysis.circuit.modal import PoleResidue, pole_residue
 from reactance.analysis.circuit.network import ComplexArray, FloatArray, Parameter
 from reactance.analysis.circuit.response import Response
-from reactance.analysis.circuit.spread import spread
+from reactance.analysis.circuit.spread import FINER, spread
 from reactance.analysis.circuit.sweep import frequency_response
 from reactance.analysis.circuit.transient import TimeResponse, step
 from reactance.analysis.values import Value, banded
@@ -29,12 +30,13 @@ def band(
     unit: str,
     note: str,
     missing: str,
+    finer: float = FINER,
 ) -> Value:
     """Nominal and extremes of `measure` ((V, P) to (V,)) over `parameters`; NaN or infinity means `missing`."""
     if not parameters:
         nominal = float(measure(np.empty((1, 0)))[0])
         return banded(nominal, nominal, nominal, unit, note, missing)
-    found = spread(measure, parameters)
+    found = spread(measure, parameters, finer=finer)
     value = banded(found.nominal, found.low, found.high, unit, note, missing)
     return value if not value.known else _with_shares(value, found.shares, parameters)
 
@@ -101,9 +103,16 @@ class Measuring:
         """The band of a measure of frequency responses."""
         return band(lambda values: measure(self.response(values)), self.parameters, unit, note, missing)
 
-    def modal(self, measure: Callable[[PoleResidue], FloatArray], unit: str, note: str, missing: str) -> Value:
-        """The band of a measure of poles and residues."""
-        return band(lambda values: measure(self.modes(values)), self.parameters, unit, note, missing)
+    def modal(
+        self,
+        measure: Callable[[PoleResidue], FloatArray],
+        unit: str,
+        note: str,
+        missing: str,
+        finer: float = FINER,
+    ) -> Value:
+        """The band of a measure of poles and residues, exact to a share `finer` of itself."""
+        return band(lambda values: measure(self.modes(values)), self.parameters, unit, note, missing, finer)
 
     def stepped(self, measure: Callable[[TimeResponse], FloatArray], unit: str, note: str, missing: str) -> Value:
         """The band of a measure of step responses."""

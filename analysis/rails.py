@@ -6,13 +6,14 @@ import math
 from dataclasses import dataclass
 
 import numpy as np
+
 from reactance.analysis.bias import Bias
 from reactance.analysis.board import Board
 from reactance.analysis.brief_tables import RailTable
 from reactance.analysis.circuit.modal import PoleResidue
 from reactance.analysis.circuit.network import FloatArray
 from reactance.analysis.circuit.response import Response
-from reactance.analysis.circuit.rhythm import worst_rate
+from reactance.analysis.circuit.rhythm import Rhythm
 from reactance.analysis.circuit.transient import ramp
 from reactance.analysis.elements import node
 from reactance.analysis.measuring import Measuring
@@ -25,6 +26,7 @@ from reactance.analysis.reuse import Results
 from reactance.analysis.values import Value, exactly, unknown
 
 LOWEST_FREQUENCY = 1e3  # Hz, of the band where the brief states none
+RHYTHM_EXACT = 1e-3  # share to which the excursion at the worst rate is found for many sets of values
 KNEE = 0.35  # highest frequency of an edge is 0.35 over its rise time (common practice)
 
 
@@ -104,12 +106,14 @@ def _in_time(seen: Measuring, net: str, fed: bool, asked: Demand, current: float
         return found
     low, high = asked.band
 
-    def rhythm(modes: PoleResidue) -> FloatArray:
-        return worst_rate(modes, current, rise, low, high)[1]
+    nominal = seen.modes(seen.nominal)
+    rhythm = Rhythm.of(nominal, current, rise, low, high)
 
-    worst = worst_rate(seen.modes(seen.nominal), current, rise, low, high)[0][0]
-    note = f"0 to {amps} and back, worst at {format_quantity(float(worst), 'Hz')}"
-    found["resonant_droop"] = seen.modal(rhythm, "V", note, missing)
+    def excursion(modes: PoleResidue) -> FloatArray:
+        return rhythm.worst(modes)[1]
+
+    note = f"0 to {amps} and back, worst at {format_quantity(float(rhythm.worst(nominal)[0][0]), 'Hz')}"
+    found["resonant_droop"] = seen.modal(excursion, "V", note, missing, RHYTHM_EXACT)
     return found
 
 

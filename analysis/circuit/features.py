@@ -7,32 +7,35 @@ whether an extreme hides there; the extremes and crossings that matter are then 
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+
 from reactance.analysis.circuit.motion import Pieces
 from reactance.analysis.circuit.network import ComplexArray, FloatArray
+from reactance.analysis.circuit.search import bracketed_root
 
 _PER_SWING = 16
 _PER_DECADE = 12
 _FIRST = 48  # samples over the first swings of every mode
 _MOST = 1500  # samples at most over the swings of one mode, where its envelope says that it must be followed
+_STRETCHES, _RIVALS = 24, 5  # stretches of time of which the best are looked at again
+_LATE_PER_DECADE = 40  # times at which a mode with many swings is looked at
 _FOLLOWED = 480  # samples over its swings where a first crossing is sought
 _CANDIDATES = 4
-_ROUNDS = 80
 
 
 @dataclass(frozen=True, slots=True)
 class Samples:
-    """One piece at increasing times: tau, value, moved (dv/dt), each (V, T)."""
+    """One piece at increasing times: tau, value, moved (dv/dt), each (V, T). `look`: how many looks came before."""
 
     piece: int
     tau: FloatArray
     value: FloatArray
     moved: FloatArray
-    first: bool = True
+    look: int = 0
+    sparse: bool = False
 
 
 def sample(pieces: Pieces, k: int, extra: FloatArray | None = None) -> Samples:
@@ -96,27 +99,62 @@ def _short(pieces: Pieces, k: int) -> FloatArray:
     return np.where(np.isfinite(length), length, 0.0)
 
 
-def _follow(pieces: Pieces, k: int, room: FloatArray) -> FloatArray | None:
-    """Times (V, T) over the further swings of ringing modes, as far as their envelopes exceed `room` (V,).
+def _follow(pieces: Pieces, k: int, room: FloatArray, best: FloatArray) -> tuple[FloatArray | None, bool]:
+    """Times (V, T) over the further swings of ringing modes, as far as they could still take v beyond `best`.
 
-    None where the first swings are all there is to see.
+    `room` (V,) is how far v would have to swing about its resting value. A mode with few such swings is followed
+    densely; one with many is looked at where it is at its own extremes, over all time scales: then the second result
+    is true, and the neighbourhood of the best wants another look. None where the first swings are all there is to see.
     """
     amplitude, p = _amplitudes(pieces, k), pieces.poles
     ringing = np.abs(p.imag) > 0.1 * np.abs(p.real)
-    if not ringing.any():
-        return None
-    until = np.minimum(_fall(amplitude, p, room), pieces.length(k))
-    found = []
+    end = np.minimum(_fall(amplitude, p, room), pieces.length(k))
+    found, sparse = [], False
     for i in np.flatnonzero(ringing.any(axis=0)):
-        alive = amplitude[:, i] > 0.01 * amplitude.sum(axis=1)
-        swings = np.where(alive, until * np.abs(p[:, i].imag) / (2.0 * np.pi), 0.0)
-        number = int(min(_MOST, np.ceil(float(swings.max(initial=0.0)) * _PER_SWING)))
-        if number > _FIRST:
-            found.append(_swings(p[:, i], number)[:, _FIRST:])
-    if not found:
-        return None
-    tau = np.clip(np.concatenate(found, axis=1), 0.0, until[:, None])
-    return np.asarray(np.sort(tau, axis=1))
+        own = _fall(amplitude[:, i, None], p[:, i, None], 1e-10 * np.abs(best))
+        until = np.minimum(end, np.where(amplitude[:, i] > 0, own, 0.0))
+        swings = float((until * np.abs(p[:, i].imag)).max(initial=0.0)) / (2.0 * np.pi)
+        if swings * _PER_SWING > _MOST:
+            found.append(_own_extremes(pieces, k, int(i), until))
+            found.append(np.minimum(_swings(p[:, i], _MOST)[:, _FIRST:], until[:, None]))
+            sparse = True
+        elif swings * _PER_SWING > _FIRST:
+            number = int(np.ceil(swings * _PER_SWING))
+            found.append(np.minimum(_swings(p[:, i], number)[:, _FIRST:], until[:, None]))
+    return (np.sort(np.concatenate(found, axis=1), axis=1) if found else None), sparse
+
+
+def _own_extremes(pieces: Pieces, k: int, i: int, until: FloatArray) -> FloatArray:
+    """Times at which mode i alone is greatest or least, near times even in the logarithm up to `until`: (V, T)."""
+    p = pieces.poles[:, i]
+    safe = np.where(p == 0, 1.0, p)
+    r, u, m = pieces.residues[:, i], pieces.level[:, k], pieces.rate[:, k]
+    swing = pieces.state[:, k, i] + r * u / safe + r * m / safe**2
+    turning = np.maximum(np.abs(p.imag), 1e-300)
+    first = np.minimum(2.0 * np.pi / turning, np.maximum(until, 1e-300))
+    decades = float(np.log10(np.maximum(until, first) / first).max())
+    shares = np.linspace(0.0, 1.0, int(np.ceil(decades * _LATE_PER_DECADE)) + 2)
+    coarse = first[:, None] * (np.maximum(until, first) / first)[:, None] ** shares
+    phase = np.angle(swing)[:, None] + turning[:, None] * coarse
+    to_top = np.mod(-phase, 2.0 * np.pi)
+    to_bottom = np.mod(np.pi - phase, 2.0 * np.pi)
+    times = [coarse + to / turning[:, None] for to in (to_top, to_bottom)]
+    return np.asarray(np.minimum(np.concatenate(times, axis=1), until[:, None]))
+
+
+def _windows(pieces: Pieces, found: Samples, about: FloatArray, sign: float) -> FloatArray:
+    """Times (V, T) about the best samples of different stretches, dense for the fastest ringing mode."""
+    p = pieces.poles
+    turning = np.where(np.abs(p.imag) > 0.1 * np.abs(p.real), np.abs(p.imag), 0.0).max(axis=1)
+    score = _score(found.value, about[:, None], sign)
+    stretches = np.array_split(np.arange(score.shape[1]), _STRETCHES)
+    tops = np.stack([part[score[:, part].argmax(axis=1)] for part in stretches], axis=1)
+    rank = np.argsort(-np.take_along_axis(score, tops, 1), axis=1)[:, :_RIVALS]
+    centre = np.take_along_axis(found.tau, np.take_along_axis(tops, rank, 1), 1)
+    step = 2.0 * np.pi / _PER_SWING / np.maximum(turning, 1e-300)
+    steps = np.arange(-_MOST // (2 * _RIVALS), _MOST // (2 * _RIVALS))
+    times = centre[:, :, None] + step[:, None, None] * steps
+    return np.asarray(np.clip(times.reshape(len(times), -1), 0.0, pieces.length(found.piece)[:, None]))
 
 
 def _fall(amplitude: FloatArray, p: ComplexArray, room: FloatArray) -> FloatArray:
@@ -133,8 +171,8 @@ def _fall(amplitude: FloatArray, p: ComplexArray, room: FloatArray) -> FloatArra
 def greatest(pieces: Pieces, about: FloatArray, sign: float, *, rough: bool = False) -> tuple[FloatArray, FloatArray]:
     """Time and size of the greatest sign·(v − about) over t > 0: each (V,). `sign` 0 takes the greatest |v − about|.
 
-    The time is infinite where the greatest is only approached. `rough` leaves extremes between samples at what the
-    cubic through the samples says, for a first search.
+    The time is infinite where the greatest is only approached. `rough`, for a first search, looks at the first swings
+    alone and leaves extremes between samples at what the cubic through the samples says.
     """
     best_time = np.full(pieces.count, np.inf)
     final = pieces.final()
@@ -147,23 +185,34 @@ def greatest(pieces: Pieces, about: FloatArray, sign: float, *, rough: bool = Fa
             better = scores > best * (1.0 + 1e-13 * np.sign(best))
             best = np.where(better, scores, best)
             best_time = np.where(better, pieces.start[:, k] + times, best_time)
-            found = _more(pieces, k, best, about, sign) if found.first else None
+            found = None if rough else _next_look(pieces, found, best, about, sign)
     if pieces.jumps:
         best = np.where(pieces.slope != 0, np.inf, best)
     return best_time, best
 
 
-def _more(pieces: Pieces, k: int, best: FloatArray, about: FloatArray, sign: float) -> Samples | None:
-    """Samples of later swings of piece k that could still beat `best`."""
-    p, still = pieces.poles, pieces.poles == 0
-    rest = np.where(still, 0.0, -pieces.residues / np.where(still, 1.0, p)).sum(axis=1).real + pieces.direct
-    levels = [pieces.level[:, k], pieces.level[:, k] + pieces.rate[:, k] * _short(pieces, k)]
-    resting = np.max([_score(rest * u + pieces.offset, about, sign) for u in levels], axis=0)
-    tau = _follow(pieces, k, np.maximum(best - resting, 0.0))
+def _next_look(
+    pieces: Pieces, found: Samples, best: FloatArray, about: FloatArray, sign: float
+) -> Samples | None:
+    """After the first swings, later ones that could still beat `best`; after those, the neighbourhood of the best."""
+    k = found.piece
+    tau, sparse = None, False
+    if found.look == 0:
+        tau, sparse = _follow(pieces, k, np.maximum(best - _resting(pieces, k, about, sign), 0.0), best)
+    elif found.look == 1 and found.sparse:
+        tau = np.sort(_windows(pieces, found, about, sign), axis=1)
     if tau is None:
         return None
-    later = _sampled(pieces, k, tau)
-    return Samples(k, later.tau, later.value, later.moved, first=False)
+    seen = _sampled(pieces, k, tau)
+    return Samples(k, seen.tau, seen.value, seen.moved, found.look + 1, sparse)
+
+
+def _resting(pieces: Pieces, k: int, about: FloatArray, sign: float) -> FloatArray:
+    """The greatest score of the value about which v swings in piece k, (V,)."""
+    still = pieces.poles == 0
+    rest = np.where(still, 0.0, -pieces.residues / np.where(still, 1.0, pieces.poles)).sum(axis=1).real
+    levels = [pieces.level[:, k], pieces.level[:, k] + pieces.rate[:, k] * _short(pieces, k)]
+    return np.asarray(np.max([_score((rest + pieces.direct) * u + pieces.offset, about, sign) for u in levels], axis=0))
 
 
 def _score(value: FloatArray, about: FloatArray, sign: float) -> FloatArray:
@@ -179,7 +228,7 @@ def _best_of(
     top = score.argmax(axis=1)
     time, best = found.tau[rows, top], score[rows, top]
     turns = found.moved[:, :-1] * found.moved[:, 1:] < 0
-    reach = np.where(turns, _score(_swell(found), about[:, None], sign), -np.inf)
+    reach = np.where(turns, _score(_swell(pieces, found), about[:, None], sign), -np.inf)
     number = min(_CANDIDATES, reach.shape[1])
     if not number or not turns.any():
         return time, best
@@ -198,8 +247,12 @@ def _best_of(
     return np.where(better, tau[rows, top], time), np.where(better, score[rows, top], best)
 
 
-def _swell(found: Samples) -> FloatArray:
-    """The value at the turn of the cubic through each pair of samples, (V, T − 1); the nearer end where it has none."""
+def _swell(pieces: Pieces, found: Samples) -> FloatArray:
+    """The value at the turn of the cubic through each pair of samples, (V, T − 1).
+
+    Where it has none, or the samples lie too far apart for the fastest ringing mode to be told from them, the value of
+    the end that is farther from the middle.
+    """
     h = np.diff(found.tau, axis=1)
     a, b = found.value[:, :-1], found.value[:, 1:]
     da, db = found.moved[:, :-1] * h, found.moved[:, 1:] * h
@@ -208,7 +261,9 @@ def _swell(found: Samples) -> FloatArray:
     with np.errstate(divide="ignore", invalid="ignore"):
         q = -(c2 + np.copysign(root, c2))
         x = np.stack([q / (3 * c3), da / q])
-    x = np.where((x >= 0) & (x <= 1), x, 0.0)
+    ringing = np.where(np.abs(pieces.poles.imag) > 0.1 * np.abs(pieces.poles.real), np.abs(pieces.poles.imag), 0.0)
+    near = h * ringing.max(axis=1, initial=0.0)[:, None] < 1.0
+    x = np.where((x >= 0) & (x <= 1) & near, x, np.where(np.abs(b) > np.abs(a), 1.0, 0.0))
     value = a + x * (da + x * (c2 + x * c3))
     middle = 0.5 * (a + b)
     far = np.abs(value - middle).argmax(axis=0)
@@ -219,56 +274,18 @@ def polish_turn(pieces: Pieces, found: Samples, choice: NDArray[np.intp]) -> Flo
     """The time of the extreme between samples `choice` and `choice` + 1, (V, c), to the last digits."""
     low = np.take_along_axis(found.tau, choice, 1)
     high = np.take_along_axis(found.tau, choice + 1, 1)
-    rising = np.take_along_axis(found.moved, choice, 1) > 0
-
-    def beyond(tau: FloatArray) -> tuple[FloatArray, NDArray[np.bool_]]:
-        _, moved = pieces.local(found.piece, tau)
-        return moved, (moved > 0) != rising
-
-    return _narrow(low, high, beyond, 1e-8)
+    return bracketed_root(lambda tau: pieces.local(found.piece, tau)[1], low, high, 1e-9)
 
 
 def polish_crossing(
     pieces: Pieces, k: NDArray[np.intp], low: FloatArray, high: FloatArray, level: FloatArray
 ) -> FloatArray:
     """Where v passes `level` (V,) between times `low` and `high` (V,) of pieces k (V,)."""
-    start, _ = pieces.gathered(k[:, None], low[:, None])
-    above = start[:, 0] > level
 
-    def beyond(tau: FloatArray) -> tuple[FloatArray, NDArray[np.bool_]]:
-        value, _ = pieces.gathered(k[:, None], tau)
-        return value - level[:, None], (value > level[:, None]) != above[:, None]
+    def above(tau: FloatArray) -> FloatArray:
+        return pieces.gathered(k[:, None], tau)[0] - level[:, None]
 
-    return _narrow(low[:, None], high[:, None], beyond, 0.0)[:, 0]
-
-
-def _narrow(
-    low: FloatArray,
-    high: FloatArray,
-    beyond: Callable[[FloatArray], tuple[FloatArray, NDArray[np.bool_]]],
-    share: float,
-) -> FloatArray:
-    """Bisection mixed with the secant (the Illinois rule), until the point moves by less than `share` of the bracket.
-
-    With share 0, to the last digits.
-    """
-    low, high = low.copy(), high.copy()
-    f_low, f_high = beyond(low)[0], beyond(high)[0]
-    enough = np.maximum(share * (high - low), 4e-16 * np.abs(high))
-    last = low
-    for step in range(_ROUNDS):
-        width = high - low
-        with np.errstate(divide="ignore", invalid="ignore"):
-            secant = high - f_high * width / (f_high - f_low)
-        usable = np.isfinite(secant) & (secant > low) & (secant < high) & (step % 4 != 3)
-        at = np.where(usable, secant, 0.5 * (low + high))
-        f, past = beyond(at)
-        done = (width <= enough) | (f == 0) | (usable & (np.abs(at - last) <= enough) & (share > 0))
-        if done.all():
-            return at
-        f_low, f_high = np.where(past, 0.5 * f_low, f), np.where(past, f, 0.5 * f_high)
-        low, high, last = np.where(past, low, at), np.where(past, at, high), at
-    return at
+    return bracketed_root(above, low[:, None], high[:, None])[:, 0]
 
 
 def last_outside(pieces: Pieces, about: FloatArray, within: FloatArray) -> FloatArray:
@@ -301,7 +318,7 @@ def _last_in_piece(
     rows = np.arange(pieces.count)
     outside = np.abs(found.value - about[:, None]) > within[:, None]
     turns = found.moved[:, :-1] * found.moved[:, 1:] < 0
-    hidden = turns & ~outside[:, 1:] & (np.abs(_swell(found) - about[:, None]) > 0.9 * within[:, None])
+    hidden = turns & ~outside[:, 1:] & (np.abs(_swell(pieces, found) - about[:, None]) > 0.9 * within[:, None])
     columns = found.tau.shape[1]
     last = np.where(outside.any(axis=1), columns - 1 - outside[:, ::-1].argmax(axis=1), -1)
     low = np.where(last >= 0, found.tau[rows, last], 0.0)
@@ -349,7 +366,7 @@ def _first_in_piece(
     rows = np.arange(pieces.count)
     reached = (found.value - level[:, None]) * side[:, None] <= 0
     turns = found.moved[:, :-1] * found.moved[:, 1:] < 0
-    hidden = turns & ((_swell(found) - level[:, None]) * side[:, None] < 0) & ~reached[:, :-1] & ~reached[:, 1:]
+    hidden = turns & ((_swell(pieces, found) - level[:, None]) * side[:, None] < 0) & ~reached[:, :-1] & ~reached[:, 1:]
     index = np.where(reached.any(axis=1), reached.argmax(axis=1), reached.shape[1])
     first_hidden = np.where(hidden.any(axis=1), hidden.argmax(axis=1), reached.shape[1])
     use_hidden = first_hidden < index

@@ -1,16 +1,19 @@
 """The repetition rate at which a load that keeps switching moves a voltage most.
 
 For the first set of values the whole band is searched; its best rates, each tied to the ringing mode whose odd
-subharmonic it is, say where to look for the others, whose modes differ by little. Sizes are as exact as a cubic through
-value and slope at every sample is; for a single set of values the last one is found to the last digits.
+subharmonic it is, say where to look for the others, whose modes differ by little. The search goes by rough sizes;
+the size at the rate found is exact.
 """
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import numpy as np
+
 from reactance.analysis.circuit import features
 from reactance.analysis.circuit.modal import PoleResidue
-from reactance.analysis.circuit.network import FloatArray
+from reactance.analysis.circuit.network import ComplexArray, FloatArray
 from reactance.analysis.circuit.search import polish
 from reactance.analysis.circuit.transient import Modes, modes_of, steady_state
 
@@ -21,24 +24,59 @@ _AROUND = np.array([-0.8, 0.0, 0.8])
 _RIVAL = 0.85  # a rate whose excursion is below this share of the greatest is no rival for near sets of values
 
 
-def worst_rate(
-    response: PoleResidue, amplitude: float, rise: float, low: float, high: float
-) -> tuple[FloatArray, FloatArray]:
-    """The rate (V,) in [low, high] Hz and the greatest |v − mean| (V,) in the steady state there.
+@dataclass(frozen=True, slots=True)
+class Rhythm:
+    """The best rates (R,) in Hz over the whole band of one set of values, each with the pole of its mode (R,) or 0."""
 
-    The load switches between 0 and `amplitude` with linear edges of `rise` seconds, half the time each. `response` may
-    lack its leading axis; V is then 1.
-    """
-    modes = modes_of(response)
-    first = (modes[0][:1], modes[1][:1], modes[2][:1], modes[3][:1])
-    rates = _whole_band(first, amplitude, rise, low, high)
-    near = _followed(modes, rates, low, high)
-    size = _excursion(modes, amplitude, rise, near, rough=True)
-    rate = _vertex(near, size)
-    at_top = _excursion(modes, amplitude, rise, rate[:, None], rough=len(rate) > 1)[:, 0]
-    rows, top = np.arange(len(size)), size.argmax(axis=1)
-    better = size[rows, top] > at_top
-    return np.where(better, near[rows, top], rate), np.where(better, size[rows, top], at_top)
+    amplitude: float
+    rise: float
+    low: float
+    high: float
+    rates: FloatArray
+    poles: ComplexArray
+
+    @classmethod
+    def of(cls, response: PoleResidue, amplitude: float, rise: float, low: float, high: float) -> Rhythm:
+        """Search [low, high] Hz for a load between 0 and `amplitude` with linear edges of `rise` seconds.
+
+        Half the time each. Of a batch, its first set of values is searched.
+        """
+        modes = modes_of(response)
+        first = (modes[0][:1], modes[1][:1], modes[2][:1], modes[3][:1])
+        rates = _whole_band(first, amplitude, rise, low, high)
+        return cls(amplitude, rise, low, high, rates, np.array([_mode_of(rate, modes[0][0]) for rate in rates]))
+
+    def worst(self, response: PoleResidue) -> tuple[FloatArray, FloatArray]:
+        """The rate (V,) in Hz and the greatest |v − mean| (V,) in the steady state there."""
+        modes = modes_of(response)
+        near = self._followed(modes[0])
+        size = _excursion(modes, self.amplitude, self.rise, near, rough=True)
+        rate = _vertex(near, size)
+        return rate, _excursion(modes, self.amplitude, self.rise, rate[:, None], rough=False)[:, 0]
+
+    def _followed(self, poles: ComplexArray) -> FloatArray:
+        """Rates to look at (V, F): about each of `rates`, moved as the mode that it belongs to moves."""
+        count = len(poles)
+        found: list[FloatArray] = []
+        for rate, mode in zip(self.rates, self.poles, strict=True):
+            scale, width = np.ones(count), np.full(count, 0.1)
+            if mode.imag:
+                nearest = np.abs(poles - mode).argmin(axis=1)
+                own = poles[np.arange(count), nearest]
+                turning = np.where(own.imag != 0, np.abs(own.imag), abs(mode.imag))
+                scale = turning / abs(mode.imag)
+                width = np.clip(np.abs(own.real) / turning, 1e-4, 0.1)
+            found.append(rate * scale[:, None] * (1.0 + width[:, None] * _AROUND))
+        return np.asarray(np.sort(np.clip(np.concatenate(found, axis=1), self.low, self.high), axis=1))
+
+
+def _mode_of(rate: float, poles: ComplexArray) -> complex:
+    """The ringing pole of which `rate` is nearly an odd subharmonic; 0 where there is none."""
+    turning = np.abs(poles.imag) / (2.0 * np.pi)
+    times = turning / rate
+    odd = np.maximum(2.0 * np.round((times - 1.0) / 2.0) + 1.0, 1.0)
+    miss = np.where(turning > 0, np.abs(times / odd - 1.0) * odd, np.inf)
+    return complex(poles[miss.argmin()]) if miss.size and miss.min() < _TIED else 0j
 
 
 def _excursion(modes: Modes, amplitude: float, rise: float, f: FloatArray, *, rough: bool) -> FloatArray:
@@ -68,26 +106,6 @@ def _whole_band(first: Modes, amplitude: float, rise: float, low: float, high: f
     choice = np.argsort(-peaks, axis=1)[:, : min(_RIVALS, f.shape[1])]
     at, top = polish(lambda x: _excursion(first, amplitude, rise, x, rough=True), f, size, choice, 1.0, 2e-3)
     return np.asarray(at[0][top[0] >= _RIVAL * top[0].max()])
-
-
-def _followed(modes: Modes, rates: FloatArray, low: float, high: float) -> FloatArray:
-    """Rates to look at (V, F): about each of `rates`, moved as the mode that it belongs to moves."""
-    turning = np.abs(modes[0].imag) / (2.0 * np.pi)
-    damping = np.abs(modes[0].real) / (2.0 * np.pi)
-    count = len(turning)
-    found: list[FloatArray] = []
-    for rate in rates:
-        times = turning[0] / rate
-        odd = np.maximum(2.0 * np.round((times - 1.0) / 2.0) + 1.0, 1.0)
-        miss = np.where(turning[0] > 0, np.abs(times / odd - 1.0) * odd, np.inf)
-        mode = int(miss.argmin()) if miss.size else 0
-        if miss.size and miss[mode] < _TIED:
-            scale = turning[:, mode] / turning[0, mode]
-            width = np.clip(damping[:, mode] / np.maximum(turning[:, mode], 1e-300), 1e-4, 0.1)
-        else:
-            scale, width = np.ones(count), np.full(count, 0.1)
-        found.append(rate * scale[:, None] * (1.0 + width[:, None] * _AROUND))
-    return np.asarray(np.sort(np.clip(np.concatenate(found, axis=1), low, high), axis=1))
 
 
 def _vertex(f: FloatArray, size: FloatArray) -> FloatArray:

@@ -1,7 +1,7 @@
 """The extremes of a measure over uncertain values, its Monte Carlo samples, and which value matters how much.
 
-A measure is a function of values (V, P) that returns (V,): NaN or infinite where it does not exist. It is called with many
-rows at once.
+A measure is a function of values (V, P) that returns (V,): NaN or infinite where it does not exist. It
+is called with many rows at once.
 """
 
 from __future__ import annotations
@@ -12,6 +12,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+
 from reactance.analysis.circuit.network import FloatArray, Parameter
 
 Measure = Callable[[FloatArray], FloatArray]
@@ -20,7 +21,7 @@ EXHAUSTIVE = 8  # up to this many parameters every vertex is looked at
 _ROWS = 512  # most rows handed to a measure at once
 _INTERIOR = 24
 _STARTS = 6
-_FINER = 1e-5  # an improvement below this share of the figure is no improvement: bands are promised to 0.1 %
+FINER = 1e-5  # an improvement below this share of the figure is no improvement: bands are promised to 0.1 %
 _FINEST_STEP = 2e-3  # of a range; the figure is flat about an inside extreme, so its error is far smaller
 _IDLE = 3e-3  # beyond `EXHAUSTIVE` parameters: those that together move less than this share are not flipped
 _NORMAL_975 = 1.959963984540054
@@ -42,13 +43,14 @@ class Spread:
     shares: FloatArray
 
 
-def spread(measure: Measure, parameters: Sequence[Parameter]) -> Spread:
+def spread(measure: Measure, parameters: Sequence[Parameter], *, finer: float = FINER) -> Spread:
     """The extremes of `measure` over all parameters independently in [low, high].
 
     The first call of `measure` has the same rows for every measure over equal parameters, so that a caller can solve
     them once: nominal, one parameter at a time, vertices, points inside. Every vertex is tried for up to 8
     parameters; beyond, vertices are climbed from where the slopes point and from the best known. Where a point inside
-    beats the vertices (a resonance) the extreme is followed inside. NaN anywhere makes both extremes NaN.
+    beats the vertices (a resonance) the extreme is followed inside. NaN anywhere makes both extremes NaN. `finer` is
+    the share of the figure below which a difference is none: not finer than the measure itself is exact.
     """
     box = _Box.of(parameters)
     count = len(parameters)
@@ -64,10 +66,10 @@ def spread(measure: Measure, parameters: Sequence[Parameter]) -> Spread:
     shares = _shares(nominal, values[1 : 1 + 2 * count].reshape(2, count))
     known = _Known(measure, box, np.concatenate([corners, inner]), values[1 + 2 * count :])
     three = np.stack([values[1 : 1 + count], np.full(count, nominal), values[1 + count : 1 + 2 * count]])
-    even = _rises_evenly(three, corners, values[1 + 2 * count : 1 + 2 * count + len(corners)])
+    even = _rises_evenly(three, corners, values[1 + 2 * count : 1 + 2 * count + len(corners)], finer)
     ends = []
     for sign in (-1.0, 1.0):
-        climber = _Climber(known, sign)
+        climber = _Climber(known, sign, finer)
         if count > EXHAUSTIVE:
             climber.climb((sign * slopes > 0).astype(float), shares)
         if not even:
@@ -79,7 +81,7 @@ def spread(measure: Measure, parameters: Sequence[Parameter]) -> Spread:
     return Spread(nominal, ends[0][0], ends[1][0], ends[0][1], ends[1][1], shares)
 
 
-def _rises_evenly(three: FloatArray, corners: FloatArray, values: FloatArray) -> bool:
+def _rises_evenly(three: FloatArray, corners: FloatArray, values: FloatArray, finer: float) -> bool:
     """Whether each parameter moves the measure one way only, as far as the known points tell.
 
     `three` (3, P): one parameter at low, nominal and high. `corners` (V, P) as shares with their `values` (V,); where
@@ -87,7 +89,7 @@ def _rises_evenly(three: FloatArray, corners: FloatArray, values: FloatArray) ->
     """
     size = max(float(np.abs(values).max(initial=0.0)), float(np.abs(three).max(initial=0.0)))
     steps = np.diff(three, axis=0)
-    steps = np.where(np.abs(steps) > _FINER * size, np.sign(steps), 0.0)
+    steps = np.where(np.abs(steps) > finer * size, np.sign(steps), 0.0)
     if (steps[0] * steps[1] < 0).any():
         return False
     way = np.where(steps[0] != 0, steps[0], steps[1])
@@ -97,7 +99,7 @@ def _rises_evenly(three: FloatArray, corners: FloatArray, values: FloatArray) ->
     for i in range(count):
         pairs = values.reshape(-1, 2, 2**i)  # vertices count in binary, the first parameter fastest
         rise = pairs[:, 1] - pairs[:, 0]
-        ways = np.sign(rise[np.abs(rise) > _FINER * size])
+        ways = np.sign(rise[np.abs(rise) > finer * size])
         if len(ways) and ((ways != ways[0]).any() or way[i] * ways[0] < 0):
             return False
     return True
@@ -188,8 +190,8 @@ class _Known:
 class _Climber:
     """Follows sign·measure upward through the box."""
 
-    def __init__(self, known: _Known, sign: float) -> None:
-        self.known, self.sign = known, sign
+    def __init__(self, known: _Known, sign: float, finer: float) -> None:
+        self.known, self.sign, self.finer = known, sign, finer
         self.where, self.best = self._top(corners=False)
 
     def _top(self, *, corners: bool) -> tuple[FloatArray, float]:
@@ -224,7 +226,7 @@ class _Climber:
             flips = np.repeat(here[None, :], len(moving), axis=0)
             flips[np.arange(len(moving)), moving] = 1.0 - here[moving]
             values = self._try(flips)
-            good = np.flatnonzero(values > value + _FINER * abs(value))
+            good = np.flatnonzero(values > value + self.finer * abs(value))
             if not len(good):
                 return
             order = moving[good[np.argsort(-values[good])]]
@@ -244,7 +246,7 @@ class _Climber:
             rows = k * count + np.arange(count)
             lines[rows, np.arange(count)] = np.abs(corner_at - share)
         self._try(lines)
-        if self.best > corner + _FINER * abs(corner):
+        if self.best > corner + self.finer * abs(corner):
             self._search()
 
     def _search(self) -> None:
@@ -252,13 +254,13 @@ class _Climber:
         count = len(self.where)
         random = np.random.default_rng(21)
         step, memory = 0.25, np.zeros(count)
-        while step > _FINEST_STEP:
+        while step > max(_FINEST_STEP, 20.0 * self.finer):
             here, value = self.where.copy(), self.best
             drawn = random.standard_normal((count + 4, count))
             drawn *= 1.0 / np.abs(drawn).max(axis=1, keepdims=True)
             ways = np.concatenate([np.eye(count), -np.eye(count), memory[None, :], 2 * memory[None, :], drawn])
             self._try(np.clip(here + step * ways, 0.0, 1.0))
-            if self.best > value + _FINER * abs(value):
+            if self.best > value + self.finer * abs(value):
                 moved = self.where - here
                 memory = moved / max(float(np.abs(moved).max()), 1e-300)
             else:
