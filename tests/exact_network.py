@@ -274,9 +274,7 @@ def _roots(c: list[mp.mpf]) -> list[mp.mpc]:
 
 def _smallest(c: Sequence[mp.mpf]) -> mp.mpc:
     """A point at the scale of the smallest root."""
-    scale = min(
-        (abs(c[0] / c[k]) ** (mp.mpf(1) / k) for k in range(1, len(c)) if c[k]), default=mp.mpf(1)
-    )
+    scale = min((abs(c[0] / c[k]) ** (mp.mpf(1) / k) for k in range(1, len(c)) if c[k]), default=mp.mpf(1))
     return mp.mpc(-scale / 2, scale / 3)
 
 

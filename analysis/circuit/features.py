@@ -191,9 +191,7 @@ def greatest(pieces: Pieces, about: FloatArray, sign: float, *, rough: bool = Fa
     return best_time, best
 
 
-def _next_look(
-    pieces: Pieces, found: Samples, best: FloatArray, about: FloatArray, sign: float
-) -> Samples | None:
+def _next_look(pieces: Pieces, found: Samples, best: FloatArray, about: FloatArray, sign: float) -> Samples | None:
     """After the first swings, later ones that could still beat `best`; after those, the neighbourhood of the best."""
     k = found.piece
     tau, sparse = None, False

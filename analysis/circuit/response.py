@@ -11,9 +11,10 @@ from typing import Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+
 from reactance.analysis.circuit.network import CircuitError, ComplexArray, FloatArray, Network, Parameter
 from reactance.analysis.circuit.roots import Question, find_roots
-from reactance.analysis.circuit.search import polish
+from reactance.analysis.circuit.search import bracketed_root, polish
 from reactance.analysis.circuit.system import NEAR_INFINITY, NEAR_ZERO, System
 
 _PER_DECADE = 24
@@ -177,22 +178,12 @@ class Response:
 
     def _cross(self, a: FloatArray, b: FloatArray, level: FloatArray) -> FloatArray:
         """Where |H| passes `level` between a (above) and b (below), (V,), in log frequency."""
-        low, high = np.log(np.maximum(a, 1e-300)), np.log(np.maximum(b, 1e-300))
-        y_low = np.log(np.abs(self._at(a[:, None]))[:, 0] / level)
-        y_high = np.log(np.maximum(np.abs(self._at(b[:, None]))[:, 0], 1e-300) / level)
-        for step in range(100):
-            width = np.abs(high - low)
-            if (width < 1e-13).all():
-                break
-            with np.errstate(divide="ignore", invalid="ignore"):
-                x = high - y_high * (high - low) / (y_high - y_low)
-            inside = np.isfinite(x) & (x > np.minimum(low, high)) & (x < np.maximum(low, high)) & (step % 3 != 2)
-            x = np.where(inside, x, 0.5 * (low + high))
-            y = np.log(np.maximum(np.abs(self._at(np.exp(x)[:, None]))[:, 0], 1e-300) / level)
-            past = y < 0
-            low, y_low = np.where(past, low, x), np.where(past, 0.5 * y_low, y)
-            high, y_high = np.where(past, x, high), np.where(past, y, 0.5 * y_high)
-        return np.asarray(np.exp(0.5 * (low + high)))
+
+        def above(x: FloatArray) -> FloatArray:
+            size = np.abs(self._at(np.exp(x)[:, None]))[:, 0]
+            return np.asarray(np.log(np.maximum(size, 1e-300) / level))
+
+        return np.exp(bracketed_root(above, np.log(np.maximum(a, 1e-300)), np.log(np.maximum(b, 1e-300))))
 
     def _with_dips(self, f: FloatArray, size: FloatArray) -> tuple[FloatArray, FloatArray]:
         """The grid with its local minima polished in, so that a notch is seen for what it is."""

@@ -1,4 +1,4 @@
-"""Extremes of a function of frequency from a grid of it, for many functions at once."""
+"""Extremes and roots of functions between grid points, for many functions at once."""
 
 from __future__ import annotations
 
@@ -6,9 +6,48 @@ from collections.abc import Callable
 
 import numpy as np
 from numpy.typing import NDArray
+
 from reactance.analysis.circuit.network import FloatArray
 
-_ROUNDS = 60
+_ROUNDS = 80
+_ULP = 2.0**-53
+
+
+def bracketed_root(
+    function: Callable[[FloatArray], FloatArray], low: FloatArray, high: FloatArray, share: float = 0.0
+) -> FloatArray:
+    """Roots of `function` between `low` and `high`, where it has opposite signs; any shape, each entry on its own.
+
+    To the last digits, or to `share` of each bracket. Method of T. R. Chandrupatla, Adv. Eng. Softw. 28 (1997) 145:
+    inverse quadratic interpolation where it is safe, else bisection.
+    """
+    a, b = low.astype(float), high.astype(float)
+    fa, fb = function(a), function(b)
+    c, fc = a, fa
+    t = np.full(a.shape, 0.5)
+    slack = share * np.abs(b - a)
+    answer, open_ = np.where(np.abs(fa) < np.abs(fb), a, b), np.ones(a.shape, bool)
+    for _ in range(_ROUNDS):
+        x = a + t * (b - a)
+        fx = function(x)
+        same = np.sign(fx) == np.sign(fa)
+        c, fc = np.where(same, a, b), np.where(same, fa, fb)
+        b, fb = np.where(same, b, a), np.where(same, fb, fa)
+        a, fa = x, fx
+        nearer = np.abs(fa) < np.abs(fb)
+        answer = np.where(open_, np.where(nearer, a, b), answer)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            limit = (2.0 * _ULP * np.abs(answer) + slack + 1e-300) / np.abs(b - a)
+            open_ = open_ & ~(limit > 0.5) & (np.where(nearer, fa, fb) != 0.0)
+            if not open_.any():
+                break
+            xi, phi = (a - b) / (c - b), (fa - fb) / (fc - fb)
+            smooth = (phi * phi < xi) & ((1.0 - phi) ** 2 < 1.0 - xi)
+            inverse = fa / (fb - fa) * fc / (fb - fc) + (c - a) / (b - a) * fa / (fc - fa) * fb / (fc - fb)
+        t = np.where(smooth & np.isfinite(inverse), inverse, 0.5)
+        limit = np.where(np.isfinite(limit), np.minimum(limit, 0.5), 0.5)
+        t = np.clip(t, limit, 1.0 - limit)
+    return answer
 
 
 def polish(

@@ -194,7 +194,9 @@ def test_floating_nodes_are_named() -> None:
 
 
 def test_sources_that_contradict_each_other_are_named() -> None:
-    network = Network((VoltageSource("V", "a", "0", 1.0), VoltageSource("W", "a", "0", 2.0), Resistor("R", "a", "0", 1.0)))
+    network = Network(
+        (VoltageSource("V", "a", "0", 1.0), VoltageSource("W", "a", "0", 2.0), Resistor("R", "a", "0", 1.0))
+    )
     with pytest.raises(CircuitError, match="contradict") as caught:
         pole_residue(network, "V", "a")
     assert set(caught.value.elements) == {"V", "W"}

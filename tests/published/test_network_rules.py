@@ -27,15 +27,11 @@ R, C = 1e4, 22e-9
 
 
 def low_pass() -> Network:
-    return Network(
-        (VoltageSource("V", "in", "0", 1.0), Resistor("R1", "in", "out", R), Capacitor("C1", "out", "0", C))
-    )
+    return Network((VoltageSource("V", "in", "0", 1.0), Resistor("R1", "in", "out", R), Capacitor("C1", "out", "0", C)))
 
 
 def high_pass() -> Network:
-    return Network(
-        (VoltageSource("V", "in", "0", 1.0), Capacitor("C1", "in", "out", C), Resistor("R1", "out", "0", R))
-    )
+    return Network((VoltageSource("V", "in", "0", 1.0), Capacitor("C1", "in", "out", C), Resistor("R1", "out", "0", R)))
 
 
 def test_rc_step_after_one_and_five_time_constants() -> None:
