@@ -5,6 +5,7 @@ from __future__ import annotations
 import queue
 import tempfile
 import threading
+import time
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -31,7 +32,7 @@ if TYPE_CHECKING:
     from reactance.daemon.history import History
     from reactance.daemon.outcome import Outcome
 
-_PATIENCE = 60.0  # seconds for one save, on the slowest machine
+_PATIENCE = 600.0  # seconds for one save, on the slowest and busiest machine
 
 
 @click.command()
@@ -107,7 +108,7 @@ def _play(place: Path, history: History, ended: threading.Event, url: str) -> No
             if ended.is_set():
                 return
             _write(place, save)
-            _print(number, save, _awaited(outcomes))
+            _print(number, save, _awaited(outcomes, thread))
         if url:
             click.echo(f"\ndashboard at {url} (edit the board in {clean(str(place))} and see; Ctrl-C ends it)")
             while not ended.wait(0.2):
@@ -115,7 +116,7 @@ def _play(place: Path, history: History, ended: threading.Event, url: str) -> No
                     click.echo(clean(save_line(outcomes.get())))
     finally:
         watcher.stop()
-        thread.join(_PATIENCE)
+        thread.join(30.0)
 
 
 def _write(place: Path, save: Save) -> None:
@@ -134,11 +135,14 @@ def _replace(path: Path, data: bytes) -> None:
     beside.replace(path)
 
 
-def _awaited(outcomes: queue.SimpleQueue[Outcome]) -> Outcome:
-    try:
-        return outcomes.get(timeout=_PATIENCE)
-    except queue.Empty:
-        raise Refusal("the save was not noticed (is the folder on a file system that announces changes?)") from None
+def _awaited(outcomes: queue.SimpleQueue[Outcome], watcher: threading.Thread) -> Outcome:
+    end = time.monotonic() + _PATIENCE
+    while watcher.is_alive() and time.monotonic() < end:
+        try:
+            return outcomes.get(timeout=1.0)
+        except queue.Empty:
+            continue
+    raise Refusal("the save was not noticed (is the folder on a file system that announces changes?)")
 
 
 def _print(number: int, save: Save, outcome: Outcome) -> None:
