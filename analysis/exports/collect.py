@@ -35,6 +35,7 @@ class Collector:
         self.parts: dict[str, PartDraft] = {}
         self._nets: dict[str, tuple[Place, dict[tuple[str, str], None]]] = {}
         self._pin_count = 0
+        self._attribute_count = 0
         self._problems: list[Problem] = []
         self._passed_over = 0
 
@@ -95,7 +96,13 @@ class Collector:
             self.limits.check("pins", self._pin_count, place)
 
     def attribute(self, draft: PartDraft, name: str, text: str, place: Place) -> None:
-        """An attribute of a part. The first of equal names counts; what is too long is cut, and noted."""
+        """An attribute of a part. The first of equal names counts; what is too long is cut, and noted.
+
+        Raises InputError where there are more than the limit `forms`.
+        """
+        self._attribute_count += 1
+        if self._attribute_count > self.limits.forms:
+            self.limits.check("forms", self._attribute_count, place)
         if len(name) > self.limits.name or len(text) > self.limits.text:
             message = f"{draft.refdes}: attribute {name[:40]} has {len(text):,} characters, cut to "
             message += f"{self.limits.text:,} (limit `text`), its name to {self.limits.name:,} (limit `name`)"

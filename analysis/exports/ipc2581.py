@@ -46,6 +46,7 @@ class _Build:
             self._add_component(component, step)
         for net in step.nets:
             self._add_net(net)
+            net.pins.clear()  # a million of them need room
         if not step.nets:
             message = "no LogicalNet: the pins of this board are on no net"
             self._collector.problem("error", Place(self._file.file), message)
@@ -90,8 +91,7 @@ class _Build:
         draft.side = side_of(text(element, "layerRef"), self._file.sides)
         for name, value in component.attributes:
             self._collector.attribute(draft, name, value, place)
-        for pin in step.packages.get(text(element, "packageRef"), ()):
-            number, name = text(pin, "number"), text(pin, "name")
+        for number, name in step.packages.get(text(element, "packageRef"), ()):
             if number:
                 self._collector.pin(refdes, Pin(number, name), place)
                 if name and name != number:
@@ -103,14 +103,14 @@ class _Build:
         if connected is not None:
             self._collector.net(connected, self._file.place(net.element))
         for pin in net.pins:
-            refdes, number = text(pin, "componentRef"), text(pin, "pin")
+            refdes, number, place = pin.refdes, pin.number, Place(self._file.file, pin.line, pin.column)
             if refdes and number:
                 if refdes in self._numbers and number not in self._collector.parts[refdes].pins:
                     number = self._numbers[refdes].get(number, number)  # some writers refer to a pin by its name
-                self._collector.pin(refdes, Pin(number, net=connected), self._file.place(pin))
+                self._collector.pin(refdes, Pin(number, net=connected), place)
             else:
                 message = f"a PinRef of net {name[:40]} without {'pin' if refdes else 'componentRef'} is left out"
-                self._collector.problem("error", self._file.place(pin), message)
+                self._collector.problem("error", place, message)
 
     def _add_item(self, item: BomItem) -> None:
         if not item.refdes:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from typing import NamedTuple
 
 from reactance.analysis.design import Place
 from reactance.analysis.exports.ipc2581_items import LENGTHS, BomItem, characteristic, item_attributes, text
@@ -21,12 +22,21 @@ class Component:
     attributes: list[tuple[str, str]] = field(default_factory=list)
 
 
+class PinRef(NamedTuple):
+    """A pin of a net and where it is named."""
+
+    refdes: str
+    number: str
+    line: int
+    column: int
+
+
 @dataclass(slots=True)
 class LogicalNet:
-    """One net: its element, and those of its pins."""
+    """One net: its element, and its pins in short: a large board has a million."""
 
     element: Element
-    pins: list[Element] = field(default_factory=list)
+    pins: list[PinRef] = field(default_factory=list)
 
 
 @dataclass(slots=True)
@@ -35,7 +45,7 @@ class Step:
 
     name: str
     components: list[Component] = field(default_factory=list)
-    packages: dict[str, list[Element]] = field(default_factory=dict)
+    packages: dict[str, list[tuple[str, str]]] = field(default_factory=dict)
     nets: list[LogicalNet] = field(default_factory=list)
 
 
@@ -60,8 +70,10 @@ class Gathered:
         self.unit = 1e-3
         self._limits = limits
         self._kept = 0
+        self._pins = 0
+        self._words: dict[str, str] = {}
         self._path: list[str] = []
-        self._package: list[Element] | None = None
+        self._package: list[tuple[str, str]] | None = None
         self._sourced = ""
 
     def start(self, element: Element) -> None:
@@ -70,6 +82,10 @@ class Gathered:
         self._path.append(element.name)
         handler = _HANDLERS.get(element.name)
         if handler is not None:
+            if element.name not in _UNCOUNTED:
+                self._kept += 1
+                if self._kept > self._limits.forms:
+                    self._limits.check("forms", self._kept, self.place(element))
             handler(self, element, above)
 
     def end(self, name: str) -> None:
@@ -82,11 +98,10 @@ class Gathered:
         """Where an element begins."""
         return Place(self.file, element.line, element.column)
 
-    def _count(self, element: Element) -> None:
-        self._kept += 1
-        # Each pin is one entry of a package or of a net, and each part one of the step and of the bill.
-        if self._kept > self._limits.forms + 2 * self._limits.pins:
-            self._limits.check("forms", self._kept, self.place(element))
+    def _word(self, element: Element, attribute: str) -> str:
+        """An attribute's text; equal ones are the same object, since pins repeat their words."""
+        found = text(element, attribute)
+        return self._words.setdefault(found, found)
 
     def _unit(self, element: Element, _: str) -> None:
         self.unit = LENGTHS.get(text(element, "units").upper(), 1e-3)
@@ -103,12 +118,10 @@ class Gathered:
 
     def _package_pin(self, element: Element, _: str) -> None:
         if self._package is not None:
-            self._count(element)
-            self._package.append(element)
+            self._package.append((self._word(element, "number"), self._word(element, "name")))
 
     def _component(self, element: Element, _: str) -> None:
         if self.steps:
-            self._count(element)
             self.steps[-1].components.append(Component(element))
 
     def _location(self, element: Element, above: str) -> None:
@@ -127,13 +140,15 @@ class Gathered:
 
     def _net(self, element: Element, _: str) -> None:
         if self.steps:
-            self._count(element)
             self.steps[-1].nets.append(LogicalNet(element))
 
     def _pin_ref(self, element: Element, above: str) -> None:
         if above == "LogicalNet" and self.steps and self.steps[-1].nets:
-            self._count(element)
-            self.steps[-1].nets[-1].pins.append(element)
+            self._pins += 1
+            if self._pins > self._limits.pins:
+                self._limits.check("pins", self._pins, self.place(element))
+            refdes, number = self._word(element, "componentRef"), self._word(element, "pin")
+            self.steps[-1].nets[-1].pins.append(PinRef(refdes, number, element.line, element.column))
 
     def _bom(self, element: Element, _: str) -> None:
         self.boms.append(Bom(text(element, "name")))
@@ -150,12 +165,10 @@ class Gathered:
 
     def _bom_refdes(self, element: Element, above: str) -> None:
         if above == "BomItem" and self.boms and self.boms[-1].items:
-            self._count(element)
             self.boms[-1].items[-1].refdes.append(element)
 
     def _characteristic(self, element: Element, above: str) -> None:
         if above == "Characteristics" and self._path[-3:-2] == ["BomItem"] and self.boms and self.boms[-1].items:
-            self._count(element)
             self.boms[-1].items[-1].attributes.extend(characteristic(element))
 
     def _sourced_item(self, element: Element, _: str) -> None:
@@ -165,6 +178,9 @@ class Gathered:
         if self._sourced and text(element, "name"):
             self.numbers.setdefault(self._sourced, text(element, "name"))
 
+
+# Elements of which nothing new is kept, or that have a limit of their own.
+_UNCOUNTED = frozenset(("CadHeader", "Location", "PinRef"))
 
 _HANDLERS = {
     "CadHeader": Gathered._unit,

@@ -11,7 +11,7 @@ from reactance.analysis.exports.ipc356_names import REFDES_WIDTH, full_names
 from reactance.analysis.exports.limits import DEFAULT_LIMITS, Limits
 from reactance.analysis.exports.sniff import stem
 from reactance.analysis.exports.tables_parts import add_parts, note_missing_table, read_parts
-from reactance.analysis.exports.text import decoded, visible
+from reactance.analysis.exports.text import lines_of, visible
 
 FORMAT = "IPC-D-356"
 
@@ -31,11 +31,8 @@ def read_ipc356(data: bytes, file: str, parts: bytes | None = None, *, limits: L
     columns it has becomes the one in the parts table that it can only stand for.
     Raises InputError for what is no IPC-D-356, does not end with record 999, or is beyond `limits`.
     """
-    limits.check("bytes", len(data), Place(file))
-    lines = _lines(decoded(data, file, _EXPECTED), file)
     collector = Collector(file, limits)
-    reader = _Records(lines, collector)
-    reader.read()
+    _Records(_records(lines_of(data, file, limits, _EXPECTED), file), collector).read()
     if parts is None:
         note_missing_table(file, collector)
     else:
@@ -45,11 +42,10 @@ def read_ipc356(data: bytes, file: str, parts: bytes | None = None, *, limits: L
     return collector.design(stem(file[max(file.rfind("/"), file.rfind("\\")) + 1 :]), FORMAT)
 
 
-def _lines(text: str, file: str) -> list[tuple[int, str]]:
+def _records(lines: list[str], file: str) -> list[tuple[int, str]]:
     """The records up to the one that ends the file, with their line from 1."""
-    every = text.replace("\r\n", "\n").replace("\r", "\n").split("\n")
     records: list[tuple[int, str]] = []
-    for number, line in enumerate(every, 1):
+    for number, line in enumerate(lines, 1):
         if line.startswith("999"):
             return records
         record = line[:_LONGEST].strip("\x1a\f").rstrip().expandtabs()

@@ -29,6 +29,7 @@ class Limits:
     name: int = 1_000
     text: int = 100_000
     columns: int = 1_000
+    lines: int = 2_000_000
     problems: int = 200
 
     def check(self, what: str, count: int, place: Place) -> None:
@@ -57,4 +58,5 @@ _WORDS = {
     "name": "characters in one name",
     "text": "characters in one text",
     "columns": "cells in one row",
+    "lines": "lines",
 }

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from reactance.analysis.design import InputError, Place
 from reactance.analysis.exports.limits import Limits
 from reactance.analysis.exports.tables_columns import Header
-from reactance.analysis.exports.text import decoded, visible
+from reactance.analysis.exports.text import lines_of, visible
 
 
 @dataclass(frozen=True, slots=True)
@@ -35,9 +35,8 @@ class Table:
     ) -> None:
         self.file = file
         self._limits = limits
-        limits.check("bytes", len(data), Place(file))
-        text = decoded(data, file, expected).replace("\r\n", "\n").replace("\r", "\n").rstrip("\x1a")
-        self._lines = text.split("\n")
+        self._lines = lines_of(data, file, limits, expected)
+        self._lines[-1] = self._lines[-1].rstrip("\x1a")  # the end of a text, once
         header = find(self._lines)
         if header is None:
             raise _no_header(self._lines, file, expected)

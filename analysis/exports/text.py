@@ -6,6 +6,7 @@ import codecs
 import re
 
 from reactance.analysis.design import InputError, Place
+from reactance.analysis.exports.limits import Limits
 
 # Longest marks first: the mark of UTF-32 little-endian begins with that of UTF-16.
 _MARKS: tuple[tuple[bytes, str], ...] = (
@@ -19,6 +20,19 @@ _MARKS: tuple[tuple[bytes, str], ...] = (
 # Control characters, and marks that are unseen or turn the reading direction (Unicode categories Cc and Cf).
 _UNSAFE = re.compile(r"[\x00-\x1f\x7f-\x9f\u061c\u200e\u200f\u2028-\u202e\u2066-\u2069\ufeff\ud800-\udfff]")
 _BLANKS = re.compile(r"[\t\r\n\v\f]+")
+
+
+def lines_of(data: bytes, file: str, limits: Limits, expected: str) -> list[str]:
+    """The lines of a text export without their ends, whichever of the three usual ends they have.
+
+    Raises InputError for what is no text (see `decoded`) or beyond the limits.
+    """
+    limits.check("bytes", len(data), Place(file))
+    text = decoded(data, file, expected)
+    if "\r" in text:
+        text = text.replace("\r\n", "\n").replace("\r", "\n")
+    limits.check("lines", text.count("\n"), Place(file))
+    return text.split("\n")
 
 
 def visible(text: str) -> str:

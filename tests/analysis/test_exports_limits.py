@@ -88,6 +88,33 @@ def test_columns_at_the_limit_and_one_beyond() -> None:
     refused(wide(1001), Limits(), "columns")
 
 
+def test_lines_at_the_limit_and_one_beyond() -> None:
+    table = ExportFiles(b"refdes,pin,net\nC1,1,GND\n\n", "board.pins.csv")
+    records = ExportFiles(b"C  x\n317GND              C1    -1\n999\n", "board.ipc")
+    for files in (table, records):
+        assert len(read_export(files, limits=Limits(lines=3)).parts) == 1
+        refused(files, Limits(lines=2), "lines")
+
+
+def test_what_multiplies_is_counted() -> None:
+    refdes = "".join(f'<RefDes name="C{number}"/>' for number in range(1, 2001))
+    told = "".join(f'<Textual textualCharacteristicName="A{n}" textualCharacteristicValue="x"/>' for n in range(2000))
+    item = f"<BomItem>{refdes}<Characteristics>{told}</Characteristics></BomItem>"
+    net = '<Step name="s"><LogicalNet name="A"><PinRef componentRef="C1" pin="1"/></LogicalNet></Step>'
+    refused(ExportFiles(f"<IPC-2581><Bom>{item}</Bom>{net}</IPC-2581>".encode(), "board.xml"), Limits(), "forms")
+    pins = "".join(f'<Pin number="{number}"/>' for number in range(2000))
+    parts = "".join(f'<Component refDes="C{number}" packageRef="P"/>' for number in range(2000))
+    board = f'<IPC-2581><Step name="s"><Package name="P">{pins}</Package>{parts}</Step></IPC-2581>'
+    refused(ExportFiles(board.encode(), "board.xml"), Limits(), "pins")
+
+
+def test_entries_at_the_limit_and_one_beyond() -> None:
+    steps = '<Step name="s"><LogicalNet name="A"><PinRef componentRef="C1" pin="1"/></LogicalNet></Step>'
+    files = ExportFiles(f"<IPC-2581>{'<Layer/>' * 8}{steps}</IPC-2581>".encode(), "board.xml")
+    assert len(read_export(files, limits=Limits(forms=10)).parts) == 1
+    refused(files, Limits(forms=9), "forms")
+
+
 def test_problems_beyond_the_limit_are_counted() -> None:
     rows = b"refdes,pin,net\nC1,1,GND\n" + b",1,GND\n" * 10
     design = read_export(
