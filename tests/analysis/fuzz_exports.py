@@ -1,4 +1,4 @@
-"""Reads broken exports by the hundred thousand: `python tests/analysis/fuzz_exports.py 200000 [processes]`.
+"""Reads broken exports by the hundred thousand: `python tests/analysis/fuzz_exports.py COUNT [PROCESSES [FIRST]]`.
 
 Prints how many were read and refused, the slowest, the peak memory of a process, and every input that did anything
 but become a Design or one InputError. Exit status 1 where there was one. The same number is always the same input.
@@ -45,8 +45,9 @@ def main() -> int:
     """Run as many inputs as the first argument says."""
     count = int(sys.argv[1]) if len(sys.argv) > 1 else 5000
     processes = int(sys.argv[2]) if len(sys.argv) > 2 else os.cpu_count() or 1
+    first = int(sys.argv[3]) if len(sys.argv) > 3 else 0
     begun, whole, memory = time.perf_counter(), Tally(), 0
-    firsts = range(0, count, CHUNK)
+    firsts = range(first, first + count, CHUNK)
     with multiprocessing.Pool(processes) as pool:
         for done, (tally, used) in enumerate(pool.imap_unordered(chunk, firsts), 1):
             whole.add(tally)
