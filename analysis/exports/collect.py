@@ -113,7 +113,7 @@ class Collector:
             message = f"{draft.refdes}: {name} is {first[:40]} and {text[:40]}; the first counts"
             self.problem("caution", place, message)
 
-    def rename(self, names: Mapping[str, str]) -> None:
+    def relabel(self, names: Mapping[str, str]) -> None:
         """Parts under other refdes; none of the new ones may be taken."""
         for old, new in names.items():
             self.parts[old].refdes = new

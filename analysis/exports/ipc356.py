@@ -147,7 +147,7 @@ def _lengthen_refdes(collector: Collector, full: list[str]) -> None:
     names = full_names(collector.parts, full, REFDES_WIDTH)
     if not names:
         return
-    collector.rename(names)
+    collector.relabel(names)
     pairs = [f"{short} is {name}" for short, name in names.items()]
     message = f"refdes cut to six columns, read as the parts table has them: {listed(pairs)}"
     collector.problem("note", Place(collector.file), message)
