@@ -55,6 +55,9 @@ COUNTING = frozenset(
 _HEADER_WITHIN = 20
 """How many lines of titles may come before the header."""
 
+_LONGEST_WORD = 60
+"""How long a header word may be where nothing else tells a table from prose that speaks of parts, pins and nets."""
+
 
 class Header(NamedTuple):
     """Where the header is and what it says: line from 1, delimiter, its cells, and the columns found in them."""
@@ -103,8 +106,13 @@ def find_parts_header(lines: Sequence[str]) -> Header | None:
 
 
 def has_pins_header(head: str) -> bool:
-    """Whether a text begins like a pins table."""
-    return find_pins_header(head.replace("\r", "\n").split("\n")) is not None
+    """Whether a text begins like a pins table: a header, and cells below it if there is anything below it."""
+    lines = head.replace("\r", "\n").split("\n")
+    header = find_pins_header(lines)
+    if header is None or max(map(len, header.cells)) > _LONGEST_WORD:
+        return False
+    below = next((line for line in lines[header.line :] if line.strip()), None)
+    return below is None or header.delimiter in below
 
 
 def _candidates(lines: Sequence[str]) -> Iterator[tuple[int, str, tuple[str, ...]]]:

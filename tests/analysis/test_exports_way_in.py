@@ -40,6 +40,8 @@ XML = b'<?xml version="1.0"?>\n<IPC-2581 revision="C" xmlns="http://webstds.ipc.
         (b"refdes,pin,net\nC1,1,GND\n", "tables"),
         (b"Net;Pin;Part\n", "tables"),
         (b"refdes,value\nC1,100n\n", None),
+        (b"Notes\n\nPart, pin, net\nare the words of this trade.\n", None),
+        (b"Net, pin, part and " + b"much more that is said here of nothing in particular " * 3 + b"\n", None),
         (b"", None),
         (b"   \n", None),
         (b"\x00\x01\x02\x03", None),
