@@ -24,7 +24,7 @@ from reactance.daemon.cli_watch import (
     not_serving,
 )
 from reactance.daemon.print_check import print_comparison
-from reactance.daemon.sentences import save_line
+from reactance.daemon.sentences import save_line, save_summary
 from reactance.daemon.text import clean
 
 if TYPE_CHECKING:
@@ -150,6 +150,6 @@ def _print(number: int, save: Save, outcome: Outcome) -> None:
     if outcome.kind in ("broken", "not stored"):
         announce(save_line(outcome))
         return
-    click.echo(f"  {clean(save_line(outcome))}")
+    click.echo(f"  {clean(save_summary(outcome))}")
     if outcome.comparison is not None and outcome.older is not None and outcome.report is not None:
         print_comparison(outcome.comparison, outcome.older, outcome.report)

@@ -8,6 +8,7 @@ from reactance.analysis.report import Comparison, Edit, Movement, Report, Verdic
 from reactance.daemon.outcome import Outcome
 from reactance.daemon.text import plural
 
+_MOST_SAID = 3
 _ORDER: dict[Verdict, int] = {"worse": 0, "better": 1, "moved": 2}
 
 
@@ -50,25 +51,24 @@ def save_line(outcome: Outcome) -> str:
         return f"{outcome.name}: not stored: {outcome.message}"
     if outcome.kind == "broken":
         return f"{outcome.name}: cannot be used: {outcome.message}"
-    number = f" #{outcome.revision.id}" if outcome.revision else ""
-    return f"{outcome.name}{number}: {_effect(outcome)}"
-
-
-def _effect(outcome: Outcome) -> str:
     if outcome.comparison is None or outcome.older is None or outcome.report is None:
-        return _first(outcome.report)
+        return save_summary(outcome)
+    said = [words for _, words in movement_sentences(outcome.comparison, outcome.older, outcome.report)]
+    if not said:
+        return save_summary(outcome)
+    more = f"; and {len(said) - _MOST_SAID} more" if len(said) > _MOST_SAID else ""
+    return f"{save_summary(outcome)}: {'; '.join(said[:_MOST_SAID])}{more}"
+
+
+def save_summary(outcome: Outcome) -> str:
+    """How much a stored save changed and moved, in numbers."""
+    number = f" #{outcome.revision.id}" if outcome.revision else ""
     comparison = outcome.comparison
-    edits = plural(len(comparison.edits), "edit")
-    if not comparison.movements:
-        return f"{edits}, nothing moved"
+    if comparison is None:
+        return f"{outcome.name}{number}: {_first(outcome.report)}"
     counts = Counter(movement.verdict for movement in comparison.movements)
     verdicts = ", ".join(f"{counts[verdict]} {verdict}" for verdict in _ORDER if counts[verdict])
-    said = [words for _, words in movement_sentences(comparison, outcome.older, outcome.report)]
-    more = f"; and {len(said) - _MOST_SAID} more" if len(said) > _MOST_SAID else ""
-    return f"{edits}, {verdicts}: {'; '.join(said[:_MOST_SAID])}{more}"
-
-
-_MOST_SAID = 3
+    return f"{outcome.name}{number}: {plural(len(comparison.edits), 'edit')}, {verdicts or 'nothing moved'}"
 
 
 def _first(report: Report | None) -> str:
