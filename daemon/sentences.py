@@ -41,16 +41,15 @@ def edit_sentence(edit: Edit) -> str:
 
 def save_line(outcome: Outcome) -> str:
     """One line about a save: which revision it made and what moved."""
-    if outcome.kind == "gone":
-        return f"{outcome.name}: gone; its history is kept"
-    if outcome.kind == "back":
-        return f"{outcome.name}: back, unchanged"
-    if outcome.kind == "same":
-        return f"{outcome.name}: unchanged"
-    if outcome.kind == "not stored":
-        return f"{outcome.name}: not stored: {outcome.message}"
-    if outcome.kind == "broken":
-        return f"{outcome.name}: cannot be used: {outcome.message}"
+    remarks = {
+        "gone": "gone; its history is kept",
+        "back": "back, unchanged",
+        "same": "unchanged",
+        "not stored": f"not stored: {outcome.message}",
+        "broken": f"cannot be used: {outcome.message}",
+    }
+    if outcome.kind != "stored":
+        return f"{outcome.name}: {remarks[outcome.kind]}"
     if outcome.comparison is None or outcome.older is None or outcome.report is None:
         return save_summary(outcome)
     said = [words for _, words in movement_sentences(outcome.comparison, outcome.older, outcome.report)]
