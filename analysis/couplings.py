@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import numpy as np
+
 from reactance.analysis.board import Board
 from reactance.analysis.brief_tables import CouplingTable
 from reactance.analysis.circuit.modal import PoleResidue
 from reactance.analysis.circuit.network import FloatArray
 from reactance.analysis.circuit.response import Response
 from reactance.analysis.circuit.transient import step
-from reactance.analysis.gains import corner_low, decibels, greatest_gain, size_at, top_of_band
+from reactance.analysis.gains import corner_low, decibels, greatest_gain, remembered, size_at, top_of_band
 from reactance.analysis.measuring import Measuring
 from reactance.analysis.paths import SignalNetworks
 from reactance.analysis.quantity import format_quantity
@@ -66,11 +67,13 @@ def solve_coupling(networks: SignalNetworks) -> Results:
 
 
 def _in_frequency(seen: Measuring, top: float, lowest: float | None) -> Results:
+    reference_of = remembered(lambda response: greatest_gain(response, top))
+
     def gain(response: Response) -> FloatArray:
-        return decibels(greatest_gain(response, top).gain)
+        return decibels(reference_of(response).gain)
 
     def corner(response: Response) -> FloatArray:
-        return corner_low(response, greatest_gain(response, top))
+        return corner_low(response, reference_of(response))
 
     reference = greatest_gain(seen.response(seen.nominal), top)
     if not reference.gain[0] > 0:
@@ -84,7 +87,7 @@ def _in_frequency(seen: Measuring, top: float, lowest: float | None) -> Results:
     if lowest is not None:
 
         def loss(response: Response) -> FloatArray:
-            return decibels(greatest_gain(response, top).gain / size_at(response, lowest))
+            return decibels(reference_of(response).gain / size_at(response, lowest))
 
         found["loss"] = seen.swept(loss, "dB", f"at {format_quantity(lowest, 'Hz')}", "nothing passes there")
     return found

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 
 import numpy as np
+
 from reactance.analysis.brief_tables import FilterTable
-from reactance.analysis.circuit.network import FloatArray
+from reactance.analysis.circuit.network import Capacitor, FloatArray, Network
 from reactance.analysis.circuit.noise import integrated_noise
 from reactance.analysis.circuit.response import Response
 from reactance.analysis.circuit.transient import TimeResponse
@@ -18,6 +20,7 @@ from reactance.analysis.gains import (
     decibels,
     filter_reference,
     greatest_gain,
+    remembered,
     size_at,
     top_of_band,
 )
@@ -106,19 +109,24 @@ def solve_filter(networks: SignalNetworks) -> Results:
 
 
 def _noise(seen: Measuring, celsius: float) -> Value:
+    """Capacitors without R_s and L_s: beyond their self-resonance these let through noise that no band would hold."""
+    network = Network(
+        tuple(replace(e, esr=0.0, esl=0.0) if isinstance(e, Capacitor) else e for e in seen.block.network.elements),
+        seen.block.network.ground,
+    )
+
     def noise(values: FloatArray) -> FloatArray:
         found = integrated_noise(
-            seen.block.network, seen.probe, celsius + ZERO_CELSIUS, parameters=seen.parameters, values=values
+            network, seen.probe, celsius + ZERO_CELSIUS, parameters=seen.parameters, values=values
         )
         return np.asarray(found)
 
     missing = "the noise has no upper frequency limit: no capacitance bounds it"
-    return band(noise, seen.parameters, "V rms", f"at {celsius:g} °C", missing)
+    return band(noise, seen.parameters, "V rms", f"at {celsius:g} °C, R_s and L_s of capacitors left out", missing)
 
 
 def _in_frequency(seen: Measuring, top: float, nominal: Reference, table: FilterTable | None) -> Results:
-    def reference(response: Response) -> Reference:
-        return dc_reference(response) if nominal.at_dc else greatest_gain(response, top)
+    reference = remembered(lambda response: dc_reference(response) if nominal.at_dc else greatest_gain(response, top))
 
     def gain(response: Response) -> FloatArray:
         return decibels(reference(response).gain)

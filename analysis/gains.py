@@ -7,9 +7,11 @@ sets of values at once: gains and frequencies are arrays (V,).
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
+
 from reactance.analysis.circuit.network import FloatArray
 from reactance.analysis.circuit.response import Response
 
@@ -54,6 +56,18 @@ def greatest_gain(response: Response, top: float) -> Reference:
     """The greatest |H| from 0.1 mHz to `top` (Hz)."""
     at, gain = response.greatest(LOWEST, top)
     return Reference(np.asarray(gain), np.asarray(at))
+
+
+def remembered(find: Callable[[Response], Reference]) -> Callable[[Response], Reference]:
+    """`find`, asked once for each response: several measures stand on the same reference."""
+    known: dict[int, tuple[Response, Reference]] = {}
+
+    def reference(response: Response) -> Reference:
+        if id(response) not in known:
+            known[id(response)] = (response, find(response))
+        return known[id(response)][1]
+
+    return reference
 
 
 def dc_reference(response: Response) -> Reference:

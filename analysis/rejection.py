@@ -49,5 +49,7 @@ def solve_rejections(networks: SignalNetworks) -> Results:
             return -decibels(greatest)
 
         seen = Measuring(networks.ac, source, networks.probe)
+        if not np.isfinite(rejection(seen.response(seen.nominal))[0]):
+            continue
         found[f"rejection@{net}"] = seen.swept(rejection, "dB", note, f"nothing of {net} reaches it")
     return found
