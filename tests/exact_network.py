@@ -77,7 +77,7 @@ class Stamps:
         self._branch(a, inner, r, x, 0.0)
         return inner
 
-    def _add(self, e: Element, excite: str) -> None:
+    def _add(self, e: Element, excite: str) -> None:  # noqa: PLR0912
         if isinstance(e, Resistor):
             self._put(self.g, self.node(e.a), self.node(e.b), 1 / mp.mpf(e.resistance))
         elif isinstance(e, Capacitor):

@@ -1,4 +1,4 @@
-"""Random networks, repeatable by seed: RC, RLC, with amplifiers; up to 12 nodes; values over the trade's whole range."""
+"""Random networks, repeatable by seed: RC, RLC, with amplifiers; up to 12 nodes; values over their whole range."""
 
 from __future__ import annotations
 

@@ -12,6 +12,7 @@ from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
+
 from reactance.analysis.circuit.network import (
     Amplifier,
     Bead,

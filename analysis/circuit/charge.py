@@ -6,6 +6,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
+
 from reactance.analysis.circuit.network import FloatArray
 
 Law = Callable[[FloatArray], FloatArray]

@@ -14,6 +14,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+
 from reactance.analysis.circuit.network import CircuitError, ComplexArray, FloatArray, Network, Parameter
 from reactance.analysis.circuit.roots import Question, find_roots
 from reactance.analysis.circuit.system import NEAR_INFINITY, NEAR_ZERO, Drive, System

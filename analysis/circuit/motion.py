@@ -11,6 +11,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+
 from reactance.analysis.circuit.network import ComplexArray, FloatArray
 from reactance.analysis.circuit.phi import phi
 

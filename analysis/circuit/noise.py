@@ -13,6 +13,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike
+
 from reactance.analysis.circuit.modal import residues_at
 from reactance.analysis.circuit.network import (
     Bead,
@@ -27,7 +28,7 @@ from reactance.analysis.circuit.network import (
     VoltageSource,
 )
 from reactance.analysis.circuit.roots import Question, find_roots
-from reactance.analysis.circuit.system import NEAR_INFINITY, NEAR_ZERO, Drive, System
+from reactance.analysis.circuit.system import NEAR_INFINITY, NEAR_ZERO, System
 
 BOLTZMANN = 1.380649e-23  # J/K, exact in the SI
 
@@ -59,10 +60,7 @@ def integrated_noise(
     grid = None if values is None else np.asarray(values, float)
     system = System(network, over_time=True, parameters=parameters, values=grid)
     nodes = system.probe(probe)
-    silent = Drive(
-        np.zeros(len(system.branches)), np.zeros(len(system.parts.ideal)), np.zeros(len(system.parts.currents))
-    )
-    poles = find_roots(Question(system, silent, nodes))[0]
+    poles = find_roots(Question(system, system.silence, nodes))[0]
     square = np.zeros(system.count)
     for origin in _origins(system, parameters, grid):
         gathered = _gathered(system, nodes, origin, poles)

@@ -11,6 +11,7 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
+
 from reactance.analysis.circuit.network import (
     Amplifier,
     Bead,

@@ -9,6 +9,7 @@ from __future__ import annotations
 import math
 
 import numpy as np
+
 from reactance.analysis.circuit.network import ComplexArray
 
 _SERIES = [1.0 / math.factorial(k + 2) for k in range(17)]

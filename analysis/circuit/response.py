@@ -17,7 +17,7 @@ from reactance.analysis.circuit.roots import Question, find_roots
 from reactance.analysis.circuit.search import bracketed_root, polish
 from reactance.analysis.circuit.system import NEAR_INFINITY, NEAR_ZERO, System
 
-_PER_DECADE = 24
+_PER_DECADE = 12
 _BLIND_PER_DECADE = 150  # where measured data without a fit hides the poles
 _CANDIDATES = 4
 

@@ -13,6 +13,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+
 from reactance.analysis.circuit.forest import Forest
 from reactance.analysis.circuit.network import CircuitError, ComplexArray, FloatArray
 from reactance.analysis.circuit.system import Drive, Equations, System

@@ -19,8 +19,8 @@ Measure = Callable[[FloatArray], FloatArray]
 
 EXHAUSTIVE = 8  # up to this many parameters every vertex is looked at
 _ROWS = 512  # most rows handed to a measure at once
-_INTERIOR = 24
-_STARTS = 6
+_INTERIOR = 12
+_STARTS = 3
 FINER = 1e-5  # an improvement below this share of the figure is no improvement: bands are promised to 0.1 %
 _FINEST_STEP = 2e-3  # of a range; the figure is flat about an inside extreme, so its error is far smaller
 _IDLE = 3e-3  # beyond `EXHAUSTIVE` parameters: those that together move less than this share are not flipped
@@ -67,11 +67,13 @@ def spread(measure: Measure, parameters: Sequence[Parameter], *, finer: float = 
     known = _Known(measure, box, np.concatenate([corners, inner]), values[1 + 2 * count :])
     three = np.stack([values[1 : 1 + count], np.full(count, nominal), values[1 + count : 1 + 2 * count]])
     even = _rises_evenly(three, corners, values[1 + 2 * count : 1 + 2 * count + len(corners)], finer)
+    if count > EXHAUSTIVE:
+        known.at(np.concatenate([_with_flips((sign * slopes > 0).astype(float), _moving(shares)) for sign in (-1, 1)]))
     ends = []
     for sign in (-1.0, 1.0):
         climber = _Climber(known, sign, finer)
         if count > EXHAUSTIVE:
-            climber.climb((sign * slopes > 0).astype(float), shares)
+            climber.climb((sign * slopes > 0).astype(float), _moving(shares), once=even)
         if not even:
             climber.look_inside()
         ends.append((sign * climber.best, box.at(climber.where[None, :])[0]))
@@ -180,7 +182,8 @@ class _Known:
 
     def at(self, shares: FloatArray) -> FloatArray:
         """The measure at shares (V, P); a point seen before is not measured again."""
-        fresh = [i for i, row in enumerate(shares) if row.tobytes() not in self.seen]
+        missing = {row.tobytes(): i for i, row in enumerate(shares) if row.tobytes() not in self.seen}
+        fresh = list(missing.values())
         if fresh:
             for i, value in zip(fresh, _run(self.measure, self.box.at(shares[fresh])), strict=True):
                 self.seen[shares[i].tobytes()] = float(value)
@@ -210,32 +213,26 @@ class _Climber:
             self.where, self.best = shares[best].copy(), float(values[best])
         return values
 
-    def climb(self, first: FloatArray, swings: FloatArray) -> None:
-        """Climb over vertices from `first`, where the slopes point, and from the best corner met so far."""
-        order = np.argsort(swings)
-        idle = order[np.cumsum(swings[order]) <= _IDLE]
-        moving = np.setdiff1d(np.arange(len(first)), idle)
-        for start in (first, self._top(corners=True)[0]):
-            self._climb(start, moving)
+    def climb(self, first: FloatArray, moving: NDArray[np.intp], *, once: bool) -> None:
+        """Climb over vertices from `first`, where the slopes point; unless `once`, also from the best corner known."""
+        self._climb(first, moving)
+        if not once:
+            self._climb(self._top(corners=True)[0], moving)
 
     def _climb(self, start: FloatArray, moving: NDArray[np.intp]) -> None:
         """Flip what gains: of all flips that gain alone, as many at once as gain most together."""
         here = start.copy()
-        value = float(self._try(here[None, :])[0])
         for _ in range(len(moving) + 10):
-            flips = np.repeat(here[None, :], len(moving), axis=0)
-            flips[np.arange(len(moving)), moving] = 1.0 - here[moving]
-            values = self._try(flips)
-            good = np.flatnonzero(values > value + self.finer * abs(value))
+            values = self._try(_with_flips(here, moving))
+            value = float(values[0])
+            good = np.flatnonzero(values[1:] > value + self.finer * abs(value))
             if not len(good):
                 return
-            order = moving[good[np.argsort(-values[good])]]
+            order = moving[good[np.argsort(-values[1:][good])]]
             joint = np.repeat(here[None, :], len(order), axis=0)
             for k in range(len(order)):
                 joint[k:, order[k]] = 1.0 - here[order[k]]
-            together = self._try(joint)
-            top = int(together.argmax())
-            here, value = joint[top].copy(), float(together[top])
+            here = joint[int(self._try(joint).argmax())].copy()
 
     def look_inside(self) -> None:
         """If a point inside, or inside an edge from the best corner, beats the corners, follow it inside."""
@@ -265,6 +262,19 @@ class _Climber:
                 memory = moved / max(float(np.abs(moved).max()), 1e-300)
             else:
                 step *= 0.4
+
+
+def _moving(swings: FloatArray) -> NDArray[np.intp]:
+    """The parameters that are worth flipping: all but those that together move next to nothing."""
+    order = np.argsort(swings)
+    return np.setdiff1d(np.arange(len(swings)), order[np.cumsum(swings[order]) <= _IDLE])
+
+
+def _with_flips(corner: FloatArray, moving: NDArray[np.intp]) -> FloatArray:
+    """A corner and its neighbours along `moving`: shares (1 + M, P)."""
+    rows = np.repeat(corner[None, :], 1 + len(moving), axis=0)
+    rows[1 + np.arange(len(moving)), moving] = 1.0 - corner[moving]
+    return rows
 
 
 def _is_corner(shares: FloatArray) -> bool:

@@ -15,6 +15,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike
+
 from reactance.analysis.circuit.charge import ChargeLaw
 from reactance.analysis.circuit.modal import expand
 from reactance.analysis.circuit.network import (

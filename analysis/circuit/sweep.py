@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 import numpy as np
 from numpy.typing import ArrayLike
+
 from reactance.analysis.circuit.network import ComplexArray, Network, Parameter
 from reactance.analysis.circuit.response import Response, evaluate
 from reactance.analysis.circuit.system import System

@@ -17,6 +17,7 @@ from typing import TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
+
 from reactance.analysis.circuit.branches import Parts, coefficients, take_apart
 from reactance.analysis.circuit.forest import Edge, Forest, span
 from reactance.analysis.circuit.network import (
@@ -87,6 +88,8 @@ class System:
         self._coefficients(parameters, values)
         self._forests: dict[tuple[int, ...], Forest] = {}
         self._decades: dict[int, tuple[int, ...]] = {}
+        self._drives: dict[str | None, Drive] = {}
+        self._layouts: dict[tuple[tuple[int, ...], int, tuple[str, str]], _Layout] = {}
 
     def only(self, rows: NDArray[np.intp]) -> System:
         """The same network with some of its sets of values."""
@@ -153,8 +156,18 @@ class System:
             *(Edge(at[branch.a], at[branch.b]) for branch in self.branches),
         )
 
+    @cached_property
+    def silence(self) -> Drive:
+        """Every source at zero."""
+        return Drive(np.zeros(len(self.branches)), np.zeros(len(self.parts.ideal)), np.zeros(len(self.parts.currents)))
+
     def drive(self, source: str | None = None) -> Drive:
         """Unit excitation of one source, or (None) every source at its DC level."""
+        if source not in self._drives:
+            self._drives[source] = self._make_drive(source)
+        return self._drives[source]
+
+    def _make_drive(self, source: str | None) -> Drive:
 
         def level(element: object) -> float:
             if source is not None:
@@ -244,11 +257,18 @@ class System:
 
     # the equations
 
+    def _layout(self, forest: Forest, drive: Drive, probe: tuple[str, str]) -> _Layout:
+        """The layout for these three, made once; it keeps its drive alive, so that the drive's identity is its own."""
+        key = (forest.chosen, id(drive), probe)
+        if key not in self._layouts:
+            self._layouts[key] = _Layout(self, forest, drive, probe)
+        return self._layouts[key]
+
     def equations(
         self, forest: Forest, s: ComplexArray, drive: Drive, probe: tuple[str, str], *, slopes: bool = False
     ) -> Equations:
         """The equations at s (V or 1, F), driven by `drive`, observed between the nodes of `probe`."""
-        layout = _Layout(self, forest, drive, probe)
+        layout = self._layout(forest, drive, probe)
         y = [self.admittances(s, True), self.admittances(s, False)]
         matrix, rhs = layout.assemble(y, s)
         if not slopes:
@@ -284,11 +304,8 @@ class System:
         Rohrer, IEEE Trans. Circuit Theory 16 (1969) 318).
         """
         answer = np.empty((self.count, s.shape[1], len(self.branches)), complex)
-        silent = Drive(
-            np.zeros(len(self.branches)), np.zeros(len(self.parts.ideal)), np.zeros(len(self.parts.currents))
-        )
         for forest, where in self.groups(s):
-            layout = _Layout(self, forest, silent, probe)
+            layout = self._layout(forest, self.silence, probe)
             answer[:, where] = self.nudged(s[:, where], lambda x, one=layout: self._adjoint(one, x))  # type: ignore[misc]
         return answer
 
@@ -298,8 +315,7 @@ class System:
         dual = np.linalg.solve(np.swapaxes(matrix, -1, -2), seek[..., None])[..., 0]
         for row in layout.gain_unknowns:
             dual[..., row] = 0.0
-        paths = np.concatenate(layout.paths)[:, layout.unknown]
-        return np.asarray(-dual @ paths.T)
+        return np.asarray(-dual @ layout.paths.T)
 
     def nudged(self, s: ComplexArray, work: Callable[[ComplexArray], T]) -> T:
         """`work` at s; where that is exactly on a pole, right beside it. Raises `CircuitError` if singular anywhere."""
@@ -337,11 +353,16 @@ class _Layout:
         self.gain_unknowns = [int(np.flatnonzero(self.unknown == k)[0]) for k, _ in self.gain_rows]
         self.gain_parts = system.parts.gains
         edges = system.edges[ideal + gains :]
-        split = system.fixed
         paths = np.array([forest.path(e.a, e.b) for e in edges]).reshape(len(edges), self.count)
-        self.paths = (paths[:split], paths[split:])
-        self.emf = (drive.branches[:split], drive.branches[split:])
+        self.paths = paths[:, self.unknown]
+        size = len(self.unknown)
+        outer = (self.paths[:, :, None] * self.paths[:, None, :]).reshape(len(edges), size * size)
+        right = (drive.branches - paths[:, self.fixed] @ self.levels)[:, None] * self.paths
+        split = system.fixed
+        self.outer = (outer[:split], outer[split:])
+        self.right = (right[:split], right[split:])
         self.forest = forest
+        self.drive = drive
         self.at = at
         self.injected = np.zeros(self.count)
         for amplitude, current in zip(drive.currents, system.parts.currents, strict=True):
@@ -361,27 +382,29 @@ class _Layout:
 
     def assemble(self, y: Sequence[ComplexArray], s: ComplexArray | None) -> tuple[ComplexArray, ComplexArray]:
         """Matrix (V, F, N, N) and right side (V, F, N); with s None, their derivatives for y = dy/ds."""
-        whole = _product(y[0], self.paths[0]) + _product(y[1], self.paths[1])
-        rhs = y[0] @ (self.emf[0][:, None] * self.paths[0]) + y[1] @ (self.emf[1][:, None] * self.paths[1])
+        whole, rhs = _product(y[0], self.outer[0]), _product(y[0], self.right[0])
+        if y[1].shape[-1]:
+            whole, rhs = whole + _product(y[1], self.outer[1]), rhs + _product(y[1], self.right[1])
+        size = len(self.unknown)
+        whole = whole.reshape(*whole.shape[:-1], size, size)
         if s is not None:
-            rhs = rhs + self.injected
-        for row, number in self.gain_rows:
-            gain = self.gain_parts[number]
-            whole[..., row, :] = 0.0 if s is None else -self.sensed[number]
+            rhs = rhs + self.injected[self.unknown]
+        for row, (_, number) in zip(self.gain_unknowns, self.gain_rows, strict=True):
+            gain, sensed = self.gain_parts[number], self.sensed[number]
+            whole[..., row, :] = 0.0 if s is None else -sensed[self.unknown]
             whole[..., row, row] += gain.slope if s is None else gain.inverse_gain + s * gain.slope
-            rhs[..., row] = 0.0
-        if len(self.fixed):
-            rhs = rhs - whole[..., self.fixed] @ self.levels
-            pick = self.unknown
-            return whole[..., pick[:, None], pick], rhs[..., pick]
+            rhs[..., row] = 0.0 if s is None else sensed[self.fixed] @ self.levels
         return whole, rhs
 
 
-def _product(y: ComplexArray, paths: FloatArray) -> ComplexArray:
-    """Σ y·pᵀp over branches: (V, F, m) and (m, T) to (V, F, T, T)."""
-    m, n = paths.shape
-    outer = (paths[:, :, None] * paths[:, None, :]).reshape(m, n * n)
-    return np.asarray((y.real @ outer + 1j * (y.imag @ outer)).reshape(*y.shape[:-1], n, n))
+def _product(y: ComplexArray, outer: FloatArray) -> ComplexArray:
+    """Σ y·pᵀp over branches: (V, F, m) and (m, T·T) to (V, F, T·T), as one real product."""
+    count = y.shape[0] * y.shape[1]
+    flat = y.reshape(count, -1)
+    split = np.concatenate([flat.real, flat.imag]) @ outer
+    whole = np.empty((count, outer.shape[1]), complex)
+    whole.real, whole.imag = split[:count], split[count:]
+    return whole.reshape(*y.shape[:-1], -1)
 
 
 def _stack(pairs: Sequence[tuple[ComplexArray, ComplexArray]], count: int) -> tuple[ComplexArray, ComplexArray]:

@@ -11,6 +11,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike
+
 from reactance.analysis.circuit import features
 from reactance.analysis.circuit.modal import PoleResidue, expand, first
 from reactance.analysis.circuit.motion import Pieces, settle_pieces
