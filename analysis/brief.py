@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from typing import Any
 
 import msgspec
+
 from reactance.analysis.brief_tables import Amount, BriefTables, VoltOrShare
 from reactance.analysis.design import InputError, Place
 from reactance.analysis.quantity import QuantityError, parse_quantity
@@ -160,9 +161,7 @@ def _line_of(text: str, table: str, index: int | None, key: str) -> int | None:
                 count += 1
                 inside = index is None or count == index
                 at = number if inside and at is None else at
-        elif inside and wanted and wanted.search(line):
-            return number
-        elif index is None and wanted is None and bare.match(line):
+        elif (inside and wanted and wanted.search(line)) or (index is None and wanted is None and bare.match(line)):
             return number
     return at
 

@@ -9,6 +9,7 @@ from __future__ import annotations
 from typing import Any, ClassVar
 
 import msgspec
+
 from reactance.analysis.quantity import Unit
 from reactance.analysis.report import DutyKind
 

@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
+
 from reactance.analysis.brief_tables import CouplingTable
 from reactance.analysis.circuit.modal import first
 from reactance.analysis.circuit.transient import ramp, sine

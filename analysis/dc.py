@@ -8,6 +8,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+
 from reactance.analysis.bias import Bias
 from reactance.analysis.blocks import Block, make_block
 from reactance.analysis.board import Board, Section

@@ -6,6 +6,7 @@ from collections.abc import Callable, Iterable, Iterator, Mapping
 from dataclasses import dataclass
 
 import msgspec
+
 from reactance.analysis.brief_edits import brief_edits
 from reactance.analysis.design import Design, Part
 from reactance.analysis.net_kinds import class_by_name

@@ -9,6 +9,7 @@ from __future__ import annotations
 from typing import Literal
 
 import msgspec
+
 from reactance.analysis.design import Severity
 
 Status = Literal["pass", "marginal", "fail", "watched", "unknown"]

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 
 import msgspec
+
 from reactance.analysis.values import Value
 
 Results = dict[str, Value]
