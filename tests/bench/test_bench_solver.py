@@ -7,11 +7,12 @@ a loop of scipy solves per frequency.
 from __future__ import annotations
 
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from typing import Any
 
 import numpy as np
 import pytest
+from threadpoolctl import threadpool_limits
 
 from reactance.analysis.circuit.modal import pole_residue
 from reactance.analysis.circuit.network import (
@@ -39,6 +40,13 @@ def ladder(sections: int) -> Network:
         ]
     elements.append(Resistor("RL", f"n{sections}", "0", 50.0))
     return Network(tuple(elements))
+
+
+@pytest.fixture(autouse=True)
+def one_thread() -> Iterator[None]:
+    """As the program itself runs: small batched solves are faster with one BLAS thread."""
+    with threadpool_limits(limits=1, user_api="blas"):
+        yield
 
 
 def best_of(work: Callable[[], Any], rounds: int = 7) -> float:
