@@ -38,9 +38,9 @@ class Samples:
     sparse: bool = False
 
 
-def sample(pieces: Pieces, k: int, extra: FloatArray | None = None) -> Samples:
+def sample(pieces: Pieces, k: int, extra: FloatArray | None = None, *, rough: bool = False) -> Samples:
     """Piece k at the times where it can move; `extra` (V, m) adds times of its own."""
-    tau = _times(pieces, k)
+    tau = _times(pieces, k, rough)
     if extra is not None:
         tau = np.concatenate([tau, np.clip(extra, 0.0, pieces.length(k)[:, None])], axis=1)
     return _sampled(pieces, k, np.sort(tau, axis=1))
@@ -57,7 +57,7 @@ def _sampled(pieces: Pieces, k: int, tau: FloatArray) -> Samples:
     return Samples(k, tau, np.concatenate(value), np.concatenate(moved))
 
 
-def _times(pieces: Pieces, k: int) -> FloatArray:
+def _times(pieces: Pieces, k: int, rough: bool) -> FloatArray:
     """Times (V, T) in piece k: even in the logarithm over all time scales, and the first swings of each mode."""
     length = pieces.length(k)
     size, damping = np.abs(pieces.poles), np.abs(pieces.poles.real)
@@ -69,14 +69,15 @@ def _times(pieces: Pieces, k: int) -> FloatArray:
     fast = np.minimum(np.where(np.isfinite(fast), fast, end), end)
     floor = np.where(end > 0, np.maximum(fast, 1e-300), 1.0)
     decades = float(np.log10(np.maximum(end, floor) / floor).max(initial=0.0))
-    shares = np.linspace(0.0, 1.0, int(np.ceil(decades * _PER_DECADE)) + 2)
+    shares = np.linspace(0.0, 1.0, int(np.ceil(decades * (_PER_DECADE // 2 if rough else _PER_DECADE))) + 2)
     found = [
         np.zeros((pieces.count, 1)),
         end[:, None] * np.linspace(0.0, 1.0, 17),
         floor[:, None] * (np.maximum(end, floor) / floor)[:, None] ** shares,
     ]
     for i in np.flatnonzero((np.abs(pieces.poles.imag) > 0.1 * damping).any(axis=0)):
-        found.append(_swings(pieces.poles[:, i], _FIRST))
+        swings = _swings(pieces.poles[:, i], _FIRST)
+        found.append(swings[:, 1 : _FIRST // 2 : 2] if rough else swings)
     return np.asarray(np.clip(np.concatenate(found, axis=1), 0.0, end[:, None]))
 
 
@@ -179,7 +180,7 @@ def greatest(pieces: Pieces, about: FloatArray, sign: float, *, rough: bool = Fa
     best = _score(final, about, sign)
     best = np.where(np.isnan(best), -np.inf, best)
     for k in range(pieces.start.shape[1]):
-        found: Samples | None = sample(pieces, k)
+        found: Samples | None = sample(pieces, k, rough=rough)
         while found is not None:
             times, scores = _best_of(pieces, found, about, sign, rough)
             better = scores > best * (1.0 + 1e-13 * np.sign(best))

@@ -16,15 +16,22 @@ _SERIES = [1.0 / math.factorial(k + 2) for k in range(17)]
 
 
 def phi(x: ComplexArray, second: bool) -> tuple[ComplexArray, ComplexArray, ComplexArray | None]:
-    """eˣ, φ1(x) and, where `second`, φ2(x) at complex x of any shape with real part not far above 0."""
-    minus_one: ComplexArray = np.expm1(x)
-    safe = np.where(x == 0, 1.0, x)
-    one: ComplexArray = np.where(x == 0, 1.0, minus_one / safe)
-    if not second:
-        return minus_one + 1.0, one, None
+    """eˣ, φ1(x) and, where `second`, φ2(x) at complex x of any shape with real part not far above 0.
+
+    By their series where |x| < 1, where differences would lose digits; elsewhere from eˣ.
+    """
+    power: ComplexArray = np.exp(x)
     small = np.abs(x) < 1.0
-    near = np.where(small, x, 0.0)
-    series = np.zeros_like(x)
-    for c in reversed(_SERIES):
-        series = series * near + c
-    return minus_one + 1.0, one, np.where(small, series, (one - 1.0) / safe)
+    near = x[small]
+    safe = np.where(small, 1.0, x)
+    one = (power - 1.0) / safe
+    two = (one - 1.0) / safe if second else None
+    if near.size:
+        series = np.full_like(near, _SERIES[-1])
+        for c in reversed(_SERIES[:-1]):
+            series = series * near + c
+        one[small] = 1.0 + near * series
+        power[small] = 1.0 + near * one[small]
+        if two is not None:
+            two[small] = series
+    return power, one, two
