@@ -10,6 +10,7 @@ from pathlib import Path
 import click
 import msgspec
 import pytest
+
 from reactance.analysis.brief_tables import BriefTables, Table
 from reactance.analysis.measures import MEASURES, Measure
 from reactance.analysis.parts.attributes import ALIASES

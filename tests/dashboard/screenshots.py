@@ -22,6 +22,10 @@ from html import unescape
 from pathlib import Path
 from urllib.parse import quote, urljoin
 
+from selenium import webdriver
+from selenium.webdriver.chrome.service import Service
+from selenium.webdriver.support.wait import WebDriverWait
+
 from reactance.analysis.exports import ExportFiles
 from reactance.analysis.files import BoardFiles
 from reactance.daemon.demo import FILE, STEM, saves
@@ -29,9 +33,6 @@ from reactance.daemon.engine import default_engine
 from reactance.daemon.history import History, Saved
 from reactance.daemon.intake import Intake
 from reactance.dashboard.serve import serve
-from selenium import webdriver
-from selenium.webdriver.chrome.service import Service
-from selenium.webdriver.support.wait import WebDriverWait
 
 ROOT = Path(__file__).resolve().parents[2]
 EPOCH, PAUSE = 1_930_468_360.0, 17 * 60.0  # when the story begins, and how long it goes on between two saves, s
