@@ -8,6 +8,8 @@ from typing import TYPE_CHECKING
 
 import msgspec
 from flask import Blueprint, Flask, Response, current_app, render_template, request, send_file
+from werkzeug.exceptions import HTTPException
+
 from reactance.analysis.design import InputError
 from reactance.analysis.quantity import QuantityError, parse_quantity
 from reactance.analysis.report import Curve
@@ -22,7 +24,6 @@ from reactance.dashboard.guard import protect
 from reactance.dashboard.rows import numbered
 from reactance.dashboard.shown import Shown, shown
 from reactance.dashboard.strip import svg
-from werkzeug.exceptions import HTTPException
 
 if TYPE_CHECKING:
     from reactance.analysis.study import Study

@@ -168,7 +168,7 @@ def _side(name: str, check: Check) -> Side:
         name=name,
         figure=words.value_words(check.nominal, unit, measure),
         band=words.band_words(check.low, check.high, unit, measure),
-        limit=words.limit_words(check.limit, unit, measure).removeprefix("of "),
+        limit=words.limit_words(check.limit, unit, measure).removeprefix("of ").removeprefix("within "),
         margin=margin.replace("-", "−"),
         status=words.STATUS[check.status],
         tone=TONES.get(check.status, "watched"),

@@ -54,6 +54,8 @@ def _summary(found: Shown, strips: Strips, scope: str, checks: Sequence[Check]) 
     pressing = [check for check in checks if check.status in _PRESSING or check.id in moved]
     if len(checks) <= MOST_IN_GROUP and scope not in _QUIET_KINDS:
         return _group(found, strips, checks, checks)
+    if len(found.report.checks) > SMALL_BOARD and scope in _QUIET_KINDS:
+        return _group(found, strips, checks, by_weight(pressing, found.comparison)[:MOST_IN_GROUP])
     if len(found.report.checks) > SMALL_BOARD:
         return _group(found, strips, checks, by_weight(checks, found.comparison)[:MOST_IN_GROUP])
     chosen = {check.id for check in pressing}

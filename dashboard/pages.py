@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from reactance.analysis.movement_words import edit_words
 from reactance.analysis.report import Comparison, ProblemEntry
 from reactance.daemon.history import BoardRow, History, RevisionRow
 from reactance.dashboard import words
@@ -176,7 +175,7 @@ def head(found: Shown) -> Head:
 def change(found: Shown, strips: Strips | None, most: int = MOST_MOVEMENTS) -> Change:
     """The edits of the shown revision and a sentence for each check that they moved."""
     comparison = found.comparison or Comparison((), ())
-    edits = tuple(edit_words(edit, found.older, found.report) for edit in comparison.edits)
+    edits = words.edit_lines(comparison.edits, found.older, found.report)
     moves = by_verdict(comparison.movements)
     pinned = found.baseline is not None and found.baseline.id == found.board.pinned
     return Change(

@@ -8,6 +8,7 @@ from pathlib import Path
 from typing import Literal
 
 import msgspec
+
 from reactance.analysis.report import Curve, LimitLine
 
 

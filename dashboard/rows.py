@@ -8,7 +8,7 @@ from datetime import datetime
 from typing import Literal
 from urllib.parse import urlencode
 
-from reactance.analysis.movement_words import edit_words, name_words
+from reactance.analysis.movement_words import name_words
 from reactance.analysis.report import Check, Comparison, Movement, Report, Status, Verdict
 from reactance.daemon.history import RevisionRow, StripCell
 from reactance.dashboard import words
@@ -107,7 +107,7 @@ def changes(archive: Archive, revisions: Sequence[RevisionRow]) -> Mapping[int, 
         if revision.error is not None:
             continue
         stored = archive.stored(revision.id)
-        text = words.listed((edit_words(edit, None, None) for edit in stored.edits), _EDITS_NAMED)
+        text = words.listed(words.edit_lines(stored.edits, None, None), _EDITS_NAMED)
         elsewhere = stored.baseline not in (None, before) and stored.baseline in numbers
         told[revision.id] = f"since save {numbers[stored.baseline or 0]}: {text}" if elsewhere and text else text
         before = revision.id

@@ -6,6 +6,7 @@ import threading
 from typing import Any
 
 from cheroot import wsgi
+
 from reactance.daemon.history import History
 from reactance.dashboard.app import create_app
 from reactance.dashboard.archive import Analyse

@@ -12,6 +12,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 from markupsafe import Markup, escape
+
 from reactance.analysis.report import Limit, Status
 from reactance.daemon.history import StripCell
 

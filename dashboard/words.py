@@ -5,8 +5,9 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping
 from datetime import datetime
 
+from reactance.analysis.movement_words import edit_words
 from reactance.analysis.quantity import format_quantity
-from reactance.analysis.report import Check, Limit, Status, Verdict
+from reactance.analysis.report import Check, Edit, Limit, Report, Status, Verdict
 
 PERCENT = frozenset({"stress", "tilt", "overshoot"})  # shares that people read as percentages
 
@@ -70,6 +71,17 @@ def band_words(low: float | None, high: float | None, unit: str, measure: str) -
         return ""
     ends = value_words(low, unit, measure), value_words(high, unit, measure)
     return "" if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}"
+
+
+def edit_lines(edits: Iterable[Edit], older: Report | None, newer: Report | None) -> tuple[str, ...]:
+    """Edits in words, a line each; the same edit of several parts is one line that names them all."""
+    parts: dict[str, list[str]] = {}
+    for edit in edits:
+        line = edit_words(edit, older, newer)
+        same = edit.part is not None and line.startswith(f"{edit.part} ")
+        key = line.removeprefix(edit.part or "") if same else f" {line}"
+        parts.setdefault(key, []).append(edit.part or "" if same else "")
+    return tuple(f"{', '.join(names)}{rest}".strip() for rest, names in parts.items())
 
 
 def listed(texts: Iterable[str], most: int) -> str:

@@ -60,7 +60,7 @@
     const fresh = document.importNode(part, true);
     fresh.classList.add("fresh");
     main().replaceWith(fresh);
-    for (const one of fresh.querySelectorAll("details")) one.open = opened.has(one.dataset.key);
+    for (const one of fresh.querySelectorAll("details")) one.open = one.open || opened.has(one.dataset.key);
     document.title = fresh.dataset.title || document.title;
     window.scrollTo(...scroll);
     restore(mark);

@@ -10,6 +10,7 @@ from html.parser import HTMLParser
 import pytest
 from flask.testing import FlaskClient
 from pagekit import DROOP, FILE, LOSS, SWAP, Keeper, figures, make_check
+
 from reactance.analysis.report import Limit, ProblemEntry
 from reactance.daemon.history import History
 from reactance.dashboard.rows import check_href

@@ -5,7 +5,8 @@ from __future__ import annotations
 import pytest
 from msgspec.structs import replace
 from pagekit import make_check
-from reactance.analysis.report import Limit
+
+from reactance.analysis.report import Edit, Limit
 from reactance.dashboard import words
 
 
@@ -47,3 +48,10 @@ def test_long_lists_end_in_a_number() -> None:
 def test_a_check_of_which_only_the_id_is_left_has_a_name() -> None:
     assert words.id_words("coupling:A>B:startup_peak") == "A → B startup peak"
     assert words.id_words("odd") == "odd"
+
+
+def test_the_same_edit_of_several_parts_is_one_line() -> None:
+    edits = [Edit(part, "attribute changed", part, "VALUE", "22k", "47k") for part in ("R1", "R2")]
+    edits += [Edit("C9", "part removed", "C9", None, "1u", None), Edit("b", "brief changed", None, "x", "1", "2")]
+    lines = words.edit_lines(edits, None, None)
+    assert lines == ("R1, R2 22k → 47k", "C9 removed (1u)", "brief, x, 1 → 2")
