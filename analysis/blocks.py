@@ -36,13 +36,14 @@ class Block:
     parts: tuple[str, ...]
     nets: tuple[str, ...]
     notes: tuple[str, ...] = ()
+    samples: int = 0
 
     def key(self, *asked: object) -> str:
         """SHA-256 of the network, its uncertain attributes and the question."""
         digest = hashlib.sha256(MODEL_VERSION.encode())
         for element in self.network.elements:
             digest.update(_identity(element).encode())
-        digest.update(repr((self.parameters, self.notes, asked)).encode())
+        digest.update(repr((self.parameters, self.notes, self.samples, asked)).encode())
         return digest.hexdigest()
 
 
@@ -99,7 +100,8 @@ def make_block(
     quiet = {amplifier.name for amplifier in silent_amplifiers}
     elements += [amplifier_element(board, a) for a in region.amplifiers if a.name not in quiet]
     parameters = certain(parameter for item in items for parameter in item.parameters)
-    return Block(Network(tuple(elements), GROUND), parameters, region.parts, region.nets + region.edges, tuple(notes))
+    network = Network(tuple(elements), GROUND)
+    return Block(network, parameters, region.parts, region.nets + region.edges, tuple(notes), board.samples)
 
 
 def probe_node(board: Board, net: str) -> str:

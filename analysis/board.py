@@ -69,7 +69,10 @@ class PlacedAmplifier:
 
 @dataclass(frozen=True)
 class Board:
-    """A design with its brief applied. Nets are named by their representative where 0 Ω parts join several."""
+    """A design with its brief applied. Nets are named by their representative where 0 Ω parts join several.
+
+    `samples` is how many Monte Carlo samples each measure takes beside its band.
+    """
 
     design: Design
     brief: Brief
@@ -82,6 +85,7 @@ class Board:
     amplifiers: tuple[PlacedAmplifier, ...]
     rail_tables: Mapping[str, RailTable]
     problems: tuple[Problem, ...]
+    samples: int = 0
 
     @cached_property
     def sections_by_net(self) -> Mapping[str, tuple[Section, ...]]:
@@ -125,14 +129,40 @@ def _index(pairs: Iterable[tuple[str, _T]]) -> Mapping[str, tuple[_T, ...]]:
     return MappingProxyType({net: tuple(items) for net, items in table.items()})
 
 
-def resolve_board(design: Design, brief: Brief, knowledge_files: Mapping[str, bytes]) -> Board:
-    """Apply `brief` and the team's part knowledge to `design`.
+class ModelMemory:
+    """Part models by part: a part that is the same object under the same knowledge has the same model.
+
+    Readers keep the objects of unchanged parts from save to save. Not thread-safe.
+    """
+
+    def __init__(self) -> None:
+        self._under: tuple[Knowledge, Conditions] | None = None
+        self._known: dict[int, tuple[Part, PartModel]] = {}
+
+    def resolve(self, parts: Iterable[Part], knowledge: Knowledge, conditions: Conditions) -> dict[str, PartModel]:
+        """The model of each part by reference designator; forgets parts that are no longer there."""
+        before = self._known if self._under == (knowledge, conditions) else {}
+        self._under, self._known = (knowledge, conditions), {}
+        models: dict[str, PartModel] = {}
+        for part in parts:
+            found = before.get(id(part))
+            if found is None or found[0] is not part:
+                found = (part, resolve_part(part, knowledge, conditions))
+            self._known[id(part)] = found
+            models[part.refdes] = found[1]
+        return models
+
+
+def resolve_board(
+    design: Design, brief: Brief, knowledge_files: Mapping[str, bytes], memory: ModelMemory | None = None
+) -> Board:
+    """Apply `brief` and the team's part knowledge to `design`. `memory` spares parts that are as they were.
 
     Raises `InputError` where the brief names what the design lacks, or where part knowledge cannot be read.
     """
     conditions = _conditions(brief)
     knowledge = gather_knowledge(brief, knowledge_files)
-    models = {part.refdes: resolve_part(part, knowledge, conditions) for part in design.parts}
+    models = (memory or ModelMemory()).resolve(design.parts, knowledge, conditions)
     joined = _join_nets(design, models)
     rails = {rail.net: rail.voltage for rail in brief.tables.rail}
     _known_nets(design, brief)

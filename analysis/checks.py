@@ -4,8 +4,9 @@ from __future__ import annotations
 
 import math
 
+from reactance.analysis.circuit.spread import wilson_interval
 from reactance.analysis.measures import find_measure
-from reactance.analysis.report import Check, Limit, Status
+from reactance.analysis.report import Check, Limit, Status, Yield
 from reactance.analysis.values import Value
 
 ROUNDING = 1e-9  # a figure this near its limit, relatively, keeps it: solving is not exact to the last bit
@@ -25,7 +26,17 @@ def judge(check_id: str, scope: str, name: str, value: Value, limit: Limit | Non
         margin=margin(value, limit),
         status=status(value, limit),
         explain=explain(value),
+        yield_=sample_yield(value, limit),
     )
+
+
+def sample_yield(value: Value, limit: Limit | None) -> Yield | None:
+    """The share of samples within the limit with Wilson's 95 % interval; None without samples or limit."""
+    if limit is None or not value.samples:
+        return None
+    good = sum(math.isfinite(sample) and _distance(sample, limit) >= 0 for sample in value.samples)
+    count = len(value.samples)
+    return Yield(good / count, *wilson_interval(good, count), count)
 
 
 def status(value: Value, limit: Limit | None) -> Status:

@@ -13,9 +13,10 @@ from reactance.analysis.bias import Bias
 from reactance.analysis.blocks import Block, make_block
 from reactance.analysis.board import Board, Section
 from reactance.analysis.circuit.network import Capacitor, CurrentSource, Network, Parameter, VoltageSource
-from reactance.analysis.circuit.spread import spread
+from reactance.analysis.circuit.spread import monte_carlo, spread
 from reactance.analysis.circuit.sweep import frequency_response
 from reactance.analysis.elements import node, rail_source
+from reactance.analysis.measuring import SEED
 from reactance.analysis.parts.models import CapacitorModel
 from reactance.analysis.region import grow, is_stiff
 from reactance.analysis.reuse import Solved
@@ -29,6 +30,7 @@ class DcBand:
     nominal: float
     low: float
     high: float
+    samples: tuple[float, ...] = ()
 
 
 def conducts(section: Section) -> bool:
@@ -54,7 +56,7 @@ def dc_band(board: Board, bias: Bias, solved: Solved, a: str, b: str, *, upper: 
     found = solved.get(block.key("dc", probe), lambda: {"dc": _solve(block, probe)})["dc"]
     if found.nominal is None or found.low is None or found.high is None:
         raise AssertionError("the operating point is defined but its band is not")
-    return DcBand(found.nominal, found.low, found.high)
+    return DcBand(found.nominal, found.low, found.high, found.samples)
 
 
 def _solve(block: Block, probe: tuple[str, str]) -> Value:
@@ -70,9 +72,10 @@ def _solve(block: Block, probe: tuple[str, str]) -> Value:
 
     if not parameters:
         nominal = float(volts(np.empty((1, 0)))[0])
-        return Value(nominal, nominal, nominal, "V")
+        return Value(nominal, nominal, nominal, "V", samples=(nominal,) * block.samples)
     found = spread(volts, parameters)
-    return Value(found.nominal, found.low, found.high, "V")
+    samples = tuple(monte_carlo(volts, parameters, block.samples, SEED).tolist()) if block.samples else ()
+    return Value(found.nominal, found.low, found.high, "V", samples=samples)
 
 
 def dc_volts(

@@ -122,7 +122,8 @@ def _noise(seen: Measuring, celsius: float) -> Value:
         return np.asarray(found)
 
     missing = "the noise has no upper frequency limit: no capacitance bounds it"
-    return band(noise, seen.parameters, "V rms", f"at {celsius:g} °C, R_s and L_s of capacitors left out", missing)
+    note = f"at {celsius:g} °C, R_s and L_s of capacitors left out"
+    return band(noise, seen.parameters, "V rms", note, missing, samples=seen.block.samples)
 
 
 def _in_frequency(seen: Measuring, top: float, nominal: Reference, table: FilterTable | None) -> Results:

@@ -10,18 +10,20 @@ from collections.abc import Callable, Sequence
 from functools import cached_property
 
 import numpy as np
+from msgspec.structs import replace
 
 from reactance.analysis.blocks import Block
 from reactance.analysis.circuit.modal import PoleResidue, pole_residue
 from reactance.analysis.circuit.network import ComplexArray, FloatArray, Parameter
 from reactance.analysis.circuit.response import Response
-from reactance.analysis.circuit.spread import FINER, spread
+from reactance.analysis.circuit.spread import FINER, monte_carlo, spread
 from reactance.analysis.circuit.sweep import frequency_response
 from reactance.analysis.circuit.transient import TimeResponse, step
 from reactance.analysis.values import Value, banded
 
 MOST_NAMED = 3
 LEAST_SHARE = 0.05
+SEED = 1  # of every Monte Carlo run: the same board gives the same yield
 
 
 def band(
@@ -31,14 +33,24 @@ def band(
     note: str,
     missing: str,
     finer: float = FINER,
+    samples: int = 0,
 ) -> Value:
-    """Nominal and extremes of `measure` ((V, P) to (V,)) over `parameters`; NaN or infinity means `missing`."""
+    """Nominal and extremes of `measure` ((V, P) to (V,)) over `parameters`; NaN or infinity means `missing`.
+
+    `samples` > 0 adds as many figures of a repeatable Monte Carlo run, every parameter uniform in its range.
+    """
     if not parameters:
         nominal = float(measure(np.empty((1, 0)))[0])
-        return banded(nominal, nominal, nominal, unit, note, missing)
+        value = banded(nominal, nominal, nominal, unit, note, missing)
+        return replace(value, samples=(nominal,) * samples) if samples and value.known else value
     found = spread(measure, parameters, finer=finer)
     value = banded(found.nominal, found.low, found.high, unit, note, missing)
-    return value if not value.known else _with_shares(value, found.shares, parameters)
+    if not value.known:
+        return value
+    value = _with_shares(value, found.shares, parameters)
+    if samples:
+        value = replace(value, samples=tuple(monte_carlo(measure, parameters, samples, SEED).tolist()))
+    return value
 
 
 def _with_shares(value: Value, shares: FloatArray, parameters: Sequence[Parameter]) -> Value:
@@ -52,7 +64,7 @@ def _with_shares(value: Value, shares: FloatArray, parameters: Sequence[Paramete
         return value
     ranked = sorted(by_part.items(), key=lambda item: -item[1])[:MOST_NAMED]
     named = tuple((name, share / total) for name, share in ranked if share / total >= LEAST_SHARE)
-    return Value(value.nominal, value.low, value.high, value.unit, value.note, value.missing, named)
+    return replace(value, matters=named)
 
 
 class Measuring:
@@ -101,7 +113,7 @@ class Measuring:
 
     def swept(self, measure: Callable[[Response], FloatArray], unit: str, note: str, missing: str) -> Value:
         """The band of a measure of frequency responses."""
-        return band(lambda values: measure(self.response(values)), self.parameters, unit, note, missing)
+        return self._band(lambda values: measure(self.response(values)), unit, note, missing)
 
     def modal(
         self,
@@ -112,11 +124,21 @@ class Measuring:
         finer: float = FINER,
     ) -> Value:
         """The band of a measure of poles and residues, exact to a share `finer` of itself."""
-        return band(lambda values: measure(self.modes(values)), self.parameters, unit, note, missing, finer)
+        return self._band(lambda values: measure(self.modes(values)), unit, note, missing, finer)
 
     def stepped(self, measure: Callable[[TimeResponse], FloatArray], unit: str, note: str, missing: str) -> Value:
         """The band of a measure of step responses."""
-        return band(lambda values: measure(self.step(values)), self.parameters, unit, note, missing)
+        return self._band(lambda values: measure(self.step(values)), unit, note, missing)
+
+    def _band(
+        self,
+        measure: Callable[[FloatArray], FloatArray],
+        unit: str,
+        note: str,
+        missing: str,
+        finer: float = FINER,
+    ) -> Value:
+        return band(measure, self.parameters, unit, note, missing, finer, self.block.samples)
 
     def frequency_grid(self, low: float, high: float, points: int) -> FloatArray:
         """Frequencies in Hz for drawing: even on a logarithmic axis, and closer about every resonance between."""

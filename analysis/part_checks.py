@@ -40,7 +40,8 @@ def _stress(board: Board, bias: Bias, solved: Solved, section: Section, model: C
     least = 0.0 if band.low <= 0.0 <= band.high else ends[0]
     rated = model.rated_voltage
     note = f"{format_quantity(abs(band.nominal), 'V')} across {format_quantity(rated, 'V')} rated"
-    value = Value(abs(band.nominal) / rated, least / rated, ends[1] / rated, "1", note)
+    samples = tuple(abs(volts) / rated for volts in band.samples)
+    value = Value(abs(band.nominal) / rated, least / rated, ends[1] / rated, "1", note, samples=samples)
     return judge(check_id, "part", "stress", value, limit)
 
 
@@ -49,11 +50,12 @@ def _polarity(board: Board, bias: Bias, solved: Solved, section: Section, model:
     band = _across(board, bias, solved, section, upper=False)
     if isinstance(band, str):
         return judge(check_id, "part", "polarity", unknown("V", band), limit)
-    value = Value(band.nominal, band.low, band.high, "V")
-    if model.positive_pin == section.pin_b:
-        value = Value(-band.nominal, -band.high, -band.low, "V")
     note = f"positive pin {model.positive_pin}"
-    return judge(check_id, "part", "polarity", Value(value.nominal, value.low, value.high, "V", note), limit)
+    value = Value(band.nominal, band.low, band.high, "V", note, samples=band.samples)
+    if model.positive_pin == section.pin_b:
+        samples = tuple(-volts for volts in band.samples)
+        value = Value(-band.nominal, -band.high, -band.low, "V", note, samples=samples)
+    return judge(check_id, "part", "polarity", value, limit)
 
 
 def _range(board: Board, section: Section, dielectric: tuple[float, float]) -> Check:
@@ -71,7 +73,7 @@ def _across(board: Board, bias: Bias, solved: Solved, section: Section, *, upper
         nets = [net for net, known in ((section.a, a), (section.b, b)) if known is None]
         return f"the DC potential of {' and '.join(nets)} is not defined by what the export and the brief say"
     if board.volts(section.a) is not None and board.volts(section.b) is not None:
-        return DcBand(a - b, a - b, a - b)
+        return DcBand(a - b, a - b, a - b, (a - b,) * board.samples)
     return dc_band(board, bias, solved, section.a, section.b, upper=upper)
 
 

@@ -97,8 +97,17 @@ class Limit(msgspec.Struct, frozen=True):
     max: float | None = None
 
 
-class Check(msgspec.Struct, frozen=True):
-    """A measure on this board: value, band, limit, margin, status."""
+class Yield(msgspec.Struct, frozen=True):
+    """The share of Monte Carlo samples within the limit, with its 95 % interval."""
+
+    share: float
+    low: float
+    high: float
+    samples: int
+
+
+class Check(msgspec.Struct, frozen=True, omit_defaults=True, rename={"yield_": "yield"}):
+    """A measure on this board: value, band, limit, margin, status; the yield where samples were asked for."""
 
     id: str
     measure: str
@@ -110,6 +119,7 @@ class Check(msgspec.Struct, frozen=True):
     margin: float | None
     status: Status
     explain: str
+    yield_: Yield | None = None
 
 
 class AssumptionEntry(msgspec.Struct, frozen=True):

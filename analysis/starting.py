@@ -130,7 +130,8 @@ def _start_band(
 
     Which set of values is extreme is found with every capacitance as at the operating point.
     """
-    value = band(linear, start.parameters, unit, note, ENDLESS)
+    samples = 0 if start.biased else start.block.samples
+    value = band(linear, start.parameters, unit, note, ENDLESS, samples=samples)
     if not start.biased or not value.known:
         return value
     ends = spread(linear, start.parameters) if start.parameters else None

@@ -7,10 +7,10 @@ next save costs only what it changed.
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 from reactance.analysis.bias import Bias, solve_bias
-from reactance.analysis.board import Board, resolve_board
+from reactance.analysis.board import Board, ModelMemory, resolve_board
 from reactance.analysis.brief import read_brief
 from reactance.analysis.design import Design
 from reactance.analysis.exports import FormMemory, read_export
@@ -37,6 +37,7 @@ class Memory:
 
     forms: FormMemory = field(default_factory=FormMemory)
     solved: Solved = field(default_factory=Solved)
+    models: ModelMemory = field(default_factory=ModelMemory)
 
     def export_blocks(self) -> bytes:
         """Blocks solved since the last call, encoded, to be kept across restarts; empty where there are none."""
@@ -83,18 +84,25 @@ class Study:
 
 
 def analyse(
-    files: BoardFiles, *, memory: Memory | None = None, understood: Callable[[], None] | None = None
+    files: BoardFiles,
+    *,
+    memory: Memory | None = None,
+    understood: Callable[[], None] | None = None,
+    samples: int = 0,
 ) -> Study:
     """Read, understand and solve one board. Raises `InputError` where the export or the brief cannot be used.
 
-    `understood` is called between understanding and solving, for callers that time the two.
+    `understood` is called between understanding and solving, for callers that time the two. `samples` > 0 adds the
+    yield of as many Monte Carlo samples to judged checks; with them nothing solved is taken from or put into `memory`.
     """
     kept = memory or Memory()
     design = read_export(files.export, memory=kept.forms)
     brief = read_brief(files.brief, files.brief_name)
-    board = resolve_board(design, brief, files.knowledge)
+    board = resolve_board(design, brief, files.knowledge, kept.models)
     if understood is not None:
         understood()
+    if samples:
+        return study(replace(board, samples=samples), files.export_sha256)
     return study(board, files.export_sha256, kept.solved)
 
 

@@ -10,7 +10,8 @@ import msgspec
 class Value(msgspec.Struct, frozen=True):
     """Nominal, low and high of one measure, or why they could not be computed.
 
-    `matters` names the parts that move the figure most, with their shares; `note` says what went into it.
+    `matters` names the parts that move the figure most, with their shares; `note` says what went into it; `samples`
+    are figures of a Monte Carlo run, where one was asked for.
     """
 
     nominal: float | None
@@ -20,6 +21,7 @@ class Value(msgspec.Struct, frozen=True):
     note: str = ""
     missing: str = ""
     matters: tuple[tuple[str, float], ...] = ()
+    samples: tuple[float, ...] = ()
 
     @property
     def known(self) -> bool:
