@@ -9,10 +9,11 @@ import pytest
 from browserkit import look, start
 from flask.testing import FlaskClient
 from pagekit import DRIFT, DROOP, HOST, LOSS, SWAP, Keeper, figures, make_study
+from selenium import webdriver
+
 from reactance.analysis.report import Edit
 from reactance.daemon.history import History
 from reactance.dashboard.app import create_app
-from selenium import webdriver
 
 
 @pytest.fixture

@@ -7,11 +7,12 @@ from collections.abc import Iterator
 import pytest
 from browserkit import look, wait
 from pagekit import DROOP, LOSS, SWAP, Keeper, figures, make_study
-from reactance.dashboard.rows import check_href
-from reactance.dashboard.serve import Server, serve
 from selenium import webdriver
 from selenium.webdriver.common.by import By
 from selenium.webdriver.common.keys import Keys
+
+from reactance.dashboard.rows import check_href
+from reactance.dashboard.serve import Server, serve
 
 
 @pytest.fixture

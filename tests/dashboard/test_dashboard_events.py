@@ -8,6 +8,7 @@ from collections.abc import Callable, Iterator
 
 import pytest
 from pagekit import Keeper, figures
+
 from reactance.daemon.history import History
 from reactance.dashboard.events import Stream, Streams, state
 from reactance.dashboard.serve import ServeError, Server, serve

@@ -9,6 +9,7 @@ from pathlib import Path
 import pytest
 from flask.testing import FlaskClient
 from pagekit import Keeper, make_check
+
 from reactance.analysis.report import Edit, Limit, ProblemEntry
 from reactance.daemon.history import History
 from reactance.dashboard.app import create_app

@@ -9,6 +9,7 @@ from itertools import pairwise
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from reactance.analysis.report import Limit, Status, Verdict
 from reactance.daemon.history import StripCell
 from reactance.dashboard.strip import BASE, HEIGHT, LINE, Column, Strip, draw, pitch, scale_of, width, y_of
