@@ -29,11 +29,19 @@ class RailStudy:
     checks: tuple[Check, ...]
 
 
-def study_rails(board: Board, bias: Bias, solved: Solved) -> Iterable[RailStudy]:
+def rails_to_study(board: Board) -> tuple[str, ...]:
     """Every rail that the brief names or that has a capacitor."""
-    for net, entry in board.nets.items():
-        if entry.kind == "rail" and (net in board.rail_tables or _has_capacitor(board, net)):
-            yield _study_rail(board, bias, solved, net)
+    return tuple(
+        net
+        for net, entry in board.nets.items()
+        if entry.kind == "rail" and (net in board.rail_tables or _has_capacitor(board, net))
+    )
+
+
+def study_rails(board: Board, bias: Bias, solved: Solved, nets: Iterable[str]) -> Iterable[RailStudy]:
+    """Solve and judge each rail of `nets`."""
+    for net in nets:
+        yield _study_rail(board, bias, solved, net)
 
 
 def _has_capacitor(board: Board, net: str) -> bool:

@@ -6,8 +6,9 @@ next save costs only what it changed.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass, field, replace
+from typing import TypeVar
 
 from reactance.analysis.bias import Bias, solve_bias
 from reactance.analysis.board import Board, ModelMemory, resolve_board
@@ -17,7 +18,7 @@ from reactance.analysis.exports import FormMemory, read_export
 from reactance.analysis.files import BoardFiles
 from reactance.analysis.part_checks import net_checks, part_checks
 from reactance.analysis.path_checks import PathStudy, study_paths
-from reactance.analysis.rail_checks import RailStudy, study_rails
+from reactance.analysis.rail_checks import RailStudy, rails_to_study, study_rails
 from reactance.analysis.report import FORMAT_CHECK, Check, Curve, DesignSummary, Origin, Report
 from reactance.analysis.reuse import Solved
 from reactance.analysis.roles import Roles, assign_roles
@@ -29,6 +30,8 @@ from reactance.analysis.summary import (
     net_entries,
     part_entries,
 )
+
+_T = TypeVar("_T")
 
 
 @dataclass
@@ -89,11 +92,13 @@ def analyse(
     memory: Memory | None = None,
     understood: Callable[[], None] | None = None,
     samples: int = 0,
+    progress: Callable[[int, int], None] | None = None,
 ) -> Study:
     """Read, understand and solve one board. Raises `InputError` where the export or the brief cannot be used.
 
     `understood` is called between understanding and solving, for callers that time the two. `samples` > 0 adds the
     yield of as many Monte Carlo samples to judged checks; with them nothing solved is taken from or put into `memory`.
+    `progress` is told how many networks are solved, and of how many.
     """
     kept = memory or Memory()
     design = read_export(files.export, memory=kept.forms)
@@ -102,17 +107,25 @@ def analyse(
     if understood is not None:
         understood()
     if samples:
-        return study(replace(board, samples=samples), files.export_sha256)
-    return study(board, files.export_sha256, kept.solved)
+        return study(replace(board, samples=samples), files.export_sha256, progress=progress)
+    return study(board, files.export_sha256, kept.solved, progress=progress)
 
 
-def study(board: Board, export_sha256: str = "", solved: Solved | None = None) -> Study:
-    """Solve a board. `solved` holds the results of blocks that are known already."""
+def study(
+    board: Board,
+    export_sha256: str = "",
+    solved: Solved | None = None,
+    *,
+    progress: Callable[[int, int], None] | None = None,
+) -> Study:
+    """Solve a board. `solved` holds the results of blocks that are known already; `progress` as for `analyse`."""
     known = solved or Solved()
     bias = solve_bias(board)
     roles = assign_roles(board)
-    rails = tuple(study_rails(board, bias, known))
-    paths = tuple(study_paths(board, bias, known, roles.paths))
+    nets = rails_to_study(board)
+    told = _Told(progress, len(nets) + len(roles.paths))
+    rails = tuple(told.each(study_rails(board, bias, known, nets)))
+    paths = tuple(told.each(study_paths(board, bias, known, roles.paths)))
     checks = tuple(_checks(board, bias, known, roles, rails, paths))
     assumptions = gathered_assumptions(board, bias, rails, paths)
     report = Report(
@@ -129,6 +142,21 @@ def study(board: Board, export_sha256: str = "", solved: Solved | None = None) -
         problems=gathered_problems(board, bias, checks),
     )
     return Study(board.design, board, bias, roles, rails, paths, report)
+
+
+class _Told:
+    """Tells a listener how far the solving is."""
+
+    def __init__(self, listener: Callable[[int, int], None] | None, total: int) -> None:
+        self._listener, self._total, self._done = listener, total, 0
+
+    def each(self, items: Iterable[_T]) -> Iterator[_T]:
+        """`items`, each counted once it is there."""
+        for item in items:
+            self._done += 1
+            if self._listener is not None:
+                self._listener(self._done, self._total)
+            yield item
 
 
 def _checks(

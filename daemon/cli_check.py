@@ -13,6 +13,7 @@ from reactance.daemon.cli_common import (
     board_named,
     existing_history,
     history_option,
+    progress_bar,
     read_files,
     refusing,
     revision_named,
@@ -31,6 +32,7 @@ if TYPE_CHECKING:
 @click.option("--json", "as_json", is_flag=True, help="Print one JSON object (reactance.check/1).")
 @click.option("--curves", is_flag=True, help="Add the curves to the JSON.")
 @click.option("--sarif", "sarif_file", type=click.Path(path_type=Path), metavar="FILE", help="Write SARIF 2.1.0 too.")
+@click.option("--samples", type=click.IntRange(1, 1_000_000), metavar="N", help="Add the yield of N random boards.")
 @history_option
 def check(
     export: Path,
@@ -40,6 +42,7 @@ def check(
     as_json: bool,
     curves: bool,
     sarif_file: Path | None,
+    samples: int | None,
     history_file: str | None,
 ) -> None:
     """Analyse EXPORT once and print the result.
@@ -53,13 +56,15 @@ def check(
       $ reactance check board.edn --json
       $ reactance check board.edn --against previous
       $ reactance check board.edn --sarif board.sarif
+      $ reactance check board.edn --samples 1000
     """
     with refusing():
         from reactance.analysis.study import analyse
         from reactance.daemon.engine import limit_threads
 
         limit_threads()
-        study = analyse(read_files(export, brief))
+        with progress_bar("random boards", shown=samples is not None) as progress:
+            study = analyse(read_files(export, brief), samples=samples or 0, progress=progress)
         comparison, older = None, None
         if against is not None:
             older_side = _side(export, against, history_file)

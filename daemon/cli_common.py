@@ -105,3 +105,35 @@ def revision_named(history: History, board: BoardRow, name: str) -> RevisionRow:
             "or previous, latest or baseline)"
         )
     return revision
+
+
+@contextmanager
+def progress_bar(words: str, *, shown: bool = True) -> Iterator[Callable[[int, int], None]]:
+    """A progress bar for long work, told how many are done of how many; shown on a terminal only."""
+    import sys
+    import threading
+
+    if not shown or not sys.stderr.isatty():
+        yield lambda done, total: None
+        return
+    from rich.console import Console
+    from rich.progress import Progress
+
+    bar = Progress(console=Console(stderr=True), transient=True)
+    task: list[Any] = []
+    guard = threading.Lock()
+
+    def show(done: int, total: int) -> None:
+        with guard:
+            if total > 1 and done < total and not task:
+                bar.start()
+                task.append(bar.add_task(words, total=total))
+            if task:
+                bar.update(task[0], completed=done, total=total)
+                if done >= total:
+                    bar.stop()
+
+    try:
+        yield show
+    finally:
+        bar.stop()

@@ -4,15 +4,14 @@ from __future__ import annotations
 
 import ipaddress
 import signal
-import threading
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import click
 
-from reactance.daemon.cli_common import Refusal, history_option, history_path, refusing
+from reactance.daemon.cli_common import Refusal, history_option, history_path, progress_bar, refusing
 from reactance.daemon.sentences import save_line
 from reactance.daemon.text import clean, moment
 
@@ -157,7 +156,7 @@ def tell(outcome: Outcome) -> None:
 
 
 def _watch(places: tuple[Path, ...], history: History, polling: float | None) -> None:
-    with _progress() as progress:
+    with progress_bar("first pass") as progress:
         watcher = make_watcher(places, history, tell, polling=polling, first_pass=progress)
         click.echo(f"watching {', '.join(clean(str(place)) for place in places)}; Ctrl-C ends it")
         with ending_with(watcher.stop):
@@ -171,39 +170,8 @@ def _once(places: tuple[Path, ...], history: History) -> int:
     from reactance.daemon.intake import Intake
 
     unreadable = False
-    with _progress() as progress:
+    with progress_bar("first pass") as progress:
         for outcome in catch_up(places, history, Intake(history, default_engine()), progress):
             tell(outcome)
             unreadable = unreadable or outcome.kind in ("broken", "not stored")
     return 2 if unreadable else 0
-
-
-@contextmanager
-def _progress() -> Iterator[Callable[[int, int], None]]:
-    """A progress bar for a first pass over several files, on a terminal; nothing of the kind elsewhere."""
-    import sys
-
-    if not sys.stderr.isatty():
-        yield lambda done, total: None
-        return
-    from rich.console import Console
-    from rich.progress import Progress
-
-    bar = Progress(console=Console(stderr=True), transient=True)
-    task: list[Any] = []
-    guard = threading.Lock()
-
-    def show(done: int, total: int) -> None:
-        with guard:
-            if total > 1 and done < total and not task:
-                bar.start()
-                task.append(bar.add_task("first pass", total=total))
-            if task:
-                bar.update(task[0], completed=done, total=total)
-                if done >= total:
-                    bar.stop()
-
-    try:
-        yield show
-    finally:
-        bar.stop()

@@ -54,6 +54,10 @@ def _rank(check: Check) -> tuple[int, float]:
 
 def _row(check: Check) -> Row:
     remark = check.explain if check.status in ("fail", "marginal", "unknown") else ""
+    if check.yield_ is not None:
+        found = check.yield_
+        words = f"yield {found.share:.2%} ({found.low:.2%} to {found.high:.2%} of {found.samples})"
+        remark = f"{words}; {remark}" if remark else words
     cells = (
         check.status,
         check.id,
