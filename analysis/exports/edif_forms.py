@@ -11,6 +11,7 @@ from collections.abc import Callable, Iterable, Sequence
 from typing import TypeAlias, cast
 
 import sexpdata
+
 from reactance.analysis.exports.edif_words import BALANCED_CONTENTS
 
 Sexp: TypeAlias = "str | list[Sexp]"

@@ -15,6 +15,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+
 from reactance.analysis.parts.band import Band
 from reactance.analysis.quantity import format_quantity
 

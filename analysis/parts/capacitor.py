@@ -13,6 +13,7 @@ from typing import Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+
 from reactance.analysis.parts.band import UNITY, Band, product
 from reactance.analysis.parts.base import AGEING_REFERENCE_HOURS, Model
 from reactance.analysis.parts.bias import KEEPS_ALL, NOT_KNOWN, BiasLaw, HalfVoltage

@@ -9,14 +9,16 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+
 from reactance.analysis.parts.base import Stated
 from reactance.analysis.parts.claims import Claims
 from reactance.analysis.quantity import QuantityError, format_quantity
 
 if TYPE_CHECKING:
+    from scipy.interpolate import PchipInterpolator
+
     from reactance.analysis.circuit.network import Element
     from reactance.analysis.parts.passive_fit import PassiveFit
-    from scipy.interpolate import PchipInterpolator
 
 
 @dataclass(frozen=True)

@@ -15,6 +15,7 @@ from itertools import pairwise
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+
 from reactance.analysis.circuit.network import Bead, Capacitor, Element, Inductor, Resistor
 from reactance.analysis.quantity import QuantityError, format_quantity
 

@@ -10,6 +10,7 @@ from typing import cast
 
 import numpy as np
 from numpy.typing import NDArray
+
 from reactance.analysis.parts.knowledge import Connection
 from reactance.analysis.parts.measured import MeasuredPart
 from reactance.analysis.quantity import QuantityError
