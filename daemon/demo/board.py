@@ -189,7 +189,7 @@ def _microphone() -> tuple[Placed, ...]:
         capacitor("C42", "10pF 50V C0G 0402", "PRE_OUT", "PRE_FB"),
         resistor("R14", "1k", "PRE_FB", "PRE_LEG"),
         capacitor("C41", "100nF 16V X7R 0603", "PRE_LEG"),
-        capacitor("C43", "4.7nF 50V X7R 0402", "PRE_OUT", "AA_IN"),
+        capacitor("C43", "6.8nF 50V X7R 0402", "PRE_OUT", "AA_IN"),
         resistor("R15", "47k", "VREF", "AA_IN"),
         resistor("R16", "47k", "AA_IN", "GND"),
         resistor("R17", "3k3", "AA_IN", "AA_MID1"),
