@@ -7,6 +7,7 @@ unknowns (the cutset equations of network theory), no such difference is ever fo
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
@@ -39,6 +40,20 @@ class Forest:
     def path(self, a: int, b: int) -> FloatArray:
         """The voltage from node `a` to node `b`, (T,). The two must share a component."""
         return np.asarray(self.paths[a] - self.paths[b])
+
+    def serves(self, edges: Sequence[Edge], weights: FloatArray, forced: int, slack: float) -> bool:
+        """Whether no edge left out is heavier than `slack` times any edge of its path through the forest.
+
+        `weights` are those of the edges after the first `forced`, which count as heavier than all.
+        """
+        inside = np.array([math.inf if i < forced else weights[i - forced] for i in self.chosen])
+        a, b = np.array([(edge.a, edge.b) for edge in edges[forced:]], int).reshape(-1, 2).T
+        component = np.array(self.component)
+        apart = component[a] != component[b]
+        if (inside == 0).any() or (weights[apart] > 0).any():
+            return False
+        least = np.where(self.paths[a] != self.paths[b], inside, math.inf).min(axis=1, initial=math.inf)
+        return bool((apart | (weights <= slack * least)).all())
 
 
 def span(nodes: int, ground: int, edges: Sequence[Edge], weights: FloatArray, forced: int) -> Forest:

@@ -48,7 +48,8 @@ class Question:
         moved = eq.rhs_slope - (eq.matrix_slope @ x[..., None])[..., 0]
         h = x @ eq.observe + eq.known
         h_slope = (inverse @ moved[..., None])[..., 0] @ eq.observe
-        return np.asarray(total + h_slope / h)
+        with np.errstate(divide="ignore", invalid="ignore"):  # s may be just on a zero
+            return np.asarray(total + h_slope / h)
 
     def _inverse(self, forest: Forest, s: ComplexArray) -> tuple[Equations, ComplexArray]:
         eq = self.system.equations(forest, s, self.drive, self.probe, slopes=True)
@@ -64,9 +65,8 @@ def find_roots(question: Question) -> tuple[ComplexArray, int]:
 
     Rows with fewer roots end in NaN.
     """
-    low, high = question.slope(np.array([[_FAR_LOW]], complex)), question.slope(np.array([[_FAR_HIGH]], complex))
-    at_zero = np.round((low * _FAR_LOW).real[:, 0])
-    total = np.round((high * _FAR_HIGH).real[:, 0])
+    ends = np.array([[_FAR_LOW, _FAR_HIGH]], complex)
+    at_zero, total = np.round((question.slope(ends) * ends).real).T
     if not (np.isfinite(at_zero).all() and np.isfinite(total).all()):
         raise CircuitError("the network has no unique solution at any frequency")
     counts = (total - at_zero).astype(int)

@@ -33,6 +33,8 @@ from reactance.analysis.circuit.network import (
 T = TypeVar("T")
 NEAR_ZERO = 1e-40  # rad/s that stands for DC: far below any rate of any network, far above underflow
 NEAR_INFINITY = 1e40
+_GOOD_ENOUGH = 30.0  # a forest serves another decade as long as no branch left out beats one of its own by more
+_MANY = 4096  # entries from which a complex product is better taken as two real ones
 
 
 @dataclass(frozen=True, slots=True)
@@ -79,10 +81,8 @@ class System:
         self.network = network
         self.over_time = over_time
         self.parts: Parts = take_apart(network, over_time=over_time)
-        if values is not None:
-            values = np.asarray(values, float)
-            if values.ndim != 2 or values.shape[1] != len(parameters):
-                raise ValueError(f"values of shape {values.shape} for {len(parameters)} parameters")
+        self.parameters = tuple(parameters)
+        values = None if values is None else _checked(values, parameters)
         self.count = 1 if values is None else len(values)
         self.nodes = self._index_nodes()
         self._coefficients(parameters, values)
@@ -93,10 +93,29 @@ class System:
 
     def only(self, rows: NDArray[np.intp]) -> System:
         """The same network with some of its sets of values."""
-        part = copy(self)
-        part.count = len(rows)
-        part._varied = (self._varied[0][rows], self._varied[1][rows])
-        return part
+        return self._with((self._varied[0][rows], self._varied[1][rows]), len(rows))
+
+    def at_values(self, values: FloatArray) -> System:
+        """The same network with other values (V, P) of the same parameters; what does not hang on them is shared."""
+        lossy = not self.over_time
+        changed = _by_name(self.parameters, _checked(values, self.parameters))
+        varied = [
+            coefficients(branch.element, changed[branch.element.name], len(values), lossy=lossy)
+            for branch in self.branches[self.fixed :]
+        ]
+        return self._with(_stack(varied, len(values)), len(values))
+
+    def _with(self, varied: tuple[ComplexArray, ComplexArray], count: int) -> System:
+        other = copy(self)
+        other.count, other._varied = count, varied
+        other.__dict__.pop("_every", None)
+        return other
+
+    @cached_property
+    def _every(self) -> tuple[ComplexArray, ComplexArray]:
+        """Coefficients (V, m, 3) of all branches, the fixed ones repeated for every set of values."""
+        n, d = (np.repeat(c, self.count // len(c), axis=0) for c in self._fixed)
+        return np.concatenate([n, self._varied[0]], axis=1), np.concatenate([d, self._varied[1]], axis=1)
 
     # what the network is
 
@@ -114,10 +133,7 @@ class System:
         return nodes
 
     def _coefficients(self, parameters: Sequence[Parameter], values: FloatArray | None) -> None:
-        changed: dict[str, dict[str, FloatArray]] = {}
-        if values is not None:
-            for column, parameter in enumerate(parameters):
-                changed.setdefault(parameter.name, {})[parameter.attribute] = values[:, column]
+        changed = {} if values is None else _by_name(parameters, values)
         names = {branch.element.name for branch in self.parts.branches}
         for name in changed:
             if name not in names:
@@ -193,38 +209,70 @@ class System:
     def admittances(self, s: ComplexArray, fixed: bool) -> ComplexArray:
         """Admittances (V or 1, F, m) of the fixed or of the varied branches at s (V or 1, F)."""
         n, d = self._fixed if fixed else self._varied
-        y = _poly(n, s) / _poly(d, s)
-        if fixed and self.measured:
-            frequency = np.abs(s) / (2.0 * np.pi)
-            for i in self.measured:
-                measure = self.branches[i].impedance
-                assert measure is not None
-                y[..., i] = 1.0 / np.asarray(measure(frequency.ravel())).reshape(s.shape)
+        y = _ratio(_poly(n, s), _poly(d, s))
+        return self._measured_in(y, s) if fixed and self.measured else y
+
+    def _measured_in(self, y: ComplexArray, s: ComplexArray) -> ComplexArray:
+        frequency = np.abs(s) / (2.0 * np.pi)
+        for i in self.measured:
+            measure = self.branches[i].impedance
+            assert measure is not None
+            y[..., i] = 1.0 / np.asarray(measure(frequency.ravel())).reshape(s.shape)
         return y
 
-    def admittance_slopes(self, s: ComplexArray, fixed: bool) -> tuple[ComplexArray, ComplexArray]:
-        """dy/ds (V or 1, F, m) and the sum over branches of d′/d (V or 1, F), at s (V or 1, F)."""
-        n, d = self._fixed if fixed else self._varied
-        nv, dv = _poly(n, s), _poly(d, s)
-        ns, ds = _poly_slope(n, s), _poly_slope(d, s)
-        return (ns - nv * (ds / dv)) / dv, np.asarray((ds / dv).sum(axis=-1))
+    def _in_groups(self, s: ComplexArray) -> list[ComplexArray]:
+        """Admittances at s: of all branches at once where each set of values has its own s, else fixed and varied."""
+        if len(s) < self.count:
+            return [self.admittances(s, True), self.admittances(s, False)]
+        n, d = self._every
+        y = _ratio(_poly(n, s), _poly(d, s))
+        return [self._measured_in(y, s) if self.measured else y]
+
+    def _with_slopes(self, s: ComplexArray) -> tuple[list[ComplexArray], list[ComplexArray], ComplexArray]:
+        """y and dy/ds, each as `_in_groups`, and the sum over branches of d′/d (V or 1, F)."""
+        every = [self._every] if len(s) == self.count else [self._fixed, self._varied]
+        values, slopes, total = [], [], np.zeros(s.shape, complex)
+        with np.errstate(all="ignore"):  # s may be just where a branch's own admittance has a pole
+            for n, d in every:
+                inverse = 1.0 / _poly(d, s)
+                y, d_slope = _poly(n, s) * inverse, _poly_slope(d, s)
+                slopes.append((_poly_slope(n, s) - y * d_slope) * inverse)
+                values.append(y)
+                total = total + (d_slope * inverse).sum(axis=-1)
+        return values, slopes, total
 
     # the forest
 
     def forest_at(self, rate: float) -> Forest:
         """The forest for |s| = `rate`, chosen once per decade."""
-        decade = int(np.clip(np.round(np.log10(rate)), -60, 60))
+        return self._forest_of(int(np.clip(np.round(np.log10(rate)), -60, 60)))
+
+    def _forest_of(self, decade: int) -> Forest:
         if decade not in self._decades:
             s = np.array([[1j * 10.0**decade]]) if not self.over_time else np.array([[10.0**decade + 0j]])
             weights = np.concatenate([np.abs(self.admittances(s, True))[0, 0], self._mean_varied(s)])
             weights = np.where(np.isfinite(weights), weights, 0.0)
-            forced = len(self.parts.ideal) + len(self.parts.gains)
-            forest = span(len(self.nodes), 0, self.edges, np.concatenate([np.zeros(forced), weights]), forced)
-            for index in forest.closing:
-                self._judge_closing(index, forest)
-            self._decades[decade] = forest.chosen
-            self._forests.setdefault(forest.chosen, forest)
+            self._decades[decade] = (self._serving(decade, weights) or self._fresh(weights)).chosen
         return self._forests[self._decades[decade]]
+
+    def _serving(self, decade: int, weights: FloatArray) -> Forest | None:
+        """A forest of a near decade that still serves: fewer forests mean fewer and larger batches."""
+        for near in sorted(self._decades, key=lambda other: abs(other - decade)):
+            forest = self._forests[self._decades[near]]
+            if forest.serves(self.edges, weights, self._forced, _GOOD_ENOUGH):
+                return forest
+        return None
+
+    def _fresh(self, weights: FloatArray) -> Forest:
+        forced = self._forced
+        forest = span(len(self.nodes), 0, self.edges, np.concatenate([np.zeros(forced), weights]), forced)
+        for index in forest.closing:
+            self._judge_closing(index, forest)
+        return self._forests.setdefault(forest.chosen, forest)
+
+    @property
+    def _forced(self) -> int:
+        return len(self.parts.ideal) + len(self.parts.gains)
 
     def _mean_varied(self, s: ComplexArray) -> FloatArray:
         y = np.abs(self.admittances(s, False))[:, 0]
@@ -269,13 +317,13 @@ class System:
     ) -> Equations:
         """The equations at s (V or 1, F), driven by `drive`, observed between the nodes of `probe`."""
         layout = self._layout(forest, drive, probe)
-        y = [self.admittances(s, True), self.admittances(s, False)]
-        matrix, rhs = layout.assemble(y, s)
         if not slopes:
+            matrix, rhs = layout.assemble(self._in_groups(s), s)
             return Equations(matrix, rhs, layout.observe, layout.known)
-        fixed, varied = self.admittance_slopes(s, True), self.admittance_slopes(s, False)
-        matrix_slope, rhs_slope = layout.assemble([fixed[0], varied[0]], None)
-        return Equations(matrix, rhs, layout.observe, layout.known, matrix_slope, rhs_slope, fixed[1] + varied[1])
+        y, y_slope, denominators = self._with_slopes(s)
+        matrix, rhs = layout.assemble(y, s)
+        matrix_slope, rhs_slope = layout.assemble(y_slope, None)
+        return Equations(matrix, rhs, layout.observe, layout.known, matrix_slope, rhs_slope, denominators)
 
     def probe(self, probe: str | tuple[str, str]) -> tuple[str, str]:
         """The pair of nodes of a probe. Raises `CircuitError` for an unknown node."""
@@ -310,7 +358,7 @@ class System:
         return answer
 
     def _adjoint(self, layout: _Layout, s: ComplexArray) -> ComplexArray:
-        matrix, _ = layout.assemble([self.admittances(s, True), self.admittances(s, False)], s)
+        matrix, _ = layout.assemble(self._in_groups(s), s)
         seek = np.broadcast_to(layout.observe, matrix.shape[:-1])
         dual = np.linalg.solve(np.swapaxes(matrix, -1, -2), seek[..., None])[..., 0]
         for row in layout.gain_unknowns:
@@ -328,15 +376,15 @@ class System:
 
     def groups(self, s: ComplexArray) -> list[tuple[Forest, slice | NDArray[np.intp]]]:
         """The forests that serve the columns of s, each with the columns it serves."""
-        rates = np.exp(np.mean(np.log(np.abs(s)), axis=0))
-        decades = np.round(np.log10(rates))
+        size = np.log10(np.abs(s))
+        decades = np.clip(np.round(size[0] if len(s) == 1 else size.mean(axis=0)), -60, 60).astype(int)
         found: dict[tuple[int, ...], list[int]] = {}
-        for decade in np.unique(decades):
-            forest = self.forest_at(10.0**decade)
-            found.setdefault(forest.chosen, []).extend(np.flatnonzero(decades == decade))
-        if len(found) == 1:
-            return [(self._forests[key], slice(None)) for key in found]
-        return [(self._forests[key], np.array(sorted(columns))) for key, columns in found.items()]
+        chosen = {decade: self._forest_of(decade).chosen for decade in sorted(set(decades.tolist()))}
+        if len(set(chosen.values())) == 1:
+            return [(self._forests[key], slice(None)) for key in set(chosen.values())]
+        for column, decade in enumerate(decades.tolist()):
+            found.setdefault(chosen[decade], []).append(column)
+        return [(self._forests[key], np.array(columns)) for key, columns in found.items()]
 
 
 class _Layout:
@@ -358,9 +406,8 @@ class _Layout:
         size = len(self.unknown)
         outer = (self.paths[:, :, None] * self.paths[:, None, :]).reshape(len(edges), size * size)
         right = (drive.branches - paths[:, self.fixed] @ self.levels)[:, None] * self.paths
-        split = system.fixed
-        self.outer = (outer[:split], outer[split:])
-        self.right = (right[:split], right[split:])
+        self.products = np.concatenate([outer, right], axis=1)
+        self.split = system.fixed
         self.forest = forest
         self.drive = drive
         self.at = at
@@ -382,11 +429,15 @@ class _Layout:
 
     def assemble(self, y: Sequence[ComplexArray], s: ComplexArray | None) -> tuple[ComplexArray, ComplexArray]:
         """Matrix (V, F, N, N) and right side (V, F, N); with s None, their derivatives for y = dy/ds."""
-        whole, rhs = _product(y[0], self.outer[0]), _product(y[0], self.right[0])
-        if y[1].shape[-1]:
-            whole, rhs = whole + _product(y[1], self.outer[1]), rhs + _product(y[1], self.right[1])
-        size = len(self.unknown)
-        whole = whole.reshape(*whole.shape[:-1], size, size)
+        size, split = len(self.unknown), self.split
+        if len(y) == 1:
+            both = _product(y[0], self.products)
+        else:
+            both = _product(y[0], self.products[:split])
+            if y[1].shape[-1]:
+                both = both + _product(y[1], self.products[split:])
+        whole = both[..., : size * size].reshape(*both.shape[:-1], size, size)
+        rhs = both[..., size * size :]
         if s is not None:
             rhs = rhs + self.injected[self.unknown]
         for row, (_, number) in zip(self.gain_unknowns, self.gain_rows, strict=True):
@@ -398,13 +449,36 @@ class _Layout:
 
 
 def _product(y: ComplexArray, outer: FloatArray) -> ComplexArray:
-    """Σ y·pᵀp over branches: (V, F, m) and (m, T·T) to (V, F, T·T), as one real product."""
+    """Σ y·pᵀp over branches: (V, F, m) and (m, K) to (V, F, K); a large one as one real product."""
     count = y.shape[0] * y.shape[1]
     flat = y.reshape(count, -1)
-    split = np.concatenate([flat.real, flat.imag]) @ outer
+    with np.errstate(invalid="ignore"):
+        if count * outer.shape[1] < _MANY:
+            return np.asarray((flat @ outer).reshape(*y.shape[:-1], -1))
+        split = np.concatenate([flat.real, flat.imag]) @ outer
     whole = np.empty((count, outer.shape[1]), complex)
     whole.real, whole.imag = split[:count], split[count:]
     return whole.reshape(*y.shape[:-1], -1)
+
+
+def _ratio(n: ComplexArray, d: ComplexArray) -> ComplexArray:
+    with np.errstate(all="ignore"):  # s may be just where a branch's own admittance has a pole
+        return np.asarray(n / d)
+
+
+def _checked(values: FloatArray, parameters: Sequence[Parameter]) -> FloatArray:
+    values = np.asarray(values, float)
+    if values.ndim != 2 or values.shape[1] != len(parameters):
+        raise ValueError(f"values of shape {values.shape} for {len(parameters)} parameters")
+    return values
+
+
+def _by_name(parameters: Sequence[Parameter], values: FloatArray) -> dict[str, dict[str, FloatArray]]:
+    """The columns of `values` by name and attribute."""
+    found: dict[str, dict[str, FloatArray]] = {}
+    for column, parameter in enumerate(parameters):
+        found.setdefault(parameter.name, {})[parameter.attribute] = values[:, column]
+    return found
 
 
 def _stack(pairs: Sequence[tuple[ComplexArray, ComplexArray]], count: int) -> tuple[ComplexArray, ComplexArray]:
