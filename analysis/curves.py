@@ -16,7 +16,7 @@ from reactance.analysis.circuit.transient import ramp, sine
 from reactance.analysis.elements import node, rail_source_name
 from reactance.analysis.filters import SETTLED, asked_frequency
 from reactance.analysis.gains import top_of_band
-from reactance.analysis.measuring import Measuring
+from reactance.analysis.measuring import Measuring, time_grid
 from reactance.analysis.parts.models import CapacitorModel
 from reactance.analysis.path_checks import PathStudy
 from reactance.analysis.rail_checks import RailStudy
@@ -102,7 +102,7 @@ def _rail(study: Study, rail: RailStudy, check: Check) -> Curve | None:
     asked = rail.asked
     if check.measure == "droop" and asked.current is not None and asked.rise is not None:
         current, rise = asked.current, asked.rise
-        t = seen.time_grid(POINTS, rise)
+        t = time_grid(ramp(seen.modes(seen.nominal), current, rise), POINTS, rise)
 
         def moved(values: FloatArray) -> FloatArray:
             return -ramp(seen.modes(values), current, rise).value(t)
@@ -110,7 +110,7 @@ def _rail(study: Study, rail: RailStudy, check: Check) -> Curve | None:
         lines = _both_sides("allowed", t, asked.allowed)
         labels = (f"{rail.net} after a load step of {current:g} A", "time", "s", "change of the rail", "V")
         return _banded(check, seen, t, moved, labels, lines, log_x=False)
-    if asked.band is None:
+    if asked.band is None or check.measure in ("capacitance", "bypass"):
         return None
     f = seen.frequency_grid(*asked.band, POINTS)
     lines = ()
@@ -151,7 +151,7 @@ def _step(path: PathStudy, seen: Measuring, check: Check) -> Curve:
     if check.measure == "tilt" and isinstance(table, CouplingTable) and table.tilt is not None:
         t = np.linspace(0.0, float(table.tilt.pulse), POINTS)
     else:
-        t = seen.time_grid(POINTS, 0.0)
+        t = time_grid(seen.step(seen.nominal), POINTS, 0.0)
     final = float(np.asarray(seen.step(seen.nominal).final)[0])
     lines: tuple[LimitLine, ...] = ()
     if check.measure == "settling" and math.isfinite(final):

@@ -17,6 +17,7 @@ from reactance.analysis.circuit.response import Response
 
 LOWEST = 1e-4  # Hz: below this nothing on a board is asked about
 LEAST_TOP = 1e6  # Hz: the band reaches at least so far
+HIGHEST = 1e10  # Hz: corners are sought so far
 BEYOND = 1e3  # ... and this many times the highest frequency that is asked about
 HALF_POWER = 1 / math.sqrt(2)
 PASSES_DC = 0.05  # a filter whose DC gain is above this share of its greatest gain passes DC
@@ -80,14 +81,14 @@ def filter_reference(nominal: Response, top: float) -> Reference:
     """For a low-pass the gain at DC, for everything else the greatest |H| up to `top` (Hz)."""
     at_dc = dc_reference(nominal)
     greatest = greatest_gain(nominal, top)
-    if at_dc.gain[0] > PASSES_DC * greatest.gain[0] and math.isfinite(corner_high(nominal, at_dc, top)[0]):
+    if at_dc.gain[0] > PASSES_DC * greatest.gain[0] and math.isfinite(corner_high(nominal, at_dc)[0]):
         return at_dc
     return greatest
 
 
-def corner_high(response: Response, reference: Reference, top: float) -> FloatArray:
-    """Upper corners in Hz (V,), NaN where there is none below `top`."""
-    found = response.falls_through(reference.gain * HALF_POWER, reference.frequency, "up", top)
+def corner_high(response: Response, reference: Reference) -> FloatArray:
+    """Upper corners in Hz (V,), NaN where there is none up to 10 GHz."""
+    found = response.falls_through(reference.gain * HALF_POWER, reference.frequency, "up", HIGHEST)
     return np.asarray(found, float)
 
 

@@ -84,8 +84,9 @@ class Measuring:
     def at(self, values: FloatArray, frequencies: FloatArray) -> ComplexArray:
         """The response (V, F) for each row of `values` (V, P) at `frequencies` (F,) in Hz."""
         found = frequency_response(
-            self.block.network, self.source, self.probe, frequencies, parameters=self.parameters, values=values
-        )
+            self.block.network, self.source, self.probe, frequencies,
+            parameters=self.parameters, values=values, family=self.block.family,
+        )  # fmt: skip
         return np.asarray(self.sign * found)
 
     def response(self, values: FloatArray) -> Response:
@@ -93,8 +94,9 @@ class Measuring:
         key = values.tobytes()
         if key not in self._responses:
             self._responses[key] = Response(
-                self.block.network, self.source, self.probe, parameters=self.parameters, values=values
-            )
+                self.block.network, self.source, self.probe,
+                parameters=self.parameters, values=values, family=self.block.family,
+            )  # fmt: skip
         return self._responses[key]
 
     def modes(self, values: FloatArray) -> PoleResidue:
@@ -102,8 +104,9 @@ class Measuring:
         key = values.tobytes()
         if key not in self._modes:
             found = pole_residue(
-                self.block.network, self.source, self.probe, parameters=self.parameters, values=values
-            )
+                self.block.network, self.source, self.probe,
+                parameters=self.parameters, values=values, family=self.block.family,
+            )  # fmt: skip
             self._modes[key] = found.scaled(self.sign) if self.sign != 1.0 else found
         return self._modes[key]
 
@@ -150,13 +153,16 @@ class Measuring:
             grid.append(around[(around > low) & (around < high)])
         return np.unique(np.concatenate(grid))
 
-    def time_grid(self, points: int, at_least: float) -> FloatArray:
-        """Times in s for drawing a response that settles: to five times its slowest mode that shows."""
-        modes = self.modes(self.nominal)
-        poles, residues = modes.poles[0], modes.residues[0]
-        size = np.abs(residues / np.where(poles == 0, 1.0, poles))
-        shows = (poles.real < 0) & (size > 1e-3 * size.max(initial=0.0))
-        slowest = 1.0 / np.abs(poles.real[shows]).min() if shows.any() else 0.0
-        end = max(5.0 * slowest, 3.0 * at_least, 1e-12)
-        early = np.geomspace(end * 1e-5, end, points // 2)
-        return np.unique(np.concatenate([[0.0], np.linspace(0.0, end, points // 2), early]))
+
+def time_grid(response: TimeResponse, points: int, at_least: float) -> FloatArray:
+    """Times in s for drawing a response that settles, by its first set of values: until 1 % of its motion is left.
+
+    Half the points are even in time, half in its logarithm, so that early swings show as well as the end.
+    """
+    final = np.asarray(response.final)
+    motion = response.peak(final)
+    settled = np.asarray(response.settling_time(0.01 * np.asarray(motion.size)))[0]
+    far = np.asarray(response.peak().time)[0]
+    ends = [end for end in (1.25 * float(settled), 3.0 * float(far), 3.0 * at_least) if np.isfinite(end)]
+    end = max(ends, default=0.0) or 1e-9
+    return np.unique(np.concatenate([np.linspace(0.0, end, points // 2), np.geomspace(end * 1e-5, end, points // 2)]))

@@ -17,6 +17,8 @@ from reactance.analysis.report import AssumptionEntry, Origin, PartLine
 if TYPE_CHECKING:
     from reactance.analysis.study import Study
 
+NO_VOLTS = 1e-9  # V: below this a solved voltage is rounding
+
 MODELS = {
     "rail": (
         "Modified nodal analysis of the rail and everything that beads, inductors and small resistors join to it, "
@@ -149,7 +151,7 @@ def _capacitor(model: CapacitorModel, volts: float | None) -> tuple[list[tuple[s
         ("C_eff", _band(model.effective(abs(volts or 0.0)), "F")),
         ("R_s", format_quantity(model.esr, "ohm")),
         ("L_s", format_quantity(model.esl, "H")),
-        ("DC", format_quantity(volts, "V") if volts is not None else "not known"),
+        ("DC", "not known" if volts is None else format_quantity(volts if abs(volts) > NO_VOLTS else 0.0, "V")),
     ]
     if model.loss_tangent:
         figures.append(("tan δ", f"{model.loss_tangent:g}"))

@@ -29,7 +29,7 @@ def rejection_band(networks: SignalNetworks, seen: Measuring) -> tuple[float, fl
         asked = asked_frequency(table)
     response = seen.response(seen.nominal)
     top = top_of_band(response, asked)
-    corner = float(corner_high(response, filter_reference(response, top), top)[0])
+    corner = float(corner_high(response, filter_reference(response, top))[0])
     high = corner if math.isfinite(corner) and corner > LOWEST_AUDIBLE else HIGHEST_AUDIBLE
     return LOWEST_AUDIBLE, high
 
