@@ -3,14 +3,16 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 from functools import cached_property
 
+import msgspec
 import numpy as np
-from msgspec.structs import replace
 
+from reactance.analysis.blocks import Block
 from reactance.analysis.brief_tables import CouplingTable, SettleTable
 from reactance.analysis.circuit.charge import ChargeLaw
-from reactance.analysis.circuit.network import CircuitError, FloatArray
+from reactance.analysis.circuit.network import Capacitor, CircuitError, FloatArray, Network
 from reactance.analysis.circuit.spread import spread
 from reactance.analysis.circuit.start import StartMotion, large_signal_start
 from reactance.analysis.circuit.transient import TimeResponse, start_response
@@ -34,7 +36,7 @@ class Start:
 
     def __init__(self, networks: SignalNetworks) -> None:
         self.networks = networks
-        self.block = networks.start
+        self.block = without_inductance(networks.start)
         self.parameters = self.block.parameters
         self._known: dict[bytes, TimeResponse] = {}
         self._large: dict[bytes, StartMotion] = {}
@@ -44,8 +46,9 @@ class Start:
         key = values.tobytes()
         if key not in self._known:
             self._known[key] = start_response(
-                self.block.network, self.networks.probe, parameters=self.parameters, values=values
-            )
+                self.block.network, self.networks.probe,
+                parameters=self.parameters, values=values, family=self.block.family,
+            )  # fmt: skip
         return self._known[key]
 
     @cached_property
@@ -76,6 +79,15 @@ class Start:
             found = large_signal_start(network.with_values(empty), self.networks.probe, laws, tolerance=TOLERANCE)
             self._large[key] = found
         return self._large[key]
+
+
+def without_inductance(block: Block) -> Block:
+    """The block with capacitors that have no L_s.
+
+    It acts for picoseconds, and the spike that it lets through at the very first edge is no start-up peak.
+    """
+    elements = tuple(replace(e, esl=0.0) if isinstance(e, Capacitor) else e for e in block.network.elements)
+    return replace(block, network=Network(elements, block.network.ground))
 
 
 def _law(model: CapacitorModel, scale: float, greatest: float) -> ChargeLaw:
@@ -140,7 +152,7 @@ def _start_band(
     try:
         figures = [large(start.large(row)) for row in rows]
     except CircuitError as problem:
-        return replace(value, note=f"{note}; capacitance as at the operating point, since {problem}".lstrip("; "))
+        return msgspec.structs.replace(value, note=f"{note}; capacitance as at the operating point, since {problem}".lstrip("; "))
     note = f"{note}; {FOLLOWS}".lstrip("; ")
     return Value(figures[0], min(figures), max(figures), unit, note, "", value.matters)
 
