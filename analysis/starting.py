@@ -152,7 +152,8 @@ def _start_band(
     try:
         figures = [large(start.large(row)) for row in rows]
     except CircuitError as problem:
-        return msgspec.structs.replace(value, note=f"{note}; capacitance as at the operating point, since {problem}".lstrip("; "))
+        why = f"{note}; capacitance as at the operating point, since {problem}".lstrip("; ")
+        return msgspec.structs.replace(value, note=why)
     note = f"{note}; {FOLLOWS}".lstrip("; ")
     return Value(figures[0], min(figures), max(figures), unit, note, "", value.matters)
 
