@@ -34,7 +34,7 @@ allowed = "3 %"
 net = "+3V3"
 voltage = "3.3 V"
 tolerance = "2 %"
-source = { resistance = "80 mohm", inductance = "90 nH" }
+source = { resistance = "80 mohm", inductance = "95 nH" }
 step = { current = "0.5 A", rise = "50 ns" }
 allowed = "2.5 %"
 bypass = 0.7
