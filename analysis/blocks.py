@@ -8,9 +8,11 @@ from __future__ import annotations
 import hashlib
 from collections.abc import Iterable
 from dataclasses import dataclass
+from functools import cached_property
 
 from reactance.analysis.bias import Bias
 from reactance.analysis.board import Board, DescribedPin, PlacedAmplifier, Section
+from reactance.analysis.circuit.family import Family
 from reactance.analysis.circuit.network import Element, Measured, Network, Parameter, VoltageSource
 from reactance.analysis.elements import (
     GROUND,
@@ -37,6 +39,11 @@ class Block:
     nets: tuple[str, ...]
     notes: tuple[str, ...] = ()
     samples: int = 0
+
+    @cached_property
+    def family(self) -> Family:
+        """The network under sets of values of its uncertain attributes; all that is measured of it shares this."""
+        return Family(self.network, self.parameters)
 
     def key(self, *asked: object) -> str:
         """SHA-256 of the network, its uncertain attributes and the question."""

@@ -15,8 +15,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from reactance.analysis.circuit.family import Family
 from reactance.analysis.circuit.network import CircuitError, ComplexArray, FloatArray, Network, Parameter
-from reactance.analysis.circuit.roots import Question, find_roots
 from reactance.analysis.circuit.system import NEAR_INFINITY, NEAR_ZERO, Drive, System
 
 _SINGLE_NODES = 8
@@ -62,15 +62,14 @@ def pole_residue(
     *,
     parameters: Sequence[Parameter] = (),
     values: ArrayLike | None = None,
+    family: Family | None = None,
 ) -> PoleResidue:
     """Poles and residues of the response at `probe` to `source`, all other sources at zero.
 
     `values` (V, P) of `parameters` gives a leading axis V to every array. Raises `CircuitError` where the network has
-    no unique solution or a measured part has no fit.
+    no unique solution or a measured part has no fit. `family`, of the same network and parameters, is for many calls.
     """
-    grid = None if values is None else np.asarray(values, float)
-    system = System(network, over_time=True, parameters=parameters, values=grid)
-    found = expand(system, system.drive(source), system.probe(probe))
+    found = expand(family or Family(network, parameters), source, probe, values)
     return found if values is not None else first(found)
 
 
@@ -79,9 +78,15 @@ def first(found: PoleResidue) -> PoleResidue:
     return PoleResidue(found.poles[0], found.residues[0], found.direct[0], found.slope[0])
 
 
-def expand(system: System, drive: Drive, probe: tuple[str, str]) -> PoleResidue:
-    """Poles and residues (V, n) of the probe's response to `drive`."""
-    poles, at_zero = find_roots(Question(system, drive, probe))
+def expand(
+    family: Family, source: str | None, probe: str | tuple[str, str], values: ArrayLike | None
+) -> PoleResidue:
+    """Poles and residues (V, n) of the probe's response to one source, or (None) to all at their DC levels."""
+    grid = None if values is None else np.asarray(values, float)
+    system = family.system(grid, over_time=True)
+    drive, probe = system.drive(source), system.probe(probe)
+    found = family.poles(grid)
+    poles, at_zero = found.roots, found.at_zero
     poles, residues = residues_at(poles, lambda s: system.respond(s, drive, probe))
     ends = np.array([[NEAR_ZERO, NEAR_INFINITY]], complex)
     low, high = system.respond(ends, drive, probe).T
@@ -93,8 +98,8 @@ def expand(system: System, drive: Drive, probe: tuple[str, str]) -> PoleResidue:
         residues = np.concatenate([residues, drift[:, None]], axis=1)
     slope = np.where(np.abs(high) > 1e20, high.real / NEAR_INFINITY, 0.0)
     direct = np.where(np.abs(high) < 1e-20, 0.0, high.real)
-    found = PoleResidue(poles, residues, direct, slope)
-    return _judge(system, drive, probe, _with_direct(system, drive, probe, found))
+    bare = PoleResidue(poles, residues, direct, slope)
+    return _judge(system, drive, probe, _with_direct(system, drive, probe, bare))
 
 
 def _with_direct(system: System, drive: Drive, probe: tuple[str, str], found: PoleResidue) -> PoleResidue:

@@ -14,6 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike
 
+from reactance.analysis.circuit.family import Family
 from reactance.analysis.circuit.modal import residues_at
 from reactance.analysis.circuit.network import (
     Bead,
@@ -27,7 +28,6 @@ from reactance.analysis.circuit.network import (
     Resistor,
     VoltageSource,
 )
-from reactance.analysis.circuit.roots import Question, find_roots
 from reactance.analysis.circuit.system import NEAR_INFINITY, NEAR_ZERO, System
 
 BOLTZMANN = 1.380649e-23  # J/K, exact in the SI
@@ -51,6 +51,7 @@ def integrated_noise(
     *,
     parameters: Sequence[Parameter] = (),
     values: ArrayLike | None = None,
+    family: Family | None = None,
 ) -> float | FloatArray:
     """Thermal noise voltage at `probe` in V rms, a float or (V,) with `values` (V, P): inf where nothing bounds it.
 
@@ -58,9 +59,10 @@ def integrated_noise(
     resistance of an amplifier does not. Raises `CircuitError` as `pole_residue` does.
     """
     grid = None if values is None else np.asarray(values, float)
-    system = System(network, over_time=True, parameters=parameters, values=grid)
+    family = family or Family(network, parameters)
+    system = family.system(grid, over_time=True)
     nodes = system.probe(probe)
-    poles = find_roots(Question(system, system.silence, nodes))[0]
+    poles = family.poles(grid).roots
     square = np.zeros(system.count)
     for origin in _origins(system, parameters, grid):
         gathered = _gathered(system, nodes, origin, poles)

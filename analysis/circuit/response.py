@@ -12,8 +12,8 @@ from typing import Literal
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from reactance.analysis.circuit.family import Family
 from reactance.analysis.circuit.network import CircuitError, ComplexArray, FloatArray, Network, Parameter
-from reactance.analysis.circuit.roots import Question, find_roots
 from reactance.analysis.circuit.search import bracketed_root, polish
 from reactance.analysis.circuit.system import NEAR_INFINITY, NEAR_ZERO, System
 
@@ -26,6 +26,7 @@ class Response:
     """Voltage at `probe` per unit of `source` over frequency, for one or (with `values` (V, P)) many sets of values.
 
     Results are arrays (V,) and (V, F), with V = 1 without `values`. Where something does not exist the answer is NaN.
+    `family`, of the same network and parameters, lets many responses share what they have in common.
     """
 
     def __init__(
@@ -36,13 +37,15 @@ class Response:
         *,
         parameters: Sequence[Parameter] = (),
         values: ArrayLike | None = None,
+        family: Family | None = None,
     ) -> None:
         grid = None if values is None else np.asarray(values, float)
         self.source = source
-        self.system = System(network, over_time=False, parameters=parameters, values=grid)
+        self.family = family or Family(network, parameters)
+        self.system = self.family.system(grid, over_time=False)
         self.probe = self.system.probe(probe)
         self.system.drive(source)
-        self._whole = (network, tuple(parameters), grid)
+        self._values = grid
         self._rates: FloatArray | None = None
 
     def at(self, frequencies: ArrayLike) -> ComplexArray:
@@ -122,12 +125,9 @@ class Response:
     def _own_rates(self) -> FloatArray:
         """Complex poles and zeros (V, n) as real pairs, (2, V, n): rate in rad/s and damping; n = 0 if unknown."""
         if self._rates is None:
-            network, parameters, values = self._whole
             try:
-                system = System(network, over_time=True, parameters=parameters, values=values)
-                drive = system.drive(self.source)
-                found = [find_roots(Question(system, drive, self.probe, zeros))[0] for zeros in (False, True)]
-                roots = np.concatenate(found, axis=1)
+                found = self.family.poles(self._values), self.family.zeros(self._values, self.source, self.probe)
+                roots = np.concatenate([one.roots for one in found], axis=1)
             except CircuitError:
                 roots = np.zeros((self.system.count, 0), complex)
             sharp = (np.abs(roots.imag) > 0.5 * np.abs(roots.real)) & (roots.imag > 0)

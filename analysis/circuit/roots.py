@@ -60,11 +60,16 @@ class Question:
         return Question(self.system.only(rows), self.drive, self.probe, self.zeros)
 
 
-def find_roots(question: Question) -> tuple[ComplexArray, int]:
-    """The roots (V, n) of `question` other than zero, and how many are zero (the least over V).
+@dataclass(frozen=True, slots=True)
+class Roots:
+    """Roots (V, n) other than zero; rows with fewer end in NaN. `at_zero`: how many are zero (the least over V)."""
 
-    Rows with fewer roots end in NaN.
-    """
+    roots: ComplexArray
+    at_zero: int
+
+
+def find_roots(question: Question, guess: ComplexArray | None = None) -> Roots:
+    """The roots of `question`. `guess` (V, n) may say near which values they are."""
     ends = np.array([[_FAR_LOW, _FAR_HIGH]], complex)
     at_zero, total = np.round((question.slope(ends) * ends).real).T
     if not (np.isfinite(at_zero).all() and np.isfinite(total).all()):
@@ -75,8 +80,16 @@ def find_roots(question: Question) -> tuple[ComplexArray, int]:
         rows = np.flatnonzero(counts == count)
         if count > 0:
             part = question if len(rows) == len(counts) else question.only(rows)
-            roots[rows, :count] = _iterate(part, _start(part, int(count), at_zero[rows]), at_zero[rows])
-    return roots, int(at_zero.min())
+            near = guess[rows] if guess is not None and guess.shape[1] == count else None
+            start = _start(part, int(count), at_zero[rows]) if near is None else _apart(near)
+            roots[rows, :count] = _iterate(part, start, at_zero[rows])
+    return Roots(roots, int(at_zero.min()))
+
+
+def _apart(guess: ComplexArray) -> ComplexArray:
+    """Guesses (V, n), equal ones moved a little apart."""
+    k = np.arange(1, guess.shape[1] + 1)
+    return np.asarray(guess * (1.0 + 1e-7 * k * np.exp(1j * (k - 1))))
 
 
 def _start(question: Question, count: int, at_zero: FloatArray) -> ComplexArray:
@@ -84,8 +97,7 @@ def _start(question: Question, count: int, at_zero: FloatArray) -> ComplexArray:
     if question.system.count > 1:
         middle = question.only(np.array([0]))
         guess = _iterate(middle, _start(middle, count, at_zero[:1]), at_zero[:1])
-        spread = 1.0 + 1e-7 * np.arange(1, count + 1) * np.exp(1j * np.arange(count))
-        return np.asarray(np.repeat(guess * spread, question.system.count, axis=0))
+        return np.repeat(_apart(guess), question.system.count, axis=0)
     decades = np.arange(-12.0, 20.01, 0.2)
     s = 10.0**decades
     below = np.maximum.accumulate((question.slope(s[None, :].astype(complex))[0] * s).real - at_zero[0])

@@ -17,6 +17,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from reactance.analysis.circuit.charge import ChargeLaw
+from reactance.analysis.circuit.family import Family
 from reactance.analysis.circuit.modal import expand
 from reactance.analysis.circuit.network import (
     Amplifier,
@@ -197,8 +198,7 @@ def _greatest_level(network: Network) -> float:
 
 def _horizon(network: Network, probe: tuple[str, str]) -> float:
     """Long enough for the linear network, whose capacitances are the greatest, to settle to 1e-15."""
-    system = System(network, over_time=True)
-    modes = expand(system, system.drive(None), probe)
+    modes = expand(Family(network), None, probe, None)
     p, r = modes.poles[0], modes.residues[0]
     if (p.real > 0).any():
         raise CircuitError("the network is unstable")

@@ -7,9 +7,9 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import ArrayLike
 
+from reactance.analysis.circuit.family import Family
 from reactance.analysis.circuit.network import ComplexArray, Network, Parameter
 from reactance.analysis.circuit.response import Response, evaluate
-from reactance.analysis.circuit.system import System
 
 __all__ = ["Response", "frequency_response"]
 
@@ -22,6 +22,7 @@ def frequency_response(
     *,
     parameters: Sequence[Parameter] = (),
     values: ArrayLike | None = None,
+    family: Family | None = None,
 ) -> ComplexArray:
     """Voltage at `probe` per volt or ampere of `source`, all other sources at zero.
 
@@ -33,6 +34,6 @@ def frequency_response(
     Raises `CircuitError` where the network has no unique solution.
     """
     grid = None if values is None else np.asarray(values, float)
-    system = System(network, over_time=False, parameters=parameters, values=grid)
+    system = (family or Family(network, parameters)).system(grid, over_time=False)
     answer = evaluate(system, source, system.probe(probe), np.atleast_1d(np.asarray(frequencies, float))[None, :])
     return answer[0] if values is None else answer

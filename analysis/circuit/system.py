@@ -86,6 +86,10 @@ class System:
         self.count = 1 if values is None else len(values)
         self.nodes = self._index_nodes()
         self._coefficients(parameters, values)
+        self.edges = self._edges()  # candidates for the forest: ideal branches, gains (output to ground), then branches
+        self.silence = Drive(
+            np.zeros(len(self.branches)), np.zeros(len(self.parts.ideal)), np.zeros(len(self.parts.currents))
+        )
         self._forests: dict[tuple[int, ...], Forest] = {}
         self._decades: dict[int, tuple[int, ...]] = {}
         self._drives: dict[str | None, Drive] = {}
@@ -162,20 +166,13 @@ class System:
         self._fixed = _stack(fixed, 1)
         self._varied = _stack(varied, self.count)
 
-    @cached_property
-    def edges(self) -> tuple[Edge, ...]:
-        """Candidates for the forest: ideal branches, gains (output to ground), then branches."""
+    def _edges(self) -> tuple[Edge, ...]:
         at = self.nodes
         return (
             *(Edge(at[branch.a], at[branch.b]) for branch in self.parts.ideal),
             *(Edge(at[gain.out], 0) for gain in self.parts.gains),
             *(Edge(at[branch.a], at[branch.b]) for branch in self.branches),
         )
-
-    @cached_property
-    def silence(self) -> Drive:
-        """Every source at zero."""
-        return Drive(np.zeros(len(self.branches)), np.zeros(len(self.parts.ideal)), np.zeros(len(self.parts.currents)))
 
     def drive(self, source: str | None = None) -> Drive:
         """Unit excitation of one source, or (None) every source at its DC level."""

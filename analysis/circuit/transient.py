@@ -13,11 +13,11 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from reactance.analysis.circuit import features
+from reactance.analysis.circuit.family import Family
 from reactance.analysis.circuit.modal import PoleResidue, expand, first
 from reactance.analysis.circuit.motion import Pieces, settle_pieces
 from reactance.analysis.circuit.network import ComplexArray, FloatArray, Network, Parameter
 from reactance.analysis.circuit.phi import phi
-from reactance.analysis.circuit.system import System
 
 Number = float | FloatArray
 Modes = tuple[ComplexArray, ComplexArray, FloatArray, FloatArray]
@@ -158,11 +158,10 @@ def start_response(
     *,
     parameters: Sequence[Parameter] = (),
     values: ArrayLike | None = None,
+    family: Family | None = None,
 ) -> TimeResponse:
     """The probe's voltage when all sources step from 0 to their DC level at t = 0, every capacitor empty."""
-    grid = None if values is None else np.asarray(values, float)
-    system = System(network, over_time=True, parameters=parameters, values=grid)
-    found = expand(system, system.drive(None), system.probe(probe))
+    found = expand(family or Family(network, parameters), None, probe, values)
     return step(found if values is not None else first(found))
 
 
