@@ -13,7 +13,7 @@ from reactance.analysis.brief import read_brief
 from reactance.analysis.exports import ExportFiles
 from reactance.analysis.files import BoardFiles
 from reactance.analysis.report import Check, Report
-from reactance.analysis.study import Study, analyse
+from reactance.analysis.study import Memory, Study, analyse
 from reactance.daemon.demo import FILE, STEM, Save, saves
 from reactance.daemon.demo.edif import net_name
 
@@ -54,8 +54,9 @@ def board_files(save: Save) -> BoardFiles:
 
 @pytest.fixture(scope="module")
 def studies() -> dict[str, Study]:
-    """Every save, analysed, by title."""
-    return {save.title: analyse(board_files(save)) for save in SAVES}
+    """Every save, analysed with what the one before left in memory, by title."""
+    memory = Memory()
+    return {save.title: analyse(board_files(save), memory=memory) for save in SAVES}
 
 
 def checks(report: Report) -> dict[str, Check]:
