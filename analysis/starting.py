@@ -124,7 +124,8 @@ def start_measures(networks: SignalNetworks, settle: SettleTable | None) -> Resu
         if settle is not None:
             near = f"{float(settle.within):.3g}" if settle.within.share else format_quantity(float(settle.within), "V")
             found["settling"] = _start_band(start, settling, large_settling, "s", f"within {near}")
-        found["startup_peak"] = _start_band(start, peak, StartMotion.farthest, "V", "")
+        unlimited = "amplifiers taken without supply limits" if networks.start_region.amplifiers else ""
+        found["startup_peak"] = _start_band(start, peak, StartMotion.farthest, "V", unlimited)
     except CircuitError as problem:
         names = ("settling", "startup_peak") if settle is not None else ("startup_peak",)
         return {name: unknown("s" if name == "settling" else "V", str(problem)) for name in names}
