@@ -10,6 +10,8 @@ from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass, field, replace
 from typing import TypeVar
 
+import numpy as np
+
 from reactance.analysis.bias import Bias, solve_bias
 from reactance.analysis.board import Board, ModelMemory, resolve_board
 from reactance.analysis.brief import read_brief
@@ -119,7 +121,14 @@ def study(
     progress: Callable[[int, int], None] | None = None,
 ) -> Study:
     """Solve a board. `solved` holds the results of blocks that are known already; `progress` as for `analyse`."""
-    known = solved or Solved()
+    # Far from its poles a response may overflow on the way to its limit; a figure that is not finite is judged unknown.
+    with np.errstate(over="ignore", under="ignore", divide="ignore", invalid="ignore"):
+        return _study(board, export_sha256, solved or Solved(), progress)
+
+
+def _study(
+    board: Board, export_sha256: str, known: Solved, progress: Callable[[int, int], None] | None
+) -> Study:
     bias = solve_bias(board)
     roles = assign_roles(board)
     nets = rails_to_study(board)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from itertools import pairwise
 
 import mpmath as mp
 
@@ -76,7 +77,7 @@ class LowPass:
             for i in range(count + 1)
         ]
         before = f(grid[0])
-        for a, b in zip(grid, grid[1:], strict=False):
+        for a, b in pairwise(grid):
             after = f(b)
             if before * after <= 0:
                 return mp.findroot(f, (a, b), solver="anderson")

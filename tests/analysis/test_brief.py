@@ -156,7 +156,7 @@ def test_any_text_is_read_or_refused_with_a_message(text: str) -> None:
     try:
         read_brief(text.encode("utf-8", "surrogatepass"), "b.toml")
     except InputError as problem:
-        assert problem.place.file == "b.toml"  # noqa: PT017
+        assert problem.place.file == "b.toml"
 
 
 @given(st.integers(0, len(WHOLE) - 1), st.sampled_from(["", "=", "[", '"', "{", "\n", "x", "-1", "'5 V'"]))
@@ -165,4 +165,4 @@ def test_a_damaged_brief_is_read_or_refused_with_a_message(at: int, put: str) ->
     try:
         read_brief(text.encode(), "b.toml")
     except InputError as problem:
-        assert problem.place.file == "b.toml"  # noqa: PT017
+        assert problem.place.file == "b.toml"

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from reactance.analysis.design import Design
 from reactance.analysis.difference import edits
 

@@ -7,6 +7,7 @@ from dataclasses import replace
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
 from reactance.analysis.design import Design, Net, Part, Pin
 from reactance.analysis.difference import edits
 from reactance.analysis.report import Edit

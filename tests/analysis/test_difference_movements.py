@@ -8,6 +8,7 @@ import msgspec
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from reactance.analysis.design import Design, Net, Part, Pin
 from reactance.analysis.difference import compare, movements, sentence
 from reactance.analysis.report import (

@@ -7,6 +7,7 @@ import re
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from reactance.analysis.duties import Assigned, BriefedPath, duties
 from reactance.analysis.net_kinds import classify_nets
 from reactance.analysis.report import DutyKind

@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 
 import pytest
+
 from reactance.analysis.net_kinds import classify_nets
 from reactance.analysis.signal_paths import shown_paths
 from reactance.analysis.topology import Branch, BranchKind, Terminal, Topology, prefix_of

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
 from reactance.analysis.design import Design, InputError
 from reactance.analysis.exports.edif import FormMemory, read_edif
 

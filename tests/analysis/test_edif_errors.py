@@ -6,6 +6,7 @@ import random
 from collections.abc import Iterator
 
 import pytest
+
 from reactance.analysis.design import Design, InputError
 from reactance.analysis.exports.edif import FormMemory, read_edif
 from reactance.analysis.exports.limits import Limits

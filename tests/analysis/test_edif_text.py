@@ -7,6 +7,7 @@ import string
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
 from reactance.analysis.design import Design
 from reactance.analysis.exports.edif import FormMemory, read_edif
 from reactance.analysis.exports.edif_forms import parsed

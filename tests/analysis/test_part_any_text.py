@@ -6,6 +6,7 @@ import math
 
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
 from reactance.analysis.design import Part, Pin
 from reactance.analysis.parts.attributes import ALIASES, NOT_FITTED
 from reactance.analysis.parts.knowledge import Knowledge

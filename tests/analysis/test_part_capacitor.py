@@ -11,6 +11,7 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from reactance.analysis.design import Part, Pin, Place
 from reactance.analysis.parts.capacitor import ageing_factor, discharge_time, stored_energy
 from reactance.analysis.parts.knowledge import Knowledge, KnowledgeRow

@@ -8,6 +8,7 @@ import sys
 from types import MappingProxyType
 
 import pytest
+
 from reactance.analysis.design import InputError, Part, Pin, Place
 from reactance.analysis.parts.attributes import ALIASES, NOT_FITTED, folded
 from reactance.analysis.parts.knowledge import Knowledge, KnowledgeRow, validate_knowledge, validate_settings

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from reactance.analysis.design import Part, Pin
 from reactance.analysis.parts.knowledge import Knowledge
 from reactance.analysis.parts.models import CapacitorModel, Conditions

@@ -7,6 +7,7 @@ from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
+
 from reactance.analysis.design import Part, Pin
 from reactance.analysis.parts.knowledge import Knowledge
 from reactance.analysis.parts.models import (

@@ -7,6 +7,7 @@ import math
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from reactance.analysis.quantity import QuantityError, Unit, format_quantity, parse_quantity
 
 READ: tuple[tuple[str | int | float, Unit, float], ...] = (

@@ -12,6 +12,7 @@ from typing import Any
 
 import pytest
 import sexpdata
+
 from reactance.analysis.exports.edif import FormMemory, read_edif
 
 _DISPLAY = """(display STYLE (justify CENTERLEFT) (origin (pt {n} 20)) (orientation R0)

@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from reactance.analysis.design import Part, Pin
 from reactance.analysis.parts.band import Band
 from reactance.analysis.parts.bias import BiasCurve, HalfVoltage, estimated_half_voltage, johnson, johnson_integral

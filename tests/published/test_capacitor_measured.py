@@ -10,6 +10,7 @@ import pytest
 import scipy.signal
 import skrf
 from numpy.typing import NDArray
+
 from reactance.analysis.circuit.network import Bead, Capacitor
 from reactance.analysis.design import Part, Pin, Place
 from reactance.analysis.parts.knowledge import Connection, Knowledge, KnowledgeRow

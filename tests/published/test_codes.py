@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from reactance.analysis.parts.codes import (
     is_preferred,
     letter_tolerance,

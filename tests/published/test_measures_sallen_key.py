@@ -1,7 +1,8 @@
 """A unity-gain Sallen-Key low-pass with a one-pole amplifier, from an EDIF file.
 
-Its transfer function comes from nodal equations solved by sympy (topology: Sallen and Key, IRE Trans. Circuit Theory 2
-(1955) 74); figures by mpmath; noise through scipy's Lyapunov solver; the ideal shape: Q = sqrt(R1 R2 C1 C2)/(C2(R1+R2)).
+Its transfer function comes from nodal equations solved by sympy (topology: Sallen and Key, IRE Trans. Circuit
+Theory 2 (1955) 74); figures by mpmath; noise through scipy's Lyapunov solver; the ideal shape:
+Q = sqrt(R1 R2 C1 C2)/(C2 (R1 + R2)).
 """
 
 from __future__ import annotations
