@@ -212,19 +212,20 @@ def rise_time(response: TimeResponse) -> FloatArray:
     if not spiked.any():
         return high - low
     end = np.asarray(response.settling_time(0.1 * np.abs(final)))
-    after = np.linspace(0.0, 1.0, SAMPLES)
-    times = np.where(spiked, last_low, 0.0)[:, None] + np.where(spiked, end - last_low, 0.0)[:, None] * after
+    found = high - low
+    for row in np.flatnonzero(spiked):
+        alone = TimeResponse(response.pieces.rows(slice(row, row + 1)), True)
+        found[row] = _first_reached(alone, 0.9 * final[row], last_low[row], end[row]) - last_low[row]
+    return found
+
+
+def _first_reached(response: TimeResponse, level: float, start: float, end: float) -> float:
+    """The first time in [start, end] s at which a single response reaches `level`, which it has reached at `end`."""
     for _ in range(NARROWED):
-        reached = np.array([_reached(response, row, times[row], level) for row, level in enumerate(0.9 * final)])
-        first = np.maximum(reached.argmax(axis=1), 1)
-        rows = np.arange(len(times))
-        start, width = times[rows, first - 1], times[rows, first] - times[rows, first - 1]
-        times = start[:, None] + width[:, None] * after
-    return np.where(spiked, times[:, -1] - last_low, high - low)
-
-
-def _reached(response: TimeResponse, row: int, times: FloatArray, level: float) -> FloatArray:
-    values = np.atleast_2d(response.value(times))[row]
-    reached = values >= level if level > 0 else values <= level
-    reached[-1] = True  # the last time is where the level is known to be reached
-    return np.asarray(reached)
+        times = np.linspace(start, end, SAMPLES)
+        values = response.value(times)[0]
+        reached = values >= level if level > 0 else values <= level
+        reached[-1] = True
+        first = max(int(reached.argmax()), 1)
+        start, end = float(times[first - 1]), float(times[first])
+    return end
