@@ -210,13 +210,13 @@ def rise_time(response: TimeResponse) -> FloatArray:
     last_low = np.asarray(response.settling_time(0.9 * np.abs(final)))
     spiked = (high < last_low) & (step_overshoot(response) < 0.9)
     if not spiked.any():
-        return high - low
+        return np.asarray(high - low)
     end = np.asarray(response.settling_time(0.1 * np.abs(final)))
     found = high - low
     for row in np.flatnonzero(spiked):
         alone = TimeResponse(response.pieces.rows(slice(row, row + 1)), True)
         found[row] = _first_reached(alone, 0.9 * final[row], last_low[row], end[row]) - last_low[row]
-    return found
+    return np.asarray(found)
 
 
 def _first_reached(response: TimeResponse, level: float, start: float, end: float) -> float:
