@@ -13,6 +13,7 @@ from reactance.analysis.circuit.network import CircuitError
 from reactance.analysis.couplings import coupling_limits, coupling_names, solve_coupling
 from reactance.analysis.dc import dc_band
 from reactance.analysis.filters import filter_limits, solve_filter
+from reactance.analysis.likeness import likeness
 from reactance.analysis.measures import find_measure
 from reactance.analysis.paths import PathError, SignalNetworks, SignalPath
 from reactance.analysis.region import TooLargeError
@@ -46,10 +47,10 @@ def study_paths(board: Board, bias: Bias, solved: Solved, paths: Iterable[Signal
 
 
 def _solve(networks: SignalNetworks, solved: Solved) -> Results:
-    path, board = networks.path, networks.board
-    key = networks.ac.key(path.kind, networks.emf, networks.probe, path.table, board.conditions, networks.start_key())
+    path = networks.path
+    key, names = likeness(networks)
     solver = solve_coupling if path.kind == "coupling" else solve_filter
-    results = solved.get(key, lambda: solver(networks) | solve_rejections(networks))
+    results = names.back(solved.get(key, lambda: names.without(solver(networks) | solve_rejections(networks))))
     if path.kind == "coupling":
         results = {"dc": _dc(networks, solved), **results}
     return results

@@ -14,7 +14,6 @@ from reactance.analysis.brief_tables import CouplingTable, FilterTable
 from reactance.analysis.circuit.network import VoltageSource
 from reactance.analysis.circuit.operating_point import operating_point
 from reactance.analysis.elements import GROUND, node, rail_source_name, source_name
-from reactance.analysis.parts.models import CapacitorModel
 from reactance.analysis.region import Region, grow, is_stiff
 
 EMF = "EMF"
@@ -143,17 +142,6 @@ class SignalNetworks:
         floating = set(point.floating)
         solved = {net: point.voltages.get(net) for net in block.nets if net not in floating}
         return {**solved, **{net: volts for net, volts in self.bias.volts.items() if volts is not None}}
-
-    def start_key(self) -> str:
-        """The content of the start's network, for couplings; a filter's step needs none."""
-        if self.path.kind != "coupling":
-            return ""
-        laws = [
-            (section.name, section.model.value, section.model.ageing, section.model.bias)
-            for section in self.start_region.sections
-            if isinstance(section.model, CapacitorModel)
-        ]
-        return self.start.key("start", laws)
 
     def rails(self) -> tuple[tuple[str, str], ...]:
         """Rails that the path hangs on, each with the name of its source in `ac`."""
