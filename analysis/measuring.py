@@ -23,6 +23,7 @@ from reactance.analysis.values import Value, banded
 
 MOST_NAMED = 3
 LEAST_SHARE = 0.05
+ROUGH = 2e-4  # share to which a rough measure is exact
 SEED = 1  # of every Monte Carlo run: the same board gives the same yield
 
 
@@ -48,6 +49,9 @@ def band(
     if not value.known:
         return value
     value = _with_shares(value, found.shares, parameters)
+    if finer != FINER:
+        rows = ([p.nominal for p in parameters], found.at_low.tolist(), found.at_high.tolist())
+        value = replace(value, at=tuple(map(tuple, rows)))
     if samples:
         value = replace(value, samples=tuple(monte_carlo(measure, parameters, samples, SEED).tolist()))
     return value
@@ -124,10 +128,21 @@ class Measuring:
         unit: str,
         note: str,
         missing: str,
-        finer: float = FINER,
+        rough: Callable[[PoleResidue], FloatArray] | None = None,
     ) -> Value:
-        """The band of a measure of poles and residues, exact to a share `finer` of itself."""
-        return self._band(lambda values: measure(self.modes(values)), unit, note, missing, finer)
+        """The band of a measure of poles and residues.
+
+        Where `rough` is given it finds which sets of values are extreme; the figures there are those of `measure`.
+        """
+        if rough is None or not self.parameters:
+            return self._band(lambda values: measure(self.modes(values)), unit, note, missing)
+        value = self._band(lambda values: rough(self.modes(values)), unit, note, missing, ROUGH)
+        if not value.known or not value.at:
+            return value
+        figures = measure(self.modes(np.array(value.at)))
+        return replace(
+            value, nominal=float(figures[0]), low=float(figures.min()), high=float(figures.max()), at=()
+        )
 
     def stepped(self, measure: Callable[[TimeResponse], FloatArray], unit: str, note: str, missing: str) -> Value:
         """The band of a measure of step responses."""

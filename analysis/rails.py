@@ -26,7 +26,6 @@ from reactance.analysis.reuse import Results
 from reactance.analysis.values import Value, exactly, unknown
 
 LOWEST_FREQUENCY = 1e3  # Hz, of the band where the brief states none
-RHYTHM_EXACT = 1e-3  # share to which the excursion at the worst rate is found for many sets of values
 KNEE = 0.35  # highest frequency of an edge is 0.35 over its rise time (common practice)
 
 
@@ -100,7 +99,10 @@ def _in_time(seen: Measuring, net: str, fed: bool, asked: Demand, current: float
     def droop(modes: PoleResidue) -> FloatArray:
         return np.asarray(ramp(modes, current, rise).peak().size)
 
-    found = {"droop": seen.modal(droop, "V", f"{amps} in {format_quantity(rise, 's')}", missing)}
+    def roughly(modes: PoleResidue) -> FloatArray:
+        return np.asarray(ramp(modes, current, rise).peak(rough=True).size)
+
+    found = {"droop": seen.modal(droop, "V", f"{amps} in {format_quantity(rise, 's')}", missing, roughly)}
     if asked.band is None:
         found["resonant_droop"] = unknown("V", "the band is not stated and does not follow from the step's rise")
         return found
@@ -112,8 +114,11 @@ def _in_time(seen: Measuring, net: str, fed: bool, asked: Demand, current: float
     def excursion(modes: PoleResidue) -> FloatArray:
         return rhythm.worst(modes)[1]
 
+    def rough_excursion(modes: PoleResidue) -> FloatArray:
+        return rhythm.worst(modes, rough=True)[1]
+
     note = f"0 to {amps} and back, worst at {format_quantity(float(rhythm.worst(nominal)[0][0]), 'Hz')}"
-    found["resonant_droop"] = seen.modal(excursion, "V", note, missing, RHYTHM_EXACT)
+    found["resonant_droop"] = seen.modal(excursion, "V", note, missing, rough_excursion)
     return found
 
 

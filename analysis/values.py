@@ -11,7 +11,8 @@ class Value(msgspec.Struct, frozen=True):
     """Nominal, low and high of one measure, or why they could not be computed.
 
     `matters` names the parts that move the figure most, with their shares; `note` says what went into it; `samples`
-    are figures of a Monte Carlo run, where one was asked for.
+    are figures of a Monte Carlo run, where one was asked for; `at` the nominal values of the uncertain attributes and
+    those at the extremes, while the figure is only roughly known.
     """
 
     nominal: float | None
@@ -22,6 +23,7 @@ class Value(msgspec.Struct, frozen=True):
     missing: str = ""
     matters: tuple[tuple[str, float], ...] = ()
     samples: tuple[float, ...] = ()
+    at: tuple[tuple[float, ...], ...] = ()
 
     @property
     def known(self) -> bool:

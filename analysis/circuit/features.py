@@ -23,6 +23,7 @@ _MOST = 1500  # samples at most over the swings of one mode, where its envelope 
 _STRETCHES, _RIVALS = 24, 5  # stretches of time of which the best are looked at again
 _LATE_PER_DECADE = 40  # times at which a mode with many swings is looked at
 _FOLLOWED = 480  # samples over its swings where a first crossing is sought
+_RINGS = 0.4  # turning over damping; below it a mode is gone after half a swing, and even times show it
 _CANDIDATES = 4
 
 
@@ -75,7 +76,7 @@ def _times(pieces: Pieces, k: int, rough: bool) -> FloatArray:
         end[:, None] * np.linspace(0.0, 1.0, 17),
         floor[:, None] * (np.maximum(end, floor) / floor)[:, None] ** shares,
     ]
-    for i in np.flatnonzero((np.abs(pieces.poles.imag) > 0.1 * damping).any(axis=0)):
+    for i in np.flatnonzero((np.abs(pieces.poles.imag) > _RINGS * damping).any(axis=0)):
         swings = _swings(pieces.poles[:, i], _FIRST)
         found.append(swings[:, 1 : _FIRST // 2 : 2] if rough else swings)
     return np.asarray(np.clip(np.concatenate(found, axis=1), 0.0, end[:, None]))

@@ -46,13 +46,13 @@ class Rhythm:
         rates = _whole_band(first, amplitude, rise, low, high)
         return cls(amplitude, rise, low, high, rates, np.array([_mode_of(rate, modes[0][0]) for rate in rates]))
 
-    def worst(self, response: PoleResidue) -> tuple[FloatArray, FloatArray]:
-        """The rate (V,) in Hz and the greatest |v − mean| (V,) in the steady state there."""
+    def worst(self, response: PoleResidue, *, rough: bool = False) -> tuple[FloatArray, FloatArray]:
+        """The rate (V,) in Hz and the greatest |v − mean| (V,) in the steady state there; `rough` to compare many."""
         modes = modes_of(response)
         near = self._followed(modes[0])
         size = _excursion(modes, self.amplitude, self.rise, near, rough=True)
         rate = _vertex(near, size)
-        return rate, _excursion(modes, self.amplitude, self.rise, rate[:, None], rough=False)[:, 0]
+        return rate, _excursion(modes, self.amplitude, self.rise, rate[:, None], rough=rough)[:, 0]
 
     def _followed(self, poles: ComplexArray) -> FloatArray:
         """Rates to look at (V, F): about each of `rates`, moved as the mode that it belongs to moves."""

@@ -68,9 +68,9 @@ class TimeResponse:
         """v as t grows without bound: inf where it keeps growing, NaN where it repeats for ever."""
         return self._out(self.pieces.final())
 
-    def peak(self, about: ArrayLike = 0.0) -> Extreme:
-        """The greatest |v(t) − about| over t > 0."""
-        return self._extreme(about, 0.0)
+    def peak(self, about: ArrayLike = 0.0, *, rough: bool = False) -> Extreme:
+        """The greatest |v(t) − about| over t > 0; `rough`, for comparing many, from the first swings alone."""
+        return self._extreme(about, 0.0, rough)
 
     def highest(self, about: ArrayLike = 0.0) -> Extreme:
         """The greatest v(t) − about over t > 0."""
@@ -102,8 +102,8 @@ class TimeResponse:
             features.first_passing(self.pieces, high * final) - features.first_passing(self.pieces, low * final)
         )
 
-    def _extreme(self, about: ArrayLike, sign: float) -> Extreme:
-        time, size = features.greatest(self.pieces, self._each(about), sign)
+    def _extreme(self, about: ArrayLike, sign: float, rough: bool = False) -> Extreme:
+        time, size = features.greatest(self.pieces, self._each(about), sign, rough=rough)
         return Extreme(self._out(time), self._out(size))
 
     def _each(self, x: ArrayLike) -> FloatArray:
