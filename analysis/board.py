@@ -19,9 +19,9 @@ from reactance.analysis.design import Design, InputError, Part, Pin, Place, Prob
 from reactance.analysis.files import BoardFiles as BoardFiles
 from reactance.analysis.files import wanted_files as wanted_files
 from reactance.analysis.net_kinds import NetClass, classify_nets
+from reactance.analysis.parts.alike import Alike
 from reactance.analysis.parts.knowledge import Knowledge, KnowledgeRow, validate_knowledge, validate_settings
 from reactance.analysis.parts.models import CapacitorModel, Conditions, PartModel, ResistorModel
-from reactance.analysis.parts.resolve import resolve_part
 from reactance.analysis.parts.sections import sections, through
 
 _T = TypeVar("_T")
@@ -98,6 +98,20 @@ class Board:
         return _index((pin.net, pin) for pin in self.pins)
 
     @cached_property
+    def pins_toward(self) -> Mapping[str, tuple[DescribedPin, ...]]:
+        """The described input resistances that return to each net."""
+        return _index(
+            (pin.toward, pin)
+            for pin in self.pins
+            if pin.toward is not None and pin.table.drives is None and pin.table.resistance is not None
+        )
+
+    @cached_property
+    def amplifiers_by_out(self) -> Mapping[str, tuple[PlacedAmplifier, ...]]:
+        """The amplifiers that drive each net."""
+        return _index((amplifier.out, amplifier) for amplifier in self.amplifiers)
+
+    @cached_property
     def terminals_by_net(self) -> Mapping[str, tuple[tuple[Part, Pin], ...]]:
         """Pins of fitted parts that are no R, C, L or bead, on each net."""
         return _index(
@@ -142,12 +156,13 @@ class ModelMemory:
     def resolve(self, parts: Iterable[Part], knowledge: Knowledge, conditions: Conditions) -> dict[str, PartModel]:
         """The model of each part by reference designator; forgets parts that are no longer there."""
         before = self._known if self._under == (knowledge, conditions) else {}
+        alike = Alike(knowledge, conditions)
         self._under, self._known = (knowledge, conditions), {}
         models: dict[str, PartModel] = {}
         for part in parts:
             found = before.get(id(part))
             if found is None or found[0] is not part:
-                found = (part, resolve_part(part, knowledge, conditions))
+                found = (part, alike.resolve(part))
             self._known[id(part)] = found
             models[part.refdes] = found[1]
         return models

@@ -85,13 +85,6 @@ class _Growth:
         self.pins: dict[str, DescribedPin] = {}
         self.amplifiers: dict[str, PlacedAmplifier] = {}
         self.queue: deque[str] = deque()
-        self._outs: dict[str, list[PlacedAmplifier]] = {}
-        for amplifier in board.amplifiers:
-            self._outs.setdefault(amplifier.out, []).append(amplifier)
-        self._toward: dict[str, list[DescribedPin]] = {}
-        for pin in board.pins:
-            if pin.toward is not None and pin.table.drives is None and pin.table.resistance is not None:
-                self._toward.setdefault(pin.toward, []).append(pin)
 
     def reach(self, net: str) -> None:
         """Take in a net: as an edge if it is held, else to be visited."""
@@ -114,13 +107,13 @@ class _Growth:
                 raise TooLargeError(f"more than {MOST_SECTIONS} parts reach each other through {widest}")
             self.reach(section.a)
             self.reach(section.b)
-        for pin in (*self.board.pins_by_net.get(net, ()), *self._toward.get(net, ())):
+        for pin in (*self.board.pins_by_net.get(net, ()), *self.board.pins_toward.get(net, ())):
             self.pins[f"{pin.at}@{pin.net}"] = pin
             if pin.table.drives is None and pin.table.resistance is not None:
                 self.reach(pin.net)
                 if pin.toward is not None:
                     self.reach(pin.toward)
-        for amplifier in self._outs.get(net, ()):
+        for amplifier in self.board.amplifiers_by_out.get(net, ()):
             self.amplifiers[amplifier.name] = amplifier
             self.reach(amplifier.plus)
             self.reach(amplifier.minus)
