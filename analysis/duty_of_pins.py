@@ -68,10 +68,13 @@ def _around_part(capacitor: Branch, view: View) -> Found | None:
         if beside and ends in ({"driver", "receiver"}, {"part"}, {"driver", "part"}):
             with_it = f"with {beside[0].refdes} in parallel"
             return Found("feedback", f"from {one.label} to {other.label}, {with_it}")
-        own = _has_one_output(one, topology) or "" != pin_roles.channel(one) == pin_roles.channel(other)
-        if ends == {"driver", "receiver"} and inverting and own:
+        if ends == {"driver", "receiver"} and inverting and _of_one_amplifier(one, other, topology):
             return Found("feedback", f"from output to inverting input: {one.label}, {other.label}")
     return None
+
+
+def _of_one_amplifier(one: Terminal, other: Terminal, topology: Topology) -> bool:
+    return _has_one_output(one, topology) or "" != pin_roles.channel(one) == pin_roles.channel(other)
 
 
 def _gain_leg(capacitor: Branch, view: View) -> Found | None:
