@@ -91,6 +91,10 @@ class VoltOrShare(float):
         made.share = share
         return made
 
+    def __repr__(self) -> str:
+        """Tells a share from a voltage: keys of solved blocks are made of this."""
+        return f"{float(self)!r}{' of the whole' if self.share else ' V'}"
+
     def volts(self, whole: float) -> float:
         """The voltage, where a share is taken of `whole` volts."""
         return float(self) * abs(whole) if self.share else float(self)

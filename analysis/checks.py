@@ -68,7 +68,7 @@ def _raw_distance(value: float, limit: Limit) -> float:
     distances = []
     for bound, sign in ((limit.max, 1.0), (limit.min, -1.0)):
         if bound is not None:
-            distances.append(sign * (bound - value) / (abs(bound) or 1.0))
+            distances.append(sign * (bound - value) / (abs(bound) or 1.0) + 0.0)  # no −0
     return min(distances)
 
 

@@ -18,19 +18,20 @@ from reactance.analysis.circuit.sweep import frequency_response
 from reactance.analysis.elements import node, rail_source
 from reactance.analysis.measuring import SEED
 from reactance.analysis.parts.models import CapacitorModel
-from reactance.analysis.region import grow, is_stiff
+from reactance.analysis.region import TooLargeError, grow, is_stiff
 from reactance.analysis.reuse import Solved
 from reactance.analysis.values import Value
 
 
 @dataclass(frozen=True, slots=True)
 class DcBand:
-    """A DC voltage in volts with its extremes."""
+    """A DC voltage in volts with its extremes; they are infinite where they could not be found, as `note` says."""
 
     nominal: float
     low: float
     high: float
     samples: tuple[float, ...] = ()
+    note: str = ""
 
 
 def conducts(section: Section) -> bool:
@@ -44,7 +45,12 @@ def dc_band(board: Board, bias: Bias, solved: Solved, a: str, b: str, *, upper: 
 
     With `upper` rails are at their upper tolerance. Both potentials must be defined.
     """
-    region = grow(board, (a, b), lambda net: is_stiff(board, net), conducts)
+    try:
+        region = grow(board, (a, b), lambda net: is_stiff(board, net), conducts)
+    except TooLargeError as problem:
+        volts = bias.upper if upper else bias.volts
+        nominal = (volts[a] or 0.0) - (volts[b] or 0.0)
+        return DcBand(nominal, -math.inf, math.inf, note=f"its spread is not known: {problem}")
     rails = tuple(
         rail_source(net, volts)
         for net in region.edges
@@ -102,5 +108,3 @@ def _level(element: object) -> float:
     if isinstance(element, CurrentSource):
         return element.current
     return 0.0
-
-

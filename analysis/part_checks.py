@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
+
+from msgspec.structs import replace
 
 from reactance.analysis.bias import Bias
 from reactance.analysis.board import Board, Section
@@ -12,37 +14,58 @@ from reactance.analysis.parts.models import CapacitorModel
 from reactance.analysis.quantity import format_quantity
 from reactance.analysis.report import Check, Limit
 from reactance.analysis.reuse import Solved
-from reactance.analysis.values import Value, exactly, unknown
+from reactance.analysis.values import Value, banded, exactly, unknown
 
 
 def part_checks(board: Board, bias: Bias, solved: Solved) -> Iterable[Check]:
-    """Stress, polarity and range of every fitted capacitor."""
+    """Stress, polarity and range of every fitted capacitor; of an array, the stress of its worst section."""
+    sections: dict[str, list[Section]] = {}
     for section in board.capacitors():
-        model = section.model
-        if not isinstance(model, CapacitorModel) or section.name != section.refdes:
+        sections.setdefault(section.refdes, []).append(section)
+    for members in sections.values():
+        section, model = members[0], members[0].model
+        if not isinstance(model, CapacitorModel):
             continue
-        yield _stress(board, bias, solved, section, model)
+        yield _stress(board, bias, solved, members, model)
         if model.polarised:
             yield _polarity(board, bias, solved, section, model)
         if model.dielectric_range is not None:
             yield _range(board, section, model.dielectric_range)
 
 
-def _stress(board: Board, bias: Bias, solved: Solved, section: Section, model: CapacitorModel) -> Check:
-    check_id, limit = f"part:{section.refdes}:stress", Limit(max=model.derating)
+def _stress(
+    board: Board, bias: Bias, solved: Solved, members: Sequence[Section], model: CapacitorModel
+) -> Check:
+    check_id, limit = f"part:{model.refdes}:stress", Limit(max=model.derating)
     if model.rated_voltage is None:
         value = unknown("1", "its rated voltage is not stated")
         return judge(check_id, "part", "stress", value, None)
+    values = [_stress_of(board, bias, solved, section, model.rated_voltage) for section in members]
+    if len(values) > 1:
+        values = [
+            replace(value, note=f"the section at pins {section.pin_a} and {section.pin_b}: {value.note}")
+            for section, value in zip(members, values, strict=True)
+        ]
+    worst = max((v for v in values if v.nominal is not None), key=lambda v: v.nominal or 0.0, default=values[0])
+    missing = next((value for value in values if not value.known), None)
+    fails = worst.nominal is not None and worst.nominal > model.derating
+    return judge(check_id, "part", "stress", worst if fails or missing is None else missing, limit)
+
+
+def _stress_of(board: Board, bias: Bias, solved: Solved, section: Section, rated: float) -> Value:
+    """The stress of one section of a capacitor rated for `rated` volts."""
     band = _across(board, bias, solved, section, upper=True)
     if isinstance(band, str):
-        return judge(check_id, "part", "stress", unknown("1", band), limit)
+        return unknown("1", band)
     ends = sorted((abs(band.low), abs(band.high)))
     least = 0.0 if band.low <= 0.0 <= band.high else ends[0]
-    rated = model.rated_voltage
     note = f"{format_quantity(abs(band.nominal), 'V')} across {format_quantity(rated, 'V')} rated"
-    samples = tuple(abs(volts) / rated for volts in band.samples)
-    value = Value(abs(band.nominal) / rated, least / rated, ends[1] / rated, "1", note, samples=samples)
-    return judge(check_id, "part", "stress", value, limit)
+    value = banded(abs(band.nominal) / rated, least / rated, ends[1] / rated, "1", _joined(note, band), "")
+    return replace(value, samples=tuple(abs(volts) / rated for volts in band.samples))
+
+
+def _joined(note: str, band: DcBand) -> str:
+    return f"{note}; {band.note}" if band.note else note
 
 
 def _polarity(board: Board, bias: Bias, solved: Solved, section: Section, model: CapacitorModel) -> Check:
@@ -50,12 +73,10 @@ def _polarity(board: Board, bias: Bias, solved: Solved, section: Section, model:
     band = _across(board, bias, solved, section, upper=False)
     if isinstance(band, str):
         return judge(check_id, "part", "polarity", unknown("V", band), limit)
-    note = f"positive pin {model.positive_pin}"
-    value = Value(band.nominal, band.low, band.high, "V", note, samples=band.samples)
     if model.positive_pin == section.pin_b:
-        samples = tuple(-volts for volts in band.samples)
-        value = Value(-band.nominal, -band.high, -band.low, "V", note, samples=samples)
-    return judge(check_id, "part", "polarity", value, limit)
+        band = DcBand(-band.nominal, -band.high, -band.low, tuple(-volts for volts in band.samples), band.note)
+    value = banded(band.nominal, band.low, band.high, "V", _joined(f"positive pin {model.positive_pin}", band), "")
+    return judge(check_id, "part", "polarity", replace(value, samples=band.samples), limit)
 
 
 def _range(board: Board, section: Section, dielectric: tuple[float, float]) -> Check:

@@ -20,7 +20,7 @@ from reactance.analysis.region import TooLargeError
 from reactance.analysis.rejection import solve_rejections
 from reactance.analysis.report import Check
 from reactance.analysis.reuse import Results, Solved
-from reactance.analysis.values import Value, exactly, unknown
+from reactance.analysis.values import Value, banded, exactly, unknown
 
 
 @dataclass(frozen=True)
@@ -66,7 +66,7 @@ def _dc(networks: SignalNetworks, solved: Solved) -> Value:
     if networks.needs_level:
         return exactly(a - b, "V", f"an ideal source at 0 V stands in for what drives {path.from_net}")
     band = dc_band(board, networks.bias, solved, path.from_net, path.to_net)
-    return Value(band.nominal, band.low, band.high, "V")
+    return banded(band.nominal, band.low, band.high, "V", band.note, "")
 
 
 def _unsolved(path: SignalPath, why: str) -> Results:

@@ -48,14 +48,7 @@ def sample(pieces: Pieces, k: int, extra: FloatArray | None = None, *, rough: bo
 
 
 def _sampled(pieces: Pieces, k: int, tau: FloatArray) -> Samples:
-    value, moved = [], []
-    done = 0
-    for part in pieces.portions(tau.shape[1]):
-        v, d = part.local(k, tau[done : done + part.count])
-        value.append(v)
-        moved.append(d)
-        done += part.count
-    return Samples(k, tau, np.concatenate(value), np.concatenate(moved))
+    return Samples(k, tau, *pieces.sampled(k, tau))
 
 
 def _times(pieces: Pieces, k: int, rough: bool) -> FloatArray:
@@ -227,6 +220,8 @@ def _best_of(
     score = _score(found.value, about[:, None], sign)
     top = score.argmax(axis=1)
     time, best = found.tau[rows, top], score[rows, top]
+    if not rough:
+        best = _score(pieces.local(found.piece, time[:, None])[0], about[:, None], sign)[:, 0]
     turns = found.moved[:, :-1] * found.moved[:, 1:] < 0
     reach = np.where(turns, _score(_swell(pieces, found), about[:, None], sign), -np.inf)
     number = min(_CANDIDATES, reach.shape[1])
@@ -236,8 +231,11 @@ def _best_of(
         top = reach.argmax(axis=1)
         better = reach[rows, top] > best
         return np.where(better, found.tau[rows, top], time), np.where(better, reach[rows, top], best)
+    for beside in (top, np.maximum(top, 1) - 1):  # where the greatest sample itself is next to a turn
+        beside = np.minimum(beside, reach.shape[1] - 1)
+        reach[rows, beside] = np.where(turns[rows, beside], np.inf, reach[rows, beside])
     choice = np.argpartition(-reach, number - 1, axis=1)[:, :number]
-    choice = np.where(np.isfinite(np.take_along_axis(reach, choice, 1)), choice, reach.argmax(axis=1)[:, None])
+    choice = np.where(np.take_along_axis(turns, choice, 1), choice, reach.argmax(axis=1)[:, None])
     tau = polish_turn(pieces, found, choice)
     value, _ = pieces.local(found.piece, tau)
     value = np.where(np.take_along_axis(turns, choice, 1), value, np.nan)

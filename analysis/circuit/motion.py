@@ -15,7 +15,9 @@ from numpy.typing import ArrayLike, NDArray
 from reactance.analysis.circuit.network import ComplexArray, FloatArray
 from reactance.analysis.circuit.phi import phi
 
-_MOST_TERMS = 3_000_000  # entries of one work array
+_MOST_TERMS = 200_000  # entries of one work array: what stays in the processor's cache
+_LOST = 1e-9  # share of the greatest value that rounding may take of a sample before it is taken the slower way
+_GONE = 1e-18  # share of all modes' amplitudes below which a mode no longer shows
 
 
 @dataclass(frozen=True, slots=True)
@@ -55,6 +57,38 @@ class Pieces:
             tau, self.state[:, k, None, :], self.level[:, k, None], self.rate[:, k, None], bool(self.rate[:, k].any())
         )
 
+    def sampled(self, k: int, tau: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """v and dv/dt as `local`, but to within 1e-9 of the greatest |v| only: v = Re Σ A·exp(pτ) + a polynomial."""
+        values, slopes = np.empty_like(tau), np.empty_like(tau)
+        size = max(1, _MOST_TERMS // max(1, tau.shape[1] * self.poles.shape[1]))
+        for first in range(0, self.count, size):
+            rows = slice(first, first + size)
+            part = self if size >= self.count else self.rows(rows)
+            values[rows], slopes[rows], lost = part._summed(k, tau[rows])
+            if lost.any():
+                again = np.flatnonzero(lost)
+                values[first + again], slopes[first + again] = self.rows(first + again).local(k, tau[first + again])
+        return values, slopes
+
+    def _summed(self, k: int, tau: FloatArray) -> tuple[FloatArray, FloatArray, NDArray[np.bool_]]:
+        """v, dv/dt (V, T), and for which sets of values too many digits are lost (V,)."""
+        p, u, m = self.poles, self.level[:, k, None], self.rate[:, k, None]
+        still = p == 0
+        safe = np.where(still, 1.0, p)
+        lag = np.where(still, 0.0, self.residues / safe)
+        rest = lag * (u + m / safe)
+        z = self.state[:, k]
+        swing = np.where(still, 0.0, z + rest)
+        drift = np.where(still, self.residues, 0.0).real.sum(axis=1)
+        once = self.direct * m[:, 0] + drift * u[:, 0] - (lag * m).sum(axis=1).real
+        twice = 0.5 * drift * m[:, 0]
+        level = self.direct * u[:, 0] + self.slope * m[:, 0] + self.offset + np.where(still, z, -rest).sum(axis=1).real
+        value, moved = _modes_at(p, swing, tau)
+        value += level[:, None] + tau * (once[:, None] + tau * twice[:, None])
+        moved += once[:, None] + 2.0 * tau * twice[:, None]
+        noise = 2.0**-52 * (np.abs(swing) + np.abs(rest)).sum(axis=1)
+        return value, moved, ~(noise <= _LOST * np.abs(value).max(axis=1, initial=0.0))
+
     def gathered(self, k: NDArray[np.intp], tau: FloatArray) -> tuple[FloatArray, FloatArray]:
         """v and dv/dt at times tau (V, T) after the start of pieces k (V, T)."""
         rows = np.arange(self.count)[:, None]
@@ -74,7 +108,7 @@ class Pieces:
         value = z.sum(axis=-1).real + self.direct[:, None] * u + self.slope[:, None] * rate + self.offset[:, None]
         return np.asarray(value), np.asarray(moved)
 
-    def rows(self, where: slice) -> Pieces:
+    def rows(self, where: slice | NDArray[np.intp]) -> Pieces:
         """Some of the sets of values."""
         names = ("poles", "residues", "direct", "slope", "offset", "start", "level", "rate", "state", "period")
         return replace(self, **{name: getattr(self, name)[where] for name in names})
@@ -93,6 +127,27 @@ class Pieces:
         grows = (still & (np.abs(self.residues * u[:, None]) > 0)).any(axis=1) | (m != 0) | (p.real > 0).any(axis=1)
         value = rest.sum(axis=1).real + self.direct * u + self.offset
         return np.where(np.isfinite(self.period), np.nan, np.where(grows, np.inf, value))
+
+
+def _modes_at(p: ComplexArray, swing: ComplexArray, tau: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Re Σ swing·exp(pτ) and its slope, (V, T), for p and swing (V, n)."""
+    turning = (p.imag != 0).any(axis=0)
+    moved = p * swing
+    both = np.stack([swing, moved], axis=-1)  # (V, n, 2)
+    total = np.zeros((*tau.shape, 2))
+    if not turning.all():
+        decay = np.exp(tau[:, :, None] * p.real[:, None, ~turning])
+        total += decay @ both.real[:, ~turning]
+    if turning.any():
+        q, x = p[:, turning], both[:, turning]
+        decay = np.exp(tau[:, :, None] * q.real[:, None, :])
+        shows = decay * np.abs(swing[:, None, turning]) > _GONE * np.abs(swing).sum(axis=1)[:, None, None]
+        phase = tau[:, :, None] * q.imag[:, None, :]
+        for function, part in ((np.cos, x.real), (np.sin, -x.imag)):
+            wave = function(phase, out=np.zeros_like(phase), where=shows)
+            wave *= decay
+            total += wave @ part
+    return total[..., 0], total[..., 1]
 
 
 def settle_pieces(

@@ -18,7 +18,7 @@ def bracketed_root(
 ) -> FloatArray:
     """Roots of `function` between `low` and `high`, where it has opposite signs; any shape, each entry on its own.
 
-    To the last digits, or to `share` of each bracket. Method of T. R. Chandrupatla, Adv. Eng. Softw. 28 (1997) 145:
+    Where the signs are the same, as of a root just at an end, the end that is nearer to one. To the last digits, or to `share` of each bracket. Method of T. R. Chandrupatla, Adv. Eng. Softw. 28 (1997) 145:
     inverse quadratic interpolation where it is safe, else bisection.
     """
     a, b = low.astype(float), high.astype(float)
@@ -26,7 +26,7 @@ def bracketed_root(
     c, fc = a, fa
     t = np.full(a.shape, 0.5)
     slack = share * np.abs(b - a)
-    answer, open_ = np.where(np.abs(fa) < np.abs(fb), a, b), np.ones(a.shape, bool)
+    answer, open_ = np.where(np.abs(fa) < np.abs(fb), a, b), fa * fb < 0
     for _ in range(_ROUNDS):
         x = a + t * (b - a)
         fx = function(x)
