@@ -48,8 +48,8 @@ def dc_band(board: Board, bias: Bias, solved: Solved, a: str, b: str, *, upper: 
     try:
         region = grow(board, (a, b), lambda net: is_stiff(board, net), conducts)
     except TooLargeError as problem:
-        volts = bias.upper if upper else bias.volts
-        nominal = (volts[a] or 0.0) - (volts[b] or 0.0)
+        potentials = bias.upper if upper else bias.volts
+        nominal = (potentials[a] or 0.0) - (potentials[b] or 0.0)
         return DcBand(nominal, -math.inf, math.inf, note=f"its spread is not known: {problem}")
     rails = tuple(
         rail_source(net, volts)

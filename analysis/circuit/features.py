@@ -232,8 +232,8 @@ def _best_of(
         better = reach[rows, top] > best
         return np.where(better, found.tau[rows, top], time), np.where(better, reach[rows, top], best)
     for beside in (top, np.maximum(top, 1) - 1):  # where the greatest sample itself is next to a turn
-        beside = np.minimum(beside, reach.shape[1] - 1)
-        reach[rows, beside] = np.where(turns[rows, beside], np.inf, reach[rows, beside])
+        at = np.minimum(beside, reach.shape[1] - 1)
+        reach[rows, at] = np.where(turns[rows, at], np.inf, reach[rows, at])
     choice = np.argpartition(-reach, number - 1, axis=1)[:, :number]
     choice = np.where(np.take_along_axis(turns, choice, 1), choice, reach.argmax(axis=1)[:, None])
     tau = polish_turn(pieces, found, choice)

@@ -18,8 +18,9 @@ def bracketed_root(
 ) -> FloatArray:
     """Roots of `function` between `low` and `high`, where it has opposite signs; any shape, each entry on its own.
 
-    Where the signs are the same, as of a root just at an end, the end that is nearer to one. To the last digits, or to `share` of each bracket. Method of T. R. Chandrupatla, Adv. Eng. Softw. 28 (1997) 145:
-    inverse quadratic interpolation where it is safe, else bisection.
+    Where the signs are the same, as of a root just at an end, the end that is nearer to one. To the last digits, or to
+    `share` of each bracket. Method of T. R. Chandrupatla, Adv. Eng. Softw. 28 (1997) 145: inverse quadratic
+    interpolation where it is safe, else bisection.
     """
     a, b = low.astype(float), high.astype(float)
     fa, fb = function(a), function(b)
