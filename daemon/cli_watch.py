@@ -5,7 +5,7 @@ from __future__ import annotations
 import ipaddress
 import signal
 from collections.abc import Callable, Iterator
-from contextlib import contextmanager
+from contextlib import closing, contextmanager
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -134,9 +134,18 @@ def make_watcher(
     from reactance.daemon.engine import default_engine
     from reactance.daemon.intake import Intake
     from reactance.daemon.watcher import Watcher
+    from reactance.daemon.workers import Workers
 
-    intake = Intake(history, default_engine())
-    return Watcher(places, history, intake, tell=tell, announce=announce, polling=polling, first_pass=first_pass)
+    return Watcher(
+        places,
+        history,
+        Intake(history, default_engine()),
+        tell=tell,
+        announce=announce,
+        polling=polling,
+        first_pass=first_pass,
+        workers=Workers(),
+    )
 
 
 def announce(sentence: str) -> None:
@@ -168,10 +177,11 @@ def _once(places: tuple[Path, ...], history: History) -> int:
     from reactance.daemon.catch_up import catch_up
     from reactance.daemon.engine import default_engine
     from reactance.daemon.intake import Intake
+    from reactance.daemon.workers import Workers
 
     unreadable = False
-    with progress_bar("first pass") as progress:
-        for outcome in catch_up(places, history, Intake(history, default_engine()), progress):
+    with progress_bar("first pass") as progress, closing(Workers()) as workers:
+        for outcome in catch_up(places, history, Intake(history, default_engine()), progress, workers):
             tell(outcome)
             unreadable = unreadable or outcome.kind in ("broken", "not stored")
     return 2 if unreadable else 0

@@ -13,12 +13,13 @@ from dataclasses import replace
 from functools import lru_cache
 from pathlib import Path
 
-from reactance.analysis.design import InputError
+from reactance.analysis.design import Design, InputError
 from reactance.analysis.files import BoardFiles
-from reactance.analysis.report import Comparison, Report
+from reactance.analysis.report import Report
 from reactance.daemon.engine import Engine, Keeper, Side
-from reactance.daemon.history import History, HistoryError, RevisionRow, Saved
+from reactance.daemon.history import History, HistoryError, Saved
 from reactance.daemon.outcome import Outcome, Timings
+from reactance.daemon.workers import Analysed, Waiting, Workers, result
 
 _WARM_BOARDS = 8  # boards kept warm in memory; others start from what the history keeps
 _GIT_SECONDS = 2.0
@@ -32,18 +33,29 @@ class Intake:
         self._engine = engine
         self._memories: OrderedDict[str, Keeper] = OrderedDict()
         self._sides: OrderedDict[int, Side] = OrderedDict()
+        self._blocks: dict[str, bytes] = {}  # that workers solved, to be kept when nothing else waits
 
-    def take(self, save: Saved, files: BoardFiles, timings: Timings | None = None) -> Outcome:
-        """Analyses a save and stores it. A save that cannot be used comes back as `broken` and is not recorded:
-        it may be half-written. Raises nothing for what is in the files."""
+    def begin(self, file: str, files: BoardFiles, workers: Workers) -> Waiting | None:
+        """Has workers analyse a save that `take` will store; None where they cannot."""
+        board = self._history.board_of(file)
+        return workers.begin(files, self._history.blocks(board.id) if board else ())
+
+    def take(
+        self, save: Saved, files: BoardFiles, timings: Timings | None = None, waiting: Waiting | None = None
+    ) -> Outcome:
+        """Analyses a save, or waits for the worker that does, and stores it. A save that cannot be used comes back
+        as `broken` and is not recorded: it may be half-written. Raises nothing for what is in the files."""
         timings = timings or Timings()
         name = Path(save.file).name
-        clock = [time.perf_counter()]
         try:
+            found = result(waiting) if waiting is not None else None
+            if found is not None:
+                return self._take_over(save, files, found, timings)
+            clock = [time.perf_counter()]
             study = self._engine.analyse(files, self._memory(save.file), lambda: clock.append(time.perf_counter()))
             clock.append(time.perf_counter())
             timings = replace(timings, understand=clock[1] - clock[0], solve=clock[-1] - clock[1])
-            return self._store(save, files, (study.design, study.report, files.brief), timings)
+            return self._store(save, files, study.design, study.report, timings)
         except InputError as error:
             return Outcome("broken", save.file, name, message=str(error), timings=timings)
         except HistoryError as error:
@@ -53,6 +65,13 @@ class Intake:
             traceback.print_exc(file=sys.stderr)
             message = f"{files.export.name}: a defect in reactance stopped the analysis: {error!r}"
             return Outcome("broken", save.file, name, message=message, timings=timings)
+
+    def _take_over(self, save: Saved, files: BoardFiles, found: Analysed, timings: Timings) -> Outcome:
+        """Stores what a worker found."""
+        if found.blocks:
+            self._blocks[save.file] = found.blocks
+        timings = replace(timings, understand=found.understand, solve=found.solve)
+        return self._store(save, files, None, found.report, timings)
 
     def refuse(self, save: Saved, files: BoardFiles | None, message: str) -> Outcome:
         """Records a save that stayed broken; what was stored before stays what is shown."""
@@ -75,6 +94,11 @@ class Intake:
     def keep(self) -> None:
         """Puts newly solved blocks into the history, for reuse after a restart; done when nothing else waits."""
         try:
+            while self._blocks:
+                file, blocks = self._blocks.popitem()
+                board = self._history.board_of(file)
+                if board:
+                    self._history.keep_blocks(board.id, blocks)
             for file, memory in self._memories.items():
                 board = self._history.board_of(file)
                 blocks = memory.export_blocks() if board else b""
@@ -83,28 +107,30 @@ class Intake:
         except HistoryError:
             return  # they are solved again; a history that cannot be written to is told of with the next save
 
-    def _store(self, save: Saved, files: BoardFiles, newer: Side, timings: Timings) -> Outcome:
+    def _store(
+        self, save: Saved, files: BoardFiles, design: Design | None, report: Report, timings: Timings
+    ) -> Outcome:
+        """Compares and stores. Without its `design` the export is read again where there is a baseline."""
         started = time.perf_counter()
         board = self._history.board_of(save.file)
         baseline = self._history.baseline(board.id) if board else None
-        comparison, older = self._compare(baseline, newer)
+        older = self._side(baseline.id) if baseline else None
+        if older is not None and design is None:
+            design = self._engine.design(files)
+        newer = (design, report, files.brief) if design is not None else None
+        comparison = self._engine.compare(older, newer) if older is not None and newer is not None else None
         compared = time.perf_counter()
         revision = self._history.store(
-            save, files, newer[1], comparison, baseline.id if comparison and baseline else None
+            save, files, report, comparison, baseline.id if comparison and baseline else None
         )
         timings = replace(timings, compare=compared - started, store=time.perf_counter() - compared)
+        name = report.design.name
         if revision is None:
-            return Outcome("same", save.file, newer[1].design.name, report=newer[1], timings=timings)
-        self._remember(revision.id, newer)
-        return Outcome(
-            "stored", save.file, newer[1].design.name, revision, newer[1], comparison, baseline, older, "", timings
-        )
-
-    def _compare(self, baseline: RevisionRow | None, newer: Side) -> tuple[Comparison | None, Report | None]:
-        older = self._side(baseline.id) if baseline else None
-        if older is None:
-            return None, None
-        return self._engine.compare(older, newer), older[1]
+            return Outcome("same", save.file, name, report=report, timings=timings)
+        if newer is not None:
+            self._remember(revision.id, newer)
+        before = older[1] if older is not None else None
+        return Outcome("stored", save.file, name, revision, report, comparison, baseline, before, "", timings)
 
     def _side(self, revision_id: int) -> Side | None:
         known = self._sides.get(revision_id)

@@ -23,6 +23,7 @@ from reactance.daemon.registry import Registry
 from reactance.daemon.settle import QUIET_POLLED, Hint, Settler
 from reactance.daemon.sources import Source
 from reactance.daemon.walk import Root, roots_of
+from reactance.daemon.workers import Workers
 
 POLLING_SECONDS = 2.0
 _ASIDE_SECONDS = 1.0  # files outside the watched folders are looked at this often
@@ -68,6 +69,7 @@ class Watcher:
         announce: Callable[[str], None],
         polling: float | None = None,
         first_pass: Callable[[int, int], None] | None = None,
+        workers: Workers | None = None,
     ) -> None:
         self._roots = roots_of(places)
         self._history = history
@@ -78,7 +80,7 @@ class Watcher:
         self._inbox: queue.SimpleQueue[_Event | _Done | _Lost | _Stop] = queue.SimpleQueue()
         self._registry = Registry()
         self._settler = Settler(lambda board: Path(board).exists(), self._registry.signature)
-        self._analyst = Analyst(intake, lambda job, outcome: self._inbox.put(_Done(job, outcome)))
+        self._analyst = Analyst(intake, lambda job, outcome: self._inbox.put(_Done(job, outcome)), workers)
         self._refused: dict[str, tuple[BoardFiles, str]] = {}
         self._no_exports: dict[str, Stamp] = {}
         self._polled: tuple[Root, ...] = ()
