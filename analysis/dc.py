@@ -16,6 +16,7 @@ from reactance.analysis.circuit.network import Capacitor, CurrentSource, Network
 from reactance.analysis.circuit.spread import monte_carlo, spread
 from reactance.analysis.circuit.sweep import frequency_response
 from reactance.analysis.elements import node, rail_source
+from reactance.analysis.likeness import block_likeness
 from reactance.analysis.measuring import SEED
 from reactance.analysis.parts.models import CapacitorModel
 from reactance.analysis.region import TooLargeError, grow, is_stiff
@@ -59,7 +60,8 @@ def dc_band(board: Board, bias: Bias, solved: Solved, a: str, b: str, *, upper: 
     )  # fmt: skip
     block = make_block(board, bias, region, extra=rails)
     probe = (node(board, a), node(board, b))
-    found = solved.get(block.key("dc", probe), lambda: {"dc": _solve(block, probe)})["dc"]
+    key, _ = block_likeness(block, probe, "dc")
+    found = solved.get(key, lambda: {"dc": _solve(block, probe)})["dc"]
     if found.nominal is None or found.low is None or found.high is None:
         raise AssertionError("the operating point is defined but its band is not")
     return DcBand(found.nominal, found.low, found.high, found.samples)

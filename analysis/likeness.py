@@ -7,6 +7,8 @@ place of names and read back with the names of whoever asks.
 from __future__ import annotations
 
 import hashlib
+import re
+from collections.abc import Iterable
 from dataclasses import fields
 from itertools import chain
 
@@ -35,12 +37,12 @@ class Names:
 
     def without(self, results: Results) -> Results:
         """Results with numbers in place of names."""
-        by_length = sorted(self._counts, key=len, reverse=True)
 
         def plain(text: str) -> str:
-            for name in by_length if text else ():
-                text = text.replace(name, f"\0{self._counts[name]}\0")
-            return text
+            if not text:
+                return text
+            names = "|".join(re.escape(name) for name in sorted(self._counts, key=len, reverse=True))
+            return re.sub(rf"(?<!\w)(?:{names})(?!\w)", lambda found: f"\0{self._counts[found[0]]}\0", text)
 
         def value(found: Value) -> Value:
             matters = tuple((str(self.count(name)), share) for name, share in found.matters)
@@ -97,6 +99,13 @@ def likeness(networks: SignalNetworks) -> tuple[str, Names]:
         bool(sections) and bool(networks.start_region.amplifiers),
     )
     return hashlib.sha256(f"{MODEL_VERSION} {asked!r}".encode()).hexdigest(), names
+
+
+def block_likeness(block: Block, nodes: Iterable[str], *asked: object) -> tuple[str, Names]:
+    """The same for one block and a question about some of its nodes; what else is `asked` holds no names."""
+    names = Names()
+    question = (_content(block, names), block.notes, [names.count(name) for name in nodes], asked)
+    return hashlib.sha256(f"{MODEL_VERSION} {question!r}".encode()).hexdigest(), names
 
 
 def _content(block: Block, names: Names) -> tuple[object, ...]:

@@ -9,6 +9,8 @@ from reactance.analysis.bias import Bias
 from reactance.analysis.board import Board
 from reactance.analysis.checks import judge
 from reactance.analysis.circuit.network import CircuitError
+from reactance.analysis.elements import node
+from reactance.analysis.likeness import block_likeness
 from reactance.analysis.measures import find_measure
 from reactance.analysis.parts.models import CapacitorModel
 from reactance.analysis.rail_network import RailNetwork, rail_network
@@ -56,8 +58,8 @@ def _study_rail(board: Board, bias: Bias, solved: Solved, net: str) -> RailStudy
     if measured(asked):
         try:
             cut = network = rail_network(board, bias, net)
-            key = cut.block.key("rail", net, cut.fed, asked)
-            results = solved.get(key, lambda: solve_rail(board, net, cut, asked))
+            key, names = block_likeness(cut.block, [node(board, net)], "rail", cut.fed, asked)
+            results = names.back(solved.get(key, lambda: names.without(solve_rail(board, net, cut, asked))))
         except (TooLargeError, CircuitError) as problem:
             results = {name: unknown(find_measure("rail", name).unit, str(problem)) for name in measured(asked)}
     bounds = limits(asked)
