@@ -15,7 +15,7 @@ from reactance.analysis.duty_view import BriefedPath, Found, PathKind, View
 from reactance.analysis.report import DutyKind
 from reactance.analysis.topology import Branch, Topology
 
-__all__ = ["RULES", "Assigned", "BriefedPath", "PathKind", "duties"]
+__all__ = ["RULES", "Assigned", "BriefedPath", "PathKind", "duties", "without_brief"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -23,13 +23,14 @@ class Assigned:
     """One capacitor's duty and the reason in words.
 
     Capacitors that do one job share its `id`: `rail:NET` on one rail, `coupling:NAME` or `filter:NAME` in one path of
-    the brief; else it is `duty:REFDES`.
+    the brief; else it is `duty:REFDES`. `by_brief`: the brief says so, not the design.
     """
 
     refdes: str
     kind: DutyKind
     because: str
     id: str
+    by_brief: bool = False
 
 
 Rule = Callable[[Branch, View], Found | None]
@@ -50,6 +51,7 @@ RULES: tuple[Rule, ...] = (
     duty_of_nets.low_pass,
     duty_of_nets.unsettled,
 )
+OF_BRIEF: tuple[Rule, ...] = (duty_of_nets.overruled, duty_of_nets.in_briefed_path)
 
 
 def duties(
@@ -63,6 +65,18 @@ def duties(
     return tuple(_assign(branch, view) for branch in topology.branches if branch.kind == "capacitor")
 
 
+def without_brief(topology: Topology, assigned: Sequence[Assigned]) -> tuple[DutyKind, ...]:
+    """The kinds of `duties(topology)`, made from `duties` under a brief: only what the brief says is undone."""
+    view = View(topology, (), {})
+    capacitors = [branch for branch in topology.branches if branch.kind == "capacitor"]
+    return tuple(
+        _assign(capacitor, view).kind if found.by_brief else found.kind
+        for capacitor, found in zip(capacitors, assigned, strict=True)
+    )
+
+
 def _assign(capacitor: Branch, view: View) -> Assigned:
-    found = next(found for rule in RULES if (found := rule(capacitor, view)) is not None)
-    return Assigned(capacitor.refdes, found.kind, found.because, found.id or f"duty:{capacitor.refdes}")
+    rule, found = next((rule, found) for rule in RULES if (found := rule(capacitor, view)) is not None)
+    return Assigned(
+        capacitor.refdes, found.kind, found.because, found.id or f"duty:{capacitor.refdes}", rule in OF_BRIEF
+    )

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterable
+from functools import lru_cache
 from typing import Literal
 
 from reactance.analysis.net_kinds import class_by_name
@@ -71,6 +72,7 @@ REGULATOR_PINS = _table("EN ENABLE FB ADJ SW LX BST BOOT SHDN NR BYP PG COMP SEN
 _WORDS = re.compile(r"[_\s./:;{}()|-]+")
 
 
+@lru_cache(maxsize=4096)  # a board has many pins and few names for them
 def plain(name: str) -> str:
     """A pin's name in capitals, without marks of active-low pins."""
     text = name.strip().upper()
@@ -79,6 +81,7 @@ def plain(name: str) -> str:
     return text.strip("~!#*\\ ")
 
 
+@lru_cache(maxsize=4096)
 def stem(name: str) -> str:
     """`plain` without a number at its end."""
     text = plain(name)

@@ -68,7 +68,7 @@ def assign_roles(board: Board) -> Roles:
     duties = assign_duties(topology, briefed, overrules)
     known = {frozenset((path.from_net, path.to_net)) for path in paths}
     claimed = {duty.refdes for duty in duties if duty.id.startswith(("coupling:", "filter:"))}
-    for shown in shown_paths(topology, claimed):
+    for shown in shown_paths(topology, claimed, duties):
         ends = frozenset((shown.from_net, shown.to_net))
         if ends not in known:
             known.add(ends)

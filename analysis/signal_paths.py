@@ -6,13 +6,13 @@ one side, an input on the other, or a connector on one side. Where two readings 
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterator
+from collections.abc import Collection, Iterator, Sequence
 from dataclasses import dataclass
 from itertools import pairwise
 from typing import Literal
 
 from reactance.analysis import pin_roles
-from reactance.analysis.duties import PathKind, duties
+from reactance.analysis.duties import Assigned, PathKind, duties, without_brief
 from reactance.analysis.duty_words import listing, what_holds
 from reactance.analysis.topology import Branch, Topology
 
@@ -31,15 +31,18 @@ class ShownPath:
     parts: tuple[str, ...] = ()
 
 
-def shown_paths(topology: Topology, claimed: Collection[str] = ()) -> tuple[ShownPath, ...]:
+def shown_paths(
+    topology: Topology, claimed: Collection[str] = (), assigned: Sequence[Assigned] | None = None
+) -> tuple[ShownPath, ...]:
     """The couplings, then the filters, each once, in the order of the design's parts.
 
     `claimed`: capacitors whose path the brief describes already; a path with one of them is not shown again.
+    `assigned`: the duties under the brief, where they are known; what the brief says of them does not count here.
     """
     capacitors = [branch for branch in topology.branches if branch.kind == "capacitor"]
-    assigned = [found.kind for found in duties(topology)]
+    kinds = without_brief(topology, duties(topology) if assigned is None else assigned)
     of_kind = {
-        wanted: [capacitor for capacitor, kind in zip(capacitors, assigned, strict=True) if kind == wanted]
+        wanted: [capacitor for capacitor, kind in zip(capacitors, kinds, strict=True) if kind == wanted]
         for wanted in ("coupling", "filter")
     }
     found = (*_couplings(topology, of_kind["coupling"]), *_filters(topology, of_kind["filter"]))

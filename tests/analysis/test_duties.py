@@ -8,7 +8,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from reactance.analysis.duties import Assigned, BriefedPath, duties
+from reactance.analysis.duties import Assigned, BriefedPath, duties, without_brief
 from reactance.analysis.net_kinds import classify_nets
 from reactance.analysis.report import DutyKind
 from reactance.analysis.topology import Branch, BranchKind, Terminal, Topology, nets_between, prefix_of
@@ -178,6 +178,14 @@ def test_a_briefed_filter_claims_its_capacitors_also_around_an_amplifier() -> No
 
 def test_without_a_brief_the_same_capacitor_is_feedback() -> None:
     assert duties(circuit(SALLEN_KEY, FOLLOWER))[0].kind == "feedback"
+
+
+def test_what_the_brief_says_can_be_undone() -> None:
+    topology = circuit(SALLEN_KEY + "\nC3 RAW GND\nC4 +3V3 GND", FOLLOWER)
+    briefed = duties(topology, [BriefedPath("anti-alias", "filter", "RAW", "OUT")], {"C4": "timing"})
+    alone = tuple(found.kind for found in duties(topology))
+    assert without_brief(topology, briefed) == alone
+    assert tuple(found.kind for found in briefed) != alone
 
 
 def test_a_briefed_coupling_claims_what_blocks_dc_and_nothing_else() -> None:
