@@ -104,7 +104,7 @@ def likeness(networks: SignalNetworks) -> tuple[str, Names]:
 def block_likeness(block: Block, nodes: Iterable[str], *asked: object) -> tuple[str, Names]:
     """The same for one block and a question about some of its nodes; what else is `asked` holds no names."""
     names = Names()
-    question = (_content(block, names), block.notes, [names.count(name) for name in nodes], asked)
+    question = (_content(block, names), [names.count(name) for name in nodes], asked)
     return hashlib.sha256(f"{MODEL_VERSION} {question!r}".encode()).hexdigest(), names
 
 

@@ -63,3 +63,30 @@ def test_another_value_gives_another_figure() -> None:
     found = checks("12", second="12k")
     corner = "filter:low {}:corner_high"
     assert found[corner.format("1")].nominal > found[corner.format("2")].nominal
+
+
+def supplies(numbers: str) -> tuple[Memory, dict[str, Check]]:
+    parts, text = [], ""
+    for n in numbers:
+        parts += [
+            (f"C{n}01", "10uF|DIELECTRIC=X5R|VOLTAGE=10V|PACKAGE=0603", {"1": f"+3V3_{n}", "2": "GND"}),
+            (f"C{n}02", "100nF|DIELECTRIC=X7R|VOLTAGE=16V|PACKAGE=0402", {"1": f"+3V3_{n}", "2": "GND"}),
+        ]
+        text += (
+            f'[[rail]]\nnet = "+3V3_{n}"\nvoltage = "3.3 V"\n'
+            'source = { resistance = "20 mohm", inductance = "30 nH" }\n'
+            'step = { current = "0.4 A", rise = "20 ns" }\nallowed = "5 %"\n'
+        )
+    memory = Memory()
+    files = BoardFiles(ExportFiles(edif(parts), "b.edn", {}), text.encode(), "b.brief.toml")
+    found = analyse(files, memory=memory).report.checks
+    return memory, {check.id: check for check in found if check.id.startswith("rail:")}
+
+
+def test_equal_rails_are_solved_once_and_name_their_own_capacitors() -> None:
+    (one, alone), (two, together) = supplies("2"), supplies("12")
+    assert two.solved.computed == one.solved.computed
+    droop = together["rail:+3V3_2:droop"]
+    assert droop.explain == alone["rail:+3V3_2:droop"].explain
+    assert "C201" in droop.explain
+    assert droop.nominal == pytest.approx(alone["rail:+3V3_2:droop"].nominal, rel=1e-8)
