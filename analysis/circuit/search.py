@@ -27,7 +27,7 @@ def bracketed_root(
     c, fc = a, fa
     t = np.full(a.shape, 0.5)
     slack = share * np.abs(b - a)
-    answer, open_ = np.where(np.abs(fa) < np.abs(fb), a, b), fa * fb < 0
+    answer, open_ = np.where(np.abs(fa) < np.abs(fb), a, b), np.sign(fa) * np.sign(fb) < 0
     for _ in range(_ROUNDS):
         x = a + t * (b - a)
         fx = function(x)
