@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 
-from boardkit import PartRow, checks_of, study_of
+from boardkit import PartRow, checks_of
 
 X7R = "|VOLTAGE=16V|DIELECTRIC=X7R|FOOTPRINT=0603"
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from boardkit import edif
+
 from reactance.analysis.exports import ExportFiles
 from reactance.analysis.files import BoardFiles
 from reactance.analysis.study import Memory, analyse
